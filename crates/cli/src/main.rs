@@ -1,0 +1,2 @@
+//! oddwell
+fn main() {}
