@@ -1,1 +1,44 @@
-//! oddwell likelihood
+//! Measured multipoles, their covariance and the likelihood of a prediction.
+//!
+//! What goes in: tables of measured numbers and covariances ([`read_multipoles`], [`read_covariance_csv`],
+//! [`keep_rows`]). What comes out: χ² and log-likelihood of a prediction, given number by number
+//! ([`SurveyLikelihood`], [`SurveySet`]) or as coefficients of fixed kernels ([`CompressedLikelihood`]), under a noise
+//! model ([`noise_families`]); the information about parameters ([`effective_parameters`]) and how surprising a χ² is
+//! ([`chi_squared_p_value`]).
+//!
+//! This crate knows no physics, no priors and no sampling: a prediction is a vector, or kernels and coefficients.
+
+mod blocks;
+mod compressed;
+mod covariance;
+mod covariance_file;
+mod error;
+mod fisher;
+mod goodness;
+mod header;
+mod keep;
+mod noise;
+mod records;
+mod rows;
+mod survey;
+mod surveys;
+mod table;
+mod triangle;
+mod units;
+
+pub use compressed::{CompressedLikelihood, LeastSquares};
+pub use covariance::{Covariance, CovarianceError, SYMMETRY_TOLERANCE};
+pub use covariance_file::{
+    COVARIANCE_ROW_COLUMNS, CovarianceRows, read_covariance_csv, read_covariance_rows,
+};
+pub use error::{DataError, Place};
+pub use fisher::{FisherError, effective_parameters, expected_standard_deviations};
+pub use goodness::chi_squared_p_value;
+pub use header::IgnoredColumn;
+pub use keep::{Keep, Kept, keep_rows};
+pub use noise::{NoiseChoice, NoiseError, NoiseFamily, NoiseInputs, NoiseModel, noise_families};
+pub use rows::{Axis, PAIRS};
+pub use survey::{LikelihoodError, SurveyLikelihood};
+pub use surveys::{CompressedSet, SurveySet};
+pub use table::{MeasuredRow, MultipoleTable, TABLE_COLUMNS, read_multipoles};
+pub use units::LengthUnit;
