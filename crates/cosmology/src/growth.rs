@@ -3,7 +3,7 @@
 use std::sync::LazyLock;
 
 use ode_solvers::dop_shared::IntegrationError;
-use ode_solvers::{Dop853, OutputType, System, Vector2};
+use ode_solvers::{Dop853, OutputType, System, Vector3};
 
 use crate::background::Background;
 use crate::errors::CosmologyError;
@@ -40,7 +40,12 @@ pub struct RawGrowth {
     pub rate_slope: f64,
 }
 
-/// The growth equation for g = D/a and g′, as a function of ln a.
+/// The growth equation for (g, g′, ln a) with g = D/a.
+///
+/// ln a is carried along as a third unknown of slope 1, and the solver's own independent variable is never read: in
+/// `ode_solvers` 0.6.2 the node of the twelfth stage of `Dop853` is 0 where it must be 1 (the sum of that stage's
+/// coefficients), so with equations that read the independent variable the method falls to first order and ends in a
+/// false report of stiffness. Autonomous equations don't use the nodes, and get the full order.
 struct Equation<'a> {
     background: &'a Background,
     gravity: &'a dyn Fn(f64) -> f64,
@@ -57,11 +62,12 @@ impl Equation<'_> {
     }
 }
 
-impl System<f64, Vector2<f64>> for Equation<'_> {
-    fn system(&self, log_a: f64, state: &Vector2<f64>, slope: &mut Vector2<f64>) {
-        let (friction, pull) = self.terms(log_a.exp());
+impl System<f64, Vector3<f64>> for Equation<'_> {
+    fn system(&self, _: f64, state: &Vector3<f64>, slope: &mut Vector3<f64>) {
+        let (friction, pull) = self.terms(state[2].exp());
         slope[0] = state[1];
         slope[1] = (pull - 1.0 - friction) * state[0] - (2.0 + friction) * state[1];
+        slope[2] = 1.0;
     }
 }
 
@@ -88,7 +94,7 @@ pub fn growth_history(
     order.sort_by(|&i, &j| scale_factors[i].total_cmp(&scale_factors[j]));
     let equation = Equation { background, gravity };
     let mut log_a = STARTING_SCALE_FACTOR.ln();
-    let mut state = Vector2::new(1.0, 0.0);
+    let mut state = Vector3::new(1.0, 0.0, log_a);
     let mut history = vec![
         RawGrowth {
             growth: 0.0,
@@ -103,6 +109,7 @@ pub fn growth_history(
         if target > log_a {
             state = advance(&equation, log_a, target, state)?;
             log_a = target;
+            state[2] = target;
         }
         let (friction, pull) = equation.terms(a);
         let rate = 1.0 + state[1] / state[0];
@@ -127,8 +134,8 @@ fn advance(
     equation: &Equation<'_>,
     from: f64,
     to: f64,
-    state: Vector2<f64>,
-) -> Result<Vector2<f64>, CosmologyError> {
+    state: Vector3<f64>,
+) -> Result<Vector3<f64>, CosmologyError> {
     let system = Equation {
         background: equation.background,
         gravity: equation.gravity,
