@@ -96,7 +96,8 @@ pub fn clock_contrast(
     let mut edges = vec![low];
     let mut edge = low;
     while edge < high {
-        edge = (edge * 1.6).min(edge + PI / distance).min(high);
+        let widest: f64 = if edge < WIGGLES_UNTIL { 0.02 } else { 0.07 };
+        edge = (edge * 1.8).min(edge + widest.min(PI / distance)).min(high);
         edges.push(edge);
     }
     edges.extend(
@@ -126,6 +127,7 @@ pub fn clock_contrast(
     })
 }
 
+const WIGGLES_UNTIL: f64 = 0.4;
 const LOWEST: f64 = 1e-7;
 const HIGHEST: f64 = 20.0;
 const POINTS: usize = 8;

@@ -5,7 +5,7 @@ use std::sync::{Arc, LazyLock};
 
 use crate::bessel::spherical_bessel;
 use crate::errors::CosmologyError;
-use crate::quadrature::{GaussLegendre, composite};
+use crate::quadrature::{GaussLegendre, composite, even, geometric};
 use crate::transfer::{EisensteinHu, EisensteinHuSmooth, PowerShape, PowerTable};
 
 /// Radius of the top-hat sphere of σ8, Mpc/h.
@@ -39,18 +39,38 @@ impl Shape {
     }
 }
 
-/// The weight of P in σ² = ∫k²dk/2π² P W², at fixed wavenumbers, for the shapes that have no range of their own.
+/// Wavenumbers (h/Mpc) and weights with σ² = Σ weight P(k) = ∫k²dk/2π² P W², for the shapes that have no range of their own.
+///
+/// Where panels end, and why:
+/// * 10⁻⁶ to 0.01, even in ln k: smooth; below, k⁴ P/k leaves less than 10⁻¹⁶ of σ²;
+/// * to 0.4, 0.02 wide: acoustic wiggles of period 2π/s and π/s, s ≈ 100 Mpc/h, at full height;
+/// * to 2, 0.07 wide: what is left of the wiggles is not damped, only falling, and with large baryon shares panels
+///   as wide as a period of W² missed 6·10⁻⁷ of σ²;
+/// * to 11, a period of W² each; beyond, W² is replaced by its mean over a period, 9/(2x⁴) (1 + 1/x²): starting where
+///   sin 2x = 0, the neglected oscillation is 3/x² of a tail that holds 10⁻⁷ of σ², and the tail is smooth in ln k;
+/// * at 200 it ends, with 10⁻¹² of σ² left.
+///
+/// Compared with a rule ten times as fine, σ² is good to 2·10⁻¹⁰ for Ωm 0.1 to 0.9, Ωb 0.01 to 0.12, n_s 0.8 to 1.05.
 static VARIANCE_RULE: LazyLock<GaussLegendre> = LazyLock::new(|| {
-    let mut edges: Vec<f64> = (0..=26)
-        .map(|i| 1e-6 * (0.02f64 / 1e-6).powf(i as f64 / 26.0))
-        .collect();
-    let width = PI / SIGMA8_RADIUS;
-    edges.extend((1..=8).map(|i| 0.02 + (width - 0.02) * i as f64 / 8.0));
-    edges.extend((2..=400).map(|i| i as f64 * width));
-    let mut rule = composite(&edges, 8);
+    const POINTS: usize = 8;
+    let period = PI / SIGMA8_RADIUS;
+    let (smooth, wiggles, faint, end) = (0.01, 0.4, 2.0, 200.0);
+    let mean_from = 28.0 * period;
+    let mut edges = geometric(1e-6, smooth, 14);
+    edges.extend(even(smooth, wiggles, 20).into_iter().skip(1));
+    edges.extend(even(wiggles, faint, 23).into_iter().skip(1));
+    edges.extend(even(faint, mean_from, 23).into_iter().skip(1));
+    let mut rule = composite(&edges, POINTS);
     for (k, weight) in rule.nodes.iter().zip(&mut rule.weights) {
         *weight *= variance_kernel(*k);
     }
+    let mut tail = composite(&geometric(mean_from, end, 5), POINTS);
+    for (k, weight) in tail.nodes.iter().zip(&mut tail.weights) {
+        let square = (k * SIGMA8_RADIUS).powi(2);
+        *weight *= k * k / (2.0 * PI * PI) * 4.5 / (square * square) * (1.0 + 1.0 / square);
+    }
+    rule.nodes.append(&mut tail.nodes);
+    rule.weights.append(&mut tail.weights);
     rule
 });
 
@@ -183,11 +203,11 @@ fn table_variance(table: &PowerTable) -> f64 {
     let mut edges = vec![table.range().0];
     for pair in table.log_wavenumbers().windows(2) {
         let (low, high) = (pair[0].exp(), pair[1].exp());
-        let pieces = ((high - low) * SIGMA8_RADIUS / PI)
+        let pieces = ((high - low) * SIGMA8_RADIUS / (0.5 * PI))
             .ceil()
             .max(((pair[1] - pair[0]) / 0.4).ceil());
         let pieces = pieces.max(1.0) as usize;
-        edges.extend((1..=pieces).map(|i| (pair[0] + (pair[1] - pair[0]) * i as f64 / pieces as f64).exp()));
+        edges.extend(geometric(low, high, pieces).into_iter().skip(1));
     }
     composite(&edges, 8).integrate(|k| table.log_power(k.ln()).exp() * variance_kernel(k))
 }

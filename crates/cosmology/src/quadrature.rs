@@ -81,3 +81,24 @@ pub fn composite(edges: &[f64], points: usize) -> GaussLegendre {
     }
     rule
 }
+
+/// `panels` + 1 edges from `low` to `high`, evenly spaced.
+pub fn even(low: f64, high: f64, panels: usize) -> Vec<f64> {
+    spaced(panels, low, high, |share| low + (high - low) * share)
+}
+
+/// `panels` + 1 edges from `low` to `high`, both above 0, evenly spaced in their logarithms.
+pub fn geometric(low: f64, high: f64, panels: usize) -> Vec<f64> {
+    spaced(panels, low, high, |share| low * (high / low).powf(share))
+}
+
+/// The two ends are what was asked for, to the last bit.
+fn spaced(panels: usize, low: f64, high: f64, inner: impl Fn(f64) -> f64) -> Vec<f64> {
+    (0..=panels)
+        .map(|index| match index {
+            0 => low,
+            index if index == panels => high,
+            index => inner(index as f64 / panels as f64),
+        })
+        .collect()
+}
