@@ -1,0 +1,227 @@
+//! The study file as typed: every value with its place, nothing looked up yet.
+
+mod background;
+mod hypothesis;
+mod joint_prior;
+mod keep;
+mod overrides;
+mod places;
+mod quantity;
+mod sampling;
+mod section;
+mod source;
+mod survey;
+mod systematic;
+mod unsupported;
+
+use std::path::{Path, PathBuf};
+
+use toml_edit::Document;
+
+pub use background::{BackgroundSection, PowerChoice, PredictionSection};
+pub use hypothesis::{HypothesisSection, Shape};
+pub use joint_prior::JointPriorSection;
+pub use keep::KeepSection;
+pub use overrides::Override;
+pub(crate) use places::QuantityPlace;
+pub use quantity::{PriorSpec, Quantity};
+pub use sampling::SamplingSection;
+pub use source::{Located, Origin, Place, Source};
+pub use survey::{BinSection, SurveySection, TracerSection};
+pub use systematic::{MoveEntry, SystematicSection};
+
+use crate::error::StudyError;
+use crate::fault::Fault;
+use section::{Reader, Section};
+
+/// A study file as typed.
+#[derive(Clone, Debug, PartialEq)]
+pub struct StudyFile {
+    /// The text and its name, for messages and for the manifest.
+    pub source: Source,
+    /// The folder that relative paths start from.
+    pub folder: PathBuf,
+    /// `title`; by default the file's name without extension.
+    pub title: Located<String>,
+    /// `[background]`.
+    pub background: BackgroundSection,
+    /// `[prediction]`.
+    pub prediction: PredictionSection,
+    /// `[[survey]]`, at least one.
+    pub surveys: Vec<SurveySection>,
+    /// `[[systematic]]`.
+    pub systematics: Vec<SystematicSection>,
+    /// `[[joint_prior]]`.
+    pub joint_priors: Vec<JointPriorSection>,
+    /// `[[hypothesis]]`, at least one.
+    pub hypotheses: Vec<HypothesisSection>,
+    /// `[sampling]`.
+    pub sampling: SamplingSection,
+}
+
+impl StudyFile {
+    /// Reads a study file.
+    ///
+    /// # Errors
+    /// [`StudyError::Unreadable`] where there is no such file, it is a folder or not UTF-8; else as [`StudyFile::parse`].
+    pub fn read(path: impl AsRef<Path>) -> Result<Self, StudyError> {
+        let path = path.as_ref();
+        let unreadable = |reason: String| StudyError::Unreadable {
+            path: path.to_owned(),
+            reason,
+        };
+        if path.is_dir() {
+            return Err(unreadable("it is a folder".to_owned()));
+        }
+        let bytes = std::fs::read(path).map_err(|error| match error.kind() {
+            std::io::ErrorKind::NotFound => unreadable("there is no such file".to_owned()),
+            _ => unreadable(error.to_string()),
+        })?;
+        let text = String::from_utf8(bytes).map_err(|_| unreadable("it is not UTF-8 text".to_owned()))?;
+        let folder = path.parent().map(Path::to_owned).unwrap_or_default();
+        Self::parse(&path.display().to_string(), text, folder)
+    }
+
+    /// Reads the text of a study file; `name` is what errors call it.
+    ///
+    /// # Errors
+    /// [`StudyError::Problems`] with every broken rule that can be told apart: text that is not TOML, unknown keys,
+    /// missing keys, values of the wrong kind or outside their range, priors that their family refuses.
+    pub fn parse(
+        name: &str,
+        text: impl Into<String>,
+        folder: impl Into<PathBuf>,
+    ) -> Result<Self, StudyError> {
+        let source = Source::of_file(name, text);
+        let reader = Reader::new(&source);
+        let folder = folder.into();
+        let read = match Document::parse(source.text()) {
+            Ok(document) => {
+                let root = Section::new(&reader, document.as_table(), None, "study", "the study file");
+                Parts::read(root, &source)
+            }
+            Err(error) => {
+                let message = error.message().lines().collect::<Vec<_>>().join(", ");
+                reader.fault(error.span(), Fault::Syntax { message });
+                None
+            }
+        };
+        let parts = StudyError::unless_none(reader.into_problems(), read)?;
+        let Parts {
+            title,
+            background,
+            prediction,
+            surveys,
+            systematics,
+            joint_priors,
+            hypotheses,
+            sampling,
+        } = parts;
+        Ok(Self {
+            source,
+            folder,
+            title,
+            background,
+            prediction,
+            surveys,
+            systematics,
+            joint_priors,
+            hypotheses,
+            sampling,
+        })
+    }
+
+    /// Where a path that is written in the study leads.
+    pub fn path_of(&self, written: &str) -> PathBuf {
+        self.folder.join(written)
+    }
+}
+
+/// What [`StudyFile`] is read into while its text is borrowed.
+struct Parts {
+    title: Located<String>,
+    background: BackgroundSection,
+    prediction: PredictionSection,
+    surveys: Vec<SurveySection>,
+    systematics: Vec<SystematicSection>,
+    joint_priors: Vec<JointPriorSection>,
+    hypotheses: Vec<HypothesisSection>,
+    sampling: SamplingSection,
+}
+
+impl Parts {
+    fn read(root: Section<'_>, source: &Source) -> Option<Self> {
+        let title = match root.find("title") {
+            Some(_) => root.text("title", "\"My surveys\""),
+            None => Some(Located::default_of(stem(source.name()))),
+        };
+        if root.find("background").is_none() {
+            root.missing(
+                "[background]",
+                "[background]` with `omega_m`, `omega_b`, `h`, `n_s` and `sigma8",
+            );
+        }
+        let example = "{ omega_m = 0.31, omega_b = 0.049, h = 0.68, n_s = 0.965, sigma8 = 0.81 }";
+        let background = root
+            .table("background", "background", "[background]", example)
+            .and_then(BackgroundSection::read);
+        let prediction = match root.find("prediction") {
+            Some(_) => root
+                .table(
+                    "prediction",
+                    "prediction",
+                    "[prediction]",
+                    "{ wide_angle = true }",
+                )
+                .and_then(PredictionSection::read),
+            None => Some(PredictionSection::defaults()),
+        };
+        let surveys = all(&root, "survey", "[[survey]]", SurveySection::read);
+        let systematics = all(&root, "systematic", "[[systematic]]", SystematicSection::read);
+        let joint_priors = all(&root, "joint_prior", "[[joint_prior]]", JointPriorSection::read);
+        let hypotheses = all(&root, "hypothesis", "[[hypothesis]]", HypothesisSection::read);
+        let sampling = match root.find("sampling") {
+            Some(_) => root
+                .table(
+                    "sampling",
+                    "sampling",
+                    "[sampling]",
+                    "{ effective_samples = 4000 }",
+                )
+                .and_then(SamplingSection::read),
+            None => Some(SamplingSection::defaults()),
+        };
+        root.finish();
+        Some(Self {
+            title: title?,
+            background: background?,
+            prediction: prediction?,
+            surveys: surveys?,
+            systematics: systematics?,
+            joint_priors: joint_priors?,
+            hypotheses: hypotheses?,
+            sampling: sampling?,
+        })
+    }
+}
+
+/// Reads every table of an array of tables, whatever is wrong with the others.
+fn all<T>(
+    root: &Section<'_>,
+    kind: &'static str,
+    label: &str,
+    read: impl Fn(Section<'_>) -> Option<T>,
+) -> Option<Vec<T>> {
+    let read: Vec<Option<T>> = root
+        .tables(kind, kind, label, "[{ name = \"…\" }]")
+        .into_iter()
+        .map(read)
+        .collect();
+    read.into_iter().collect()
+}
+
+fn stem(name: &str) -> String {
+    Path::new(name)
+        .file_stem()
+        .map_or_else(|| "study".to_owned(), |stem| stem.to_string_lossy().into_owned())
+}

@@ -1,0 +1,209 @@
+//! `[[survey]]` and its `[[survey.bin]]`.
+
+use std::collections::BTreeMap;
+
+use oddwell_likelihood::{LengthUnit, TABLE_COLUMNS, noise_families};
+use oddwell_model::SightLine;
+
+use super::keep::KeepSection;
+use super::quantity::Quantity;
+use super::section::Section;
+use super::source::Located;
+
+/// `[[survey]]`: one table of measured multipoles with its covariance.
+#[derive(Clone, Debug, PartialEq)]
+pub struct SurveySection {
+    /// The first part of its parameters' names.
+    pub name: Located<String>,
+    /// Path of the table of multipoles, as written.
+    pub multipoles: Located<String>,
+    /// Path of the covariance, as written; none: the table's `error` column.
+    pub covariance: Option<Located<String>>,
+    /// Path of a table that names the covariance's rows, as written; none: they follow the table of multipoles.
+    pub covariance_rows: Option<Located<String>>,
+    /// How many mocks the covariance was estimated from.
+    pub mock_count: Option<Located<u64>>,
+    /// Name of the noise model, one of [`noise_families`]; default `gaussian`.
+    pub noise: Located<&'static str>,
+    /// The direction that separates odd from even, default through the midpoint.
+    pub sight_line: Located<SightLine>,
+    /// Unit of the table's lengths, default Mpc/h.
+    pub unit: Located<LengthUnit>,
+    /// Rows that pass any entry are kept; empty: all of them.
+    pub keep: Vec<KeepSection>,
+    /// `[survey.columns]`: our column name → the table's header.
+    pub columns: BTreeMap<String, Located<String>>,
+    /// The redshift bins.
+    pub bins: Vec<BinSection>,
+}
+
+/// `[[survey.bin]]`: one redshift bin with its two tracers.
+#[derive(Clone, Debug, PartialEq)]
+pub struct BinSection {
+    /// The second part of its parameters' names, and the value of the table's `bin` column.
+    pub name: Located<String>,
+    /// Pair-weighted mean redshift, above 0.
+    pub redshift: Located<f64>,
+    /// By how much the second tracer's redshifts lie above the first's, km/s, default 0.
+    pub offset: Located<Quantity>,
+    /// f of this bin, in place of the growth equation.
+    pub growth_rate: Option<Located<Quantity>>,
+    /// df/dln a of this bin; given exactly where `growth_rate` is.
+    pub growth_slope: Option<Located<Quantity>>,
+    /// The first tracer.
+    pub first: TracerSection,
+    /// The second tracer.
+    pub second: TracerSection,
+}
+
+/// One of the two tracers of a bin.
+#[derive(Clone, Debug, PartialEq)]
+pub struct TracerSection {
+    /// What to call it in figures, default `first` or `second`.
+    pub label: Located<String>,
+    /// b.
+    pub bias: Located<Quantity>,
+    /// s, ∂log10 N/∂magnitude at the flux limit.
+    pub magnification: Located<Quantity>,
+    /// e, ∂ln n_comoving/∂ln a at fixed luminosity threshold.
+    pub evolution: Located<Quantity>,
+    /// dln b/dln a, default 0.
+    pub bias_slope: Located<Quantity>,
+}
+
+const UNITS: [(&str, LengthUnit); 2] = [
+    ("Mpc/h", LengthUnit::MegaparsecPerH),
+    ("Mpc", LengthUnit::Megaparsec),
+];
+
+impl SurveySection {
+    pub(super) fn read(section: Section<'_>) -> Option<Self> {
+        let name = section.required_text("name", "\"my-survey\"");
+        let multipoles = section.required_text("multipoles", "\"multipoles.csv\"");
+        let covariance = section.text("covariance", "\"covariance.csv\"");
+        let covariance_rows = section.text("covariance_rows", "\"rows.csv\"");
+        let mock_count = section.count("mock_count", (2, u64::from(u32::MAX)), "at least 2", "600");
+        let noise = match section.find("noise") {
+            Some(_) => {
+                let choices: Vec<_> = noise_families()
+                    .iter()
+                    .map(|family| (family.name, family.name))
+                    .collect();
+                section.choice("noise", "noise model", &choices, "\"gaussian\"")
+            }
+            None => Some(Located::default_of("gaussian")),
+        };
+        let sight_lines = SightLine::ALL.map(|line| (line.name(), line));
+        let sight_line = match section.find("sight_line") {
+            Some(_) => section.choice("sight_line", "sight line", &sight_lines, "\"midpoint\""),
+            None => Some(Located::default_of(SightLine::Midpoint)),
+        };
+        let unit = match section.find("unit") {
+            Some(_) => section.choice("unit", "unit", &UNITS, "\"Mpc/h\""),
+            None => Some(Located::default_of(LengthUnit::MegaparsecPerH)),
+        };
+        let keep_example = "[{ separation = [24.0, 144.0], multipoles = [1, 3] }]";
+        let keep: Vec<_> = section
+            .tables("keep", "keep", "an entry of `keep`", keep_example)
+            .into_iter()
+            .map(KeepSection::read)
+            .collect();
+        let columns = section
+            .table("columns", "columns", "[survey.columns]", "{ separation = \"s\" }")
+            .map(read_columns)
+            .unwrap_or_default();
+        let bins: Vec<_> = section
+            .tables(
+                "bin",
+                "bin",
+                "[[survey.bin]]",
+                "[{ name = \"near\", redshift = 0.35 }]",
+            )
+            .into_iter()
+            .map(BinSection::read)
+            .collect();
+        section.finish();
+        Some(Self {
+            name: name?,
+            multipoles: multipoles?,
+            covariance,
+            covariance_rows,
+            mock_count,
+            noise: noise?,
+            sight_line: sight_line?,
+            unit: unit?,
+            keep: keep.into_iter().collect::<Option<_>>()?,
+            columns,
+            bins: bins.into_iter().collect::<Option<_>>()?,
+        })
+    }
+}
+
+fn read_columns(section: Section<'_>) -> BTreeMap<String, Located<String>> {
+    let columns = TABLE_COLUMNS
+        .iter()
+        .filter_map(|column| Some(((*column).to_owned(), section.text(column, "\"header\"")?)))
+        .collect();
+    section.finish();
+    columns
+}
+
+impl BinSection {
+    fn read(section: Section<'_>) -> Option<Self> {
+        let name = section.required_text("name", "\"near\"");
+        if section.find("redshift").is_none() && section.keys().iter().all(|(key, _)| key.get() != "nodes") {
+            section.missing("redshift", "redshift = 0.35");
+        }
+        let redshift = section.number("redshift", "0.35");
+        let offset = section.quantity_or("offset", 0.0);
+        let growth_rate = section.quantity("growth_rate");
+        let growth_slope = section.quantity("growth_slope");
+        let first = TracerSection::read(&section, "first");
+        let second = TracerSection::read(&section, "second");
+        section.finish();
+        Some(Self {
+            name: name?,
+            redshift: redshift?,
+            offset: offset?,
+            growth_rate,
+            growth_slope,
+            first: first?,
+            second: second?,
+        })
+    }
+}
+
+impl TracerSection {
+    fn read(bin: &Section<'_>, which: &'static str) -> Option<Self> {
+        let example = "{ bias = 2.0, magnification = 0.5, evolution = 0.0 }";
+        if bin.find(which).is_none() {
+            bin.missing(which, &format!("{which} = {example}"));
+            return None;
+        }
+        let section = bin.table(which, "tracer", format!("`{which}` of [[survey.bin]]"), example)?;
+        let label = match section.find("label") {
+            Some(_) => section.text("label", "\"bright\""),
+            None => Some(Located::default_of(which.to_owned())),
+        };
+        let bias = section.required_quantity("bias", "2.0");
+        let magnification = section.required_quantity("magnification", "0.5");
+        let in_place = section
+            .keys()
+            .iter()
+            .any(|(key, _)| key.get() == "observed_density_slope");
+        let evolution = if in_place {
+            section.quantity("evolution")
+        } else {
+            section.required_quantity("evolution", "0.0")
+        };
+        let bias_slope = section.quantity_or("bias_slope", 0.0);
+        section.finish();
+        Some(Self {
+            label: label?,
+            bias: bias?,
+            magnification: magnification?,
+            evolution: evolution?,
+            bias_slope: bias_slope?,
+        })
+    }
+}

@@ -1,0 +1,195 @@
+//! From what was typed to what can be used: names resolved, rules checked, every index known.
+
+mod affine;
+mod checker;
+mod departure;
+mod hypothesis;
+mod link;
+mod names;
+mod systematics;
+mod values;
+
+use std::path::Path;
+
+use oddwell_likelihood::LengthUnit;
+
+pub use affine::AffineForm;
+pub use hypothesis::{FreeParameter, FreePrior, Hypothesis, JointBlock, ResolvedQuantity, State};
+pub use systematics::Move;
+
+use crate::error::{Location, Problem, StudyError};
+use crate::fault::Fault;
+use crate::file::{Located, Override, Quantity, QuantityPlace, StudyFile};
+use crate::nearest::Nearest;
+use checker::{Checker, name_covers};
+
+/// A quantity under its dotted name.
+#[derive(Clone, Debug)]
+struct Entry {
+    name: String,
+    given: Located<Quantity>,
+}
+
+/// A study that can be used.
+#[derive(Clone, Debug)]
+pub struct Study {
+    /// What was typed, with `--set` in place.
+    pub file: StudyFile,
+    /// Every hypothesis, in the order of the file; at least one.
+    pub hypotheses: Vec<Hypothesis>,
+    overrides: Vec<Override>,
+}
+
+impl Study {
+    /// Reads a study file and resolves it.
+    ///
+    /// # Errors
+    /// As [`StudyFile::read`] and [`Study::resolve`].
+    pub fn read(path: impl AsRef<Path>, overrides: &[Override]) -> Result<Self, StudyError> {
+        Self::resolve(StudyFile::read(path)?, overrides)
+    }
+
+    /// Resolves a study file, for all its hypotheses, after putting the overrides of the command line in place.
+    ///
+    /// # Errors
+    /// [`StudyError::Problems`]: names that are doubled or cannot be names, held values outside their range, ties and
+    /// systematics that lead nowhere, two priors of one quantity, departures that the rest of the study excludes, an
+    /// override of a quantity that no hypothesis has.
+    pub fn resolve(mut file: StudyFile, overrides: &[Override]) -> Result<Self, StudyError> {
+        let elsewhere: Vec<&Override> = overrides
+            .iter()
+            .filter(|each| !file.set(&each.name, &each.quantity))
+            .collect();
+        let entries: Vec<Entry> = file
+            .places()
+            .into_iter()
+            .filter_map(|(name, place)| match place {
+                QuantityPlace::Given(given) => Some(Entry {
+                    name,
+                    given: given.clone(),
+                }),
+                QuantityPlace::Optional(given) => given.clone().map(|given| Entry { name, given }),
+            })
+            .collect();
+        let mut checker = Checker::new(&file, overrides);
+        names::check(&file, &mut checker);
+        values::check_quantities(&entries, &mut checker);
+        values::check_surveys(&file, &mut checker);
+        if !checker.is_clean() {
+            // Dotted names may be ambiguous, and what follows looks them up.
+            return StudyError::unless_none(checker.problems, None);
+        }
+        let own: Vec<Vec<Entry>> = file
+            .hypotheses
+            .iter()
+            .map(|section| departure::entries(&file, section, overrides))
+            .collect();
+        let departures: Vec<String> = own.iter().flatten().map(|entry| entry.name.clone()).collect();
+        for each in elsewhere {
+            if !departures.iter().any(|name| name_covers(&each.name, name)) {
+                let known = entries.iter().map(|entry| &entry.name).chain(&departures);
+                let (name, nearest) = (each.name.clone(), Nearest::find(&each.name, known));
+                let fault = Fault::UnknownQuantity {
+                    subject: "`--set`".to_owned(),
+                    name,
+                    nearest,
+                };
+                checker.fault(crate::file::Origin::Set, &each.name, fault);
+            }
+        }
+        let moves = systematics::moves(&file, &entries, &mut checker);
+        let mut hypotheses = Vec::new();
+        for (section, own) in file.hypotheses.iter().zip(own) {
+            let all = entries.iter().cloned().chain(own).collect();
+            let linked = link::link(
+                section,
+                all,
+                &moves,
+                &file.joint_priors,
+                &departures,
+                &mut checker,
+            );
+            if let Some(hypothesis) = linked {
+                departure::check(&file, section, &hypothesis, &mut checker);
+                hypotheses.push(hypothesis);
+            }
+        }
+        check_units(&file, &hypotheses, &mut checker);
+        let problems = checker.problems;
+        StudyError::unless_none(
+            problems,
+            Some(Self {
+                file,
+                hypotheses,
+                overrides: overrides.to_vec(),
+            }),
+        )
+    }
+
+    /// The hypothesis that `fit` takes without being told: the first with an inferred departure, else the first.
+    pub fn default_hypothesis(&self) -> &Hypothesis {
+        self.hypotheses
+            .iter()
+            .find(|hypothesis| !hypothesis.watched().is_empty())
+            .unwrap_or(&self.hypotheses[0])
+    }
+
+    /// The hypothesis of that name; without a name, [`Study::default_hypothesis`].
+    ///
+    /// # Errors
+    /// [`StudyError::Problems`] for a name that the study does not have, and for an override of a quantity that this
+    /// hypothesis does not have.
+    pub fn hypothesis(&self, name: Option<&str>) -> Result<&Hypothesis, StudyError> {
+        let file = || self.file.source.name().to_owned();
+        let chosen = match name {
+            None => self.default_hypothesis(),
+            Some(name) => match self.hypotheses.iter().find(|hypothesis| hypothesis.name == name) {
+                Some(hypothesis) => hypothesis,
+                None => {
+                    let known = self.hypotheses.iter().map(|hypothesis| &hypothesis.name);
+                    let (name, nearest) = (name.to_owned(), Nearest::find(name, known));
+                    let fault = Fault::UnknownHypothesis { name, nearest };
+                    let location = Location::WholeFile { file: file() };
+                    return Err(StudyError::Problems(vec![Problem { location, fault }]));
+                }
+            },
+        };
+        let names = || chosen.quantities.iter().map(|quantity| &quantity.name);
+        let problems: Vec<Problem> = self
+            .overrides
+            .iter()
+            .filter(|each| !names().any(|name| name_covers(&each.name, name)))
+            .map(|each| Problem {
+                location: Location::Option {
+                    option: each.option.clone(),
+                },
+                fault: Fault::SetElsewhere {
+                    hypothesis: chosen.name.clone(),
+                    name: each.name.clone(),
+                    nearest: Nearest::find(&each.name, names()),
+                },
+            })
+            .collect();
+        StudyError::unless_none(problems, Some(chosen))
+    }
+}
+
+/// Lengths in Mpc are converted once, so h must be known.
+fn check_units(file: &StudyFile, hypotheses: &[Hypothesis], checker: &mut Checker<'_>) {
+    let inferred = hypotheses
+        .iter()
+        .filter_map(|hypothesis| hypothesis.quantity("background.h"))
+        .any(|h| !h.form.is_held());
+    for survey in file
+        .surveys
+        .iter()
+        .filter(|survey| survey.unit.value == LengthUnit::Megaparsec)
+    {
+        if inferred {
+            let fault = Fault::UnitNeedsHeldH {
+                survey: survey.name.value.clone(),
+            };
+            checker.fault(survey.unit.origin, "unit", fault);
+        }
+    }
+}

@@ -1,0 +1,187 @@
+//! Rules for held values, and for what must stand beside what.
+
+use oddwell_likelihood::noise_families;
+
+use super::Entry;
+use super::checker::Checker;
+use crate::fault::Fault;
+use crate::file::{Quantity, StudyFile};
+use crate::nearest::Nearest;
+
+/// The range of a held quantity: a test, the rule in words, the way out.
+struct Rule {
+    holds: fn(f64) -> bool,
+    rule: &'static str,
+    way_out: &'static str,
+}
+
+const fn above_zero(way_out: &'static str) -> Rule {
+    Rule {
+        holds: |value| value > 0.0,
+        rule: "above 0",
+        way_out,
+    }
+}
+
+/// The rule of a quantity's dotted name; most may be any finite number.
+fn rule_of(name: &str) -> Option<Rule> {
+    match name {
+        "background.omega_m" => Some(above_zero(
+            "a universe without matter has no structure, as in 0.31",
+        )),
+        "background.omega_b" => Some(above_zero("the transfer function needs baryons, as in 0.049")),
+        "background.h" => Some(Rule {
+            holds: |value| value > 0.0 && value < 10.0,
+            rule: "above 0 and below 10",
+            way_out: "it is H0 in 100 km/s/Mpc, as in 0.68",
+        }),
+        "background.sigma8" => Some(above_zero("it is the rms of matter in 8 Mpc/h, as in 0.81")),
+        "prediction.damping" => Some(Rule {
+            holds: |value| value >= 0.0,
+            rule: "0 or above",
+            way_out: "it is a length in Mpc/h, as in 0.5",
+        }),
+        "prediction.clock_distance" => Some(above_zero("it is a length in Mpc/h, as in 50.0")),
+        _ => None,
+    }
+}
+
+/// Checks every held quantity of the file.
+pub(super) fn check_quantities(entries: &[Entry], checker: &mut Checker<'_>) {
+    for entry in entries {
+        let name = entry.name.clone();
+        match &entry.given.value {
+            Quantity::Held(value) => {
+                let broken = rule_of(&name).filter(|rule| !(rule.holds)(*value));
+                if let Some(Rule { rule, way_out, .. }) = broken {
+                    let fault = Fault::OutOfRange {
+                        name,
+                        rule,
+                        value: format!("{value:?}"),
+                        way_out,
+                    };
+                    checker.fault(entry.given.origin, &entry.name, fault);
+                }
+            }
+            given if name == "prediction.clock_distance" => {
+                let fault = Fault::MustBeHeld {
+                    name,
+                    found: given.to_string(),
+                };
+                checker.fault(entry.given.origin, &entry.name, fault);
+            }
+            _ => {}
+        }
+    }
+    let held = |name: &str| {
+        let entry = entries.iter().find(|entry| entry.name == name)?;
+        match entry.given.value {
+            Quantity::Held(value) => Some((value, entry.given.origin)),
+            _ => None,
+        }
+    };
+    if let (Some((omega_m, _)), Some((omega_b, origin))) =
+        (held("background.omega_m"), held("background.omega_b"))
+        && omega_m > 0.0
+        && omega_b >= omega_m
+    {
+        checker.fault(
+            origin,
+            "background.omega_b",
+            Fault::BaryonsExceedMatter { omega_b, omega_m },
+        );
+    }
+}
+
+/// Checks what the surveys say besides quantities.
+pub(super) fn check_surveys(file: &StudyFile, checker: &mut Checker<'_>) {
+    for survey in &file.surveys {
+        let needs_other = |key: &str, other: &str, way_out| Fault::NeedsOther {
+            key: key.to_owned(),
+            other: other.to_owned(),
+            way_out,
+        };
+        if let (Some(rows), None) = (&survey.covariance_rows, &survey.covariance) {
+            let way_out = "give the covariance whose rows it names, or remove it";
+            checker.fault(
+                rows.origin,
+                "covariance_rows",
+                needs_other("covariance_rows", "covariance", way_out),
+            );
+        }
+        let needs_mocks = noise_families()
+            .iter()
+            .any(|family| family.name == survey.noise.value && family.needs_mocks);
+        if needs_mocks && survey.mock_count.is_none() {
+            let way_out =
+                "say how many mocks the covariance was estimated from, or choose `noise = \"gaussian\"`";
+            let key = format!("noise = \"{}\"", survey.noise.value);
+            checker.fault(
+                survey.noise.origin,
+                "noise",
+                needs_other(&key, "mock_count", way_out),
+            );
+        }
+        for keep in &survey.keep {
+            let Some(bins) = &keep.bins else { continue };
+            let known = || survey.bins.iter().map(|bin| bin.name.value.as_str());
+            for name in bins
+                .value
+                .iter()
+                .filter(|name| known().all(|bin| bin != name.as_str()))
+            {
+                let nearest = Nearest::find(name, known());
+                let fault = Fault::UnknownChoice {
+                    what: "bin in `keep`:",
+                    value: name.clone(),
+                    nearest,
+                };
+                checker.fault(bins.origin, "bins", fault);
+            }
+        }
+        for (range, name) in survey
+            .keep
+            .iter()
+            .flat_map(|keep| [(&keep.separation, "separation"), (&keep.wavenumber, "wavenumber")])
+        {
+            let Some(range) = range.as_ref().filter(|range| range.value.0 < 0.0) else {
+                continue;
+            };
+            let value = format!("{:?}", range.value.0);
+            let (name, rule, way_out) = (name.to_owned(), "0 or above at its low end", "raise its low end");
+            checker.fault(
+                range.origin,
+                &name.clone(),
+                Fault::OutOfRange {
+                    name,
+                    rule,
+                    value,
+                    way_out,
+                },
+            );
+        }
+        for bin in &survey.bins {
+            let path = format!("{}.{}", survey.name.value, bin.name.value);
+            if bin.redshift.value <= 0.0 {
+                let fault = Fault::OutOfRange {
+                    name: format!("{path}.redshift"),
+                    rule: "above 0",
+                    value: format!("{:?}", bin.redshift.value),
+                    way_out: "give the pair-weighted mean redshift of the bin",
+                };
+                checker.fault(bin.redshift.origin, "redshift", fault);
+            }
+            let (rate, slope) = (format!("{path}.growth_rate"), format!("{path}.growth_slope"));
+            let way_out = "a bin's growth is given by f and df/dln a together, or not at all";
+            match (&bin.growth_rate, &bin.growth_slope) {
+                (Some(given), None) => {
+                    checker.fault(given.origin, &rate, needs_other(&rate, "growth_slope", way_out))
+                }
+                (None, Some(given)) => {
+                    checker.fault(given.origin, &slope, needs_other(&slope, "growth_rate", way_out));
+                }
+                _ => {}
+            }
+        }
+    }
+}

@@ -1,0 +1,184 @@
+//! What is suspicious but no error: each with the next thing to try.
+
+use serde::ser::{Serialize, SerializeStruct, Serializer};
+
+/// A warning. Serialised as `code`, `text`, `where`.
+#[derive(Clone, Debug, PartialEq)]
+#[non_exhaustive]
+pub enum Warning {
+    /// The posterior of a parameter piles up at an end of its prior.
+    PriorEdge {
+        /// The parameter.
+        parameter: String,
+        /// The end that is touched.
+        edge: f64,
+    },
+    /// The data move a nuisance by more than two of its prior's standard deviations.
+    NuisanceMoved {
+        /// The parameter.
+        parameter: String,
+        /// Posterior mean minus prior mean, in prior standard deviations.
+        shift: f64,
+    },
+    /// Several bins have the same prior on one kind of nuisance, and nothing moves them together.
+    UnsharedError {
+        /// `evolution` or `magnification`.
+        quantity: String,
+        /// The parameters with equal priors.
+        parameters: Vec<String>,
+        /// The departure's parameter.
+        departure: String,
+        /// Its standard deviation with independent errors.
+        independent: f64,
+        /// Its standard deviation were the error one and the same in all of them.
+        shared: f64,
+    },
+    /// At the smallest separation of a bin the redshift offset outweighs the departure.
+    SmallSeparation {
+        /// `SURVEY.BIN`.
+        bin: String,
+        /// Smallest separation kept, Mpc/h.
+        separation: f64,
+        /// What 1 km/s of offset is worth there, in τ.
+        worth: f64,
+    },
+    /// A departure that only light feels is quoted on the assumption that matter grows as in general relativity.
+    GrowthAssumed {
+        /// The hypothesis.
+        hypothesis: String,
+    },
+    /// The posterior of a departure is nearly as wide as its prior.
+    Untested {
+        /// The parameter.
+        parameter: String,
+        /// Posterior width over prior width.
+        ratio: f64,
+    },
+    /// Sampling ended before every parameter passed.
+    NotConverged {
+        /// The worst parameter.
+        parameter: String,
+        /// What it failed, as `bulk ESS 212 of 400`.
+        failed: String,
+        /// About how many times as long it needs; none if unknown.
+        longer: Option<f64>,
+    },
+    /// Rows without shell edges, which are predicted at a point.
+    UnaveragedShell {
+        /// The survey.
+        survey: String,
+        /// Largest difference that averaging over shells as wide as the rows' spacing makes, relative to the multipole's largest value.
+        difference: f64,
+    },
+    /// A column of a table that nothing reads.
+    IgnoredColumn {
+        /// The file.
+        file: String,
+        /// The column.
+        column: String,
+        /// The column that may have been meant.
+        nearest: Option<String>,
+    },
+}
+
+impl Warning {
+    /// A word for scripts, never reworded.
+    pub fn code(&self) -> &'static str {
+        match self {
+            Self::PriorEdge { .. } => "prior-edge",
+            Self::NuisanceMoved { .. } => "nuisance-moved",
+            Self::UnsharedError { .. } => "unshared-error",
+            Self::SmallSeparation { .. } => "small-separation",
+            Self::GrowthAssumed { .. } => "growth-assumed",
+            Self::Untested { .. } => "untested",
+            Self::NotConverged { .. } => "not-converged",
+            Self::UnaveragedShell { .. } => "unaveraged-shell",
+            Self::IgnoredColumn { .. } => "ignored-column",
+        }
+    }
+
+    /// What it is about: a parameter, a bin, a survey, a file.
+    pub fn place(&self) -> &str {
+        match self {
+            Self::PriorEdge { parameter, .. }
+            | Self::NuisanceMoved { parameter, .. }
+            | Self::Untested { parameter, .. }
+            | Self::NotConverged { parameter, .. } => parameter,
+            Self::UnsharedError { departure, .. } => departure,
+            Self::SmallSeparation { bin, .. } => bin,
+            Self::GrowthAssumed { hypothesis } => hypothesis,
+            Self::UnaveragedShell { survey, .. } => survey,
+            Self::IgnoredColumn { file, .. } => file,
+        }
+    }
+
+    /// What is suspicious, and the next thing to try.
+    pub fn text(&self) -> String {
+        match self {
+            Self::PriorEdge { parameter, edge } => format!(
+                "the posterior of `{parameter}` piles up at the end of its prior, {edge}; widen the prior, or say why nothing lies beyond"
+            ),
+            Self::NuisanceMoved { parameter, shift } => format!(
+                "the data move `{parameter}` by {shift:+.1} of its prior's standard deviations; check that prior, and the data that pull it"
+            ),
+            Self::UnsharedError {
+                quantity,
+                parameters,
+                departure,
+                independent,
+                shared,
+            } => format!(
+                "{} have equal priors on {quantity} with independent errors, which gives `{departure}` a standard deviation of {independent:.3}; were it one error in all of them it would be {shared:.3}: if they share a source, say so with a [[systematic]]",
+                parameters.join(", ")
+            ),
+            Self::SmallSeparation {
+                bin,
+                separation,
+                worth,
+            } => format!(
+                "in `{bin}` 1 km/s of redshift offset is worth {worth:.2} in tau at the smallest separation, {separation} Mpc/h; give `offset` a prior, or drop the smallest separations with `keep`"
+            ),
+            Self::GrowthAssumed { hypothesis } => format!(
+                "`{hypothesis}` is felt by light alone: it takes matter to grow as in general relativity; free `growth_index`, or give `growth_rate`, to see how much hangs on that"
+            ),
+            Self::Untested { parameter, ratio } => format!(
+                "the posterior of `{parameter}` is {ratio:.2} times as wide as its prior: the data do not test it; widen the prior, or do not quote it as a measurement"
+            ),
+            Self::NotConverged {
+                parameter,
+                failed,
+                longer,
+            } => {
+                let longer = longer.map_or_else(
+                    || "run it longer".to_owned(),
+                    |longer| format!("run it about {longer:.1} times as long"),
+                );
+                format!("not converged: `{parameter}` has {failed}; {longer} (`--resume`)")
+            }
+            Self::UnaveragedShell { survey, difference } => format!(
+                "the rows of `{survey}` have no `low` and `high`: averaging over shells as wide as their spacing would change the prediction by up to {:.1} % of the multipole's largest value; add the two columns",
+                100.0 * difference
+            ),
+            Self::IgnoredColumn {
+                file,
+                column,
+                nearest,
+            } => {
+                let meant = nearest.as_ref().map_or_else(String::new, |name| {
+                    format!("; if it is `{name}`, map it in [survey.columns]")
+                });
+                format!("the column `{column}` of {file} is not read{meant}")
+            }
+        }
+    }
+}
+
+impl Serialize for Warning {
+    fn serialize<S: Serializer>(&self, serializer: S) -> Result<S::Ok, S::Error> {
+        let mut out = serializer.serialize_struct("Warning", 3)?;
+        out.serialize_field("code", self.code())?;
+        out.serialize_field("text", &self.text())?;
+        out.serialize_field("where", self.place())?;
+        out.end()
+    }
+}
