@@ -3,9 +3,21 @@
 //! This crate knows a [`Target`] (a log prior and a log likelihood over a fixed number of dimensions) and nothing of what
 //! it samples; it reads and writes no files.
 
+mod chain;
+pub mod diagnostics;
+mod error;
+mod peak;
 pub mod priors;
+mod settings;
 mod target;
 
+pub use chain::{
+    BestPoint, Chain, Draw, FailedTest, MoveAcceptance, Outcome, RejectedEvaluations, StopReason, Test,
+};
+pub use error::SamplerError;
+pub use peak::{Peak, PeakSettings, find_peak, find_peak_with};
 pub use priors::{JointNormal, Prior, PriorError, PriorFamily, PriorSet, PriorShape, SharedPrior, Truncated};
 pub use priors::{build_prior, prior_families, prior_family};
+pub use settings::{Control, EnsembleSettings, Phase, Progress};
+pub use settings::{DEFAULT_MAXIMUM_EVALUATIONS, MAXIMUM_RHAT, MINIMUM_EFFECTIVE_SAMPLES};
 pub use target::{EvaluationFailure, Target};

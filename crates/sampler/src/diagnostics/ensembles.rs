@@ -1,0 +1,168 @@
+//! Diagnostics of ensembles of walkers.
+//!
+//! Walkers of one ensemble propose from each other's positions, so they are not independent chains. Two routes see
+//! different parts of the autocorrelation, and the more pessimistic one counts:
+//! * every walker a chain: the correlation of a walker with its own past;
+//! * the mean over an ensemble, step by step, as one series: the correlation of walkers with each other's past as well
+//!   (Goodman & Weare 2010, §3), from few and long series, hence noisier.
+//!
+//! R̂ likewise is the larger of that of all walkers and that of whole ensembles, each one chain: the latter alone sees
+//! ensembles that have settled in different places (cf. Margossian et al. 2024, Bayesian Analysis 20, for chains in groups).
+
+use super::ess::effective_samples;
+use super::quantiles::{quantile_of_sorted, sorted};
+use super::ranks::{Chains, mean, rank_normalise, squares_about};
+use super::rhat::rank_normalised;
+use serde::{Deserialize, Serialize};
+
+/// What the draws of one parameter say, and how well.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct ParameterDiagnostics {
+    /// Mean.
+    pub mean: f64,
+    /// Standard deviation.
+    pub sd: f64,
+    /// Median.
+    pub median: f64,
+    /// Central interval of 68 %.
+    pub interval68: (f64, f64),
+    /// Central interval of 95 %.
+    pub interval95: (f64, f64),
+    /// Effective samples of the rank-normalised draws.
+    pub ess_bulk: f64,
+    /// Smaller of the effective samples of the 5 % and the 95 % quantile.
+    pub ess_tail: f64,
+    /// Effective samples of the mean.
+    pub ess_mean: f64,
+    /// Larger of the rank-normalised split R̂ of walkers and of ensembles.
+    pub rhat: f64,
+    /// Monte Carlo standard error of the mean.
+    pub mcse: f64,
+}
+
+impl ParameterDiagnostics {
+    const UNKNOWN: Self = Self {
+        mean: f64::NAN,
+        sd: f64::NAN,
+        median: f64::NAN,
+        interval68: (f64::NAN, f64::NAN),
+        interval95: (f64::NAN, f64::NAN),
+        ess_bulk: f64::NAN,
+        ess_tail: f64::NAN,
+        ess_mean: f64::NAN,
+        rhat: f64::NAN,
+        mcse: f64::NAN,
+    };
+}
+
+/// Diagnostics of one quantity over ensembles of walkers.
+///
+/// `values` are ordered by ensemble, then step, then walker (as the rows of a [`crate::Chain`]). All NaN where the length
+/// is no multiple of `ensembles · walkers`, where there are fewer than 4 steps, or where a value is not finite.
+pub fn diagnose_ensembles(values: &[f64], ensembles: usize, walkers: usize) -> ParameterDiagnostics {
+    let group = ensembles * walkers;
+    if group == 0 || !values.len().is_multiple_of(group) || values.iter().any(|value| !value.is_finite()) {
+        return ParameterDiagnostics::UNKNOWN;
+    }
+    let shape = Shape {
+        ensembles,
+        walkers,
+        steps: values.len() / group,
+    };
+    if shape.steps < 4 {
+        return ParameterDiagnostics::UNKNOWN;
+    }
+    let sorted = sorted(values);
+    let at = |p: f64| quantile_of_sorted(&sorted, p);
+    let centre = mean(values);
+    let variance = squares_about(values, centre) / (values.len() as f64 - 1.0);
+    let ess_mean = shape.effective_samples(values);
+    let tail = |p: f64| {
+        let level = at(p);
+        let indicator: Vec<f64> = values
+            .iter()
+            .map(|value| f64::from(u8::from(*value <= level)))
+            .collect();
+        shape.effective_samples(&indicator)
+    };
+    ParameterDiagnostics {
+        mean: centre,
+        sd: variance.sqrt(),
+        median: at(0.5),
+        interval68: (at(0.16), at(0.84)),
+        interval95: (at(0.025), at(0.975)),
+        ess_bulk: shape.effective_samples(&rank_normalise(values)),
+        ess_tail: tail(0.05).min(tail(0.95)),
+        ess_mean,
+        rhat: shape.rhat(values),
+        mcse: (variance / ess_mean).sqrt(),
+    }
+}
+
+/// How rows are laid out: ensemble, step, walker.
+#[derive(Debug, Clone, Copy)]
+pub(crate) struct Shape {
+    pub(crate) ensembles: usize,
+    pub(crate) walkers: usize,
+    pub(crate) steps: usize,
+}
+
+impl Shape {
+    /// Every walker as a chain.
+    pub(crate) fn walker_chains(self, values: &[f64]) -> Chains {
+        let mut chains = Vec::with_capacity(values.len());
+        for ensemble in values.chunks_exact(self.steps * self.walkers) {
+            for walker in 0..self.walkers {
+                chains.extend(ensemble.iter().skip(walker).step_by(self.walkers));
+            }
+        }
+        Chains {
+            values: chains,
+            length: self.steps,
+        }
+    }
+
+    /// The mean over each ensemble, step by step, as a chain.
+    pub(crate) fn ensemble_means(self, values: &[f64]) -> Chains {
+        Chains {
+            values: values.chunks_exact(self.walkers).map(mean).collect(),
+            length: self.steps,
+        }
+    }
+
+    /// Effective samples of the mean of `values`: the smaller of both routes.
+    pub(crate) fn effective_samples(self, values: &[f64]) -> f64 {
+        self.walker_route(values).min(self.ensemble_route(values))
+    }
+
+    /// Every walker a chain.
+    pub(crate) fn walker_route(self, values: &[f64]) -> f64 {
+        effective_samples(&self.walker_chains(values).split())
+    }
+
+    /// Variance of one draw over the Monte Carlo variance of the mean of the ensembles' mean series.
+    pub(crate) fn ensemble_route(self, values: &[f64]) -> f64 {
+        let variance = squares_about(values, mean(values)) / values.len() as f64;
+        let means = self.ensemble_means(values);
+        let of_means = squares_about(&means.values, mean(&means.values)) / means.values.len() as f64;
+        if !(of_means > 0.0) {
+            return values.len() as f64;
+        }
+        effective_samples(&means.split()) * variance / of_means
+    }
+
+    /// The larger of R̂ of walkers and R̂ of ensembles.
+    pub(crate) fn rhat(self, values: &[f64]) -> f64 {
+        let walkers = rank_normalised(&self.walker_chains(values).split());
+        let whole = Chains {
+            values: values.to_vec(),
+            length: self.steps * self.walkers,
+        };
+        let ensembles = rank_normalised(&whole.split());
+        if walkers.is_nan() || ensembles.is_nan() {
+            f64::NAN
+        } else {
+            walkers.max(ensembles)
+        }
+    }
+}

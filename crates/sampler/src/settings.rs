@@ -1,0 +1,99 @@
+//! What a run is asked for, and what it reports on the way.
+
+use serde::{Deserialize, Serialize};
+
+/// Rank-normalised split R̂ that every parameter must stay below (Vehtari et al. 2021, Bayesian Analysis 16, 667, §4.4).
+pub const MAXIMUM_RHAT: f64 = 1.01;
+
+/// Bulk and tail effective samples that every parameter must reach: 100 a chain, four split chains (the same, §4.4).
+pub const MINIMUM_EFFECTIVE_SAMPLES: f64 = 400.0;
+
+/// Evaluations after which a run gives up where the settings name no limit.
+pub const DEFAULT_MAXIMUM_EVALUATIONS: u64 = 50_000_000;
+
+/// How to sample. [`Default`] is meant to be right; only `watched` has to be filled in.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct EnsembleSettings {
+    /// Independent ensembles, each with its own random streams; at least 2, or R̂ has nothing to compare.
+    pub ensembles: usize,
+    /// Walkers of one ensemble: even, at least 2·dimension + 2; by default chosen from the dimension.
+    pub walkers: Option<usize>,
+    /// The seed that every random number follows from.
+    pub seed: u64,
+    /// Effective samples that every watched parameter must reach, bulk and mean.
+    pub effective_samples: f64,
+    /// Indices of the parameters that must reach `effective_samples`. The others (all, if this is empty) must reach
+    /// `minimum_effective_samples`.
+    pub watched: Vec<usize>,
+    /// Evaluations of the likelihood after which sampling stops unconverged; by default [`DEFAULT_MAXIMUM_EVALUATIONS`].
+    pub maximum_evaluations: Option<u64>,
+    /// Bulk and tail effective samples that every parameter must reach.
+    pub minimum_effective_samples: f64,
+    /// Rank-normalised split R̂ that every parameter must stay below.
+    pub maximum_rhat: f64,
+    /// Draws kept in memory over all ensembles: when they are exceeded, every second one is dropped, and from then on
+    /// only every second (fourth, …) step is kept. By default 65,536 or 16 times `effective_samples`, whichever is more.
+    pub maximum_draws: Option<usize>,
+    /// Weights of the moves by their registry name; empty for the measured defaults of [`crate::moves::move_families`].
+    pub move_weights: Vec<(String, f64)>,
+}
+
+impl Default for EnsembleSettings {
+    fn default() -> Self {
+        Self {
+            ensembles: 4,
+            walkers: None,
+            seed: 1,
+            effective_samples: 4000.0,
+            watched: vec![],
+            maximum_evaluations: None,
+            minimum_effective_samples: MINIMUM_EFFECTIVE_SAMPLES,
+            maximum_rhat: MAXIMUM_RHAT,
+            maximum_draws: None,
+            move_weights: vec![],
+        }
+    }
+}
+
+/// What a run is busy with.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+pub enum Phase {
+    /// Looking for the posterior's peak.
+    Peak,
+    /// Waiting until the walkers have forgotten where they started.
+    WarmUp,
+    /// Collecting draws.
+    Sampling,
+}
+
+/// What the stop rule sees, a few times a second.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Progress {
+    /// What the run is busy with.
+    pub phase: Phase,
+    /// Evaluations of the likelihood so far, those of the peak search and the warm-up included.
+    pub evaluations: u64,
+    /// Evaluations at which the run gives up.
+    pub maximum_evaluations: u64,
+    /// Steps that every walker has made.
+    pub steps: u64,
+    /// Seconds since the run started.
+    pub elapsed_seconds: f64,
+    /// Smallest effective samples among the watched parameters (among all, if none is watched) at the last check.
+    pub effective_samples: Option<f64>,
+    /// What that number must reach.
+    pub wanted_samples: f64,
+    /// Largest R̂ at the last check, and whose.
+    pub worst_rhat: Option<(usize, f64)>,
+    /// Estimated evaluations until every test passes, if nothing changes.
+    pub remaining_evaluations: Option<f64>,
+}
+
+/// What the caller wants next.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Control {
+    /// Go on.
+    Continue,
+    /// Stop after the step at hand, and hand back what there is.
+    Stop,
+}
