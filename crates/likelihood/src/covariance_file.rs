@@ -6,11 +6,14 @@ use std::path::Path;
 use nalgebra::DMatrix;
 
 use crate::covariance::Covariance;
-use crate::error::DataError;
+use crate::error::{DataError, shown};
 use crate::header::Header;
 use crate::records::{Records, finite_number};
 use crate::rows::{RowIndex, RowKey, RowReader};
-use crate::table::MultipoleTable;
+use crate::table::{MeasuredRow, MultipoleTable};
+
+const MATRIX: &str = "a square matrix, one line a row";
+const ROWS: &str = "a header such as bin,multipole,separation and a line for each row of the covariance";
 
 /// Reads a square CSV file without a header as the covariance of `rows` rows; lines that begin with `#` are notes.
 ///
@@ -20,25 +23,46 @@ use crate::table::MultipoleTable;
 /// No such file; text in a number or a number that is not finite (line and column named); lines of unequal length;
 /// not `rows` × `rows`; not symmetric; a variance ≤ 0.
 pub fn read_covariance_csv(path: impl AsRef<Path>, rows: usize) -> Result<Covariance, DataError> {
-    let records = Records::read(path.as_ref(), "a square matrix, one line a row")?;
-    let (found_rows, columns) = (records.records.len(), records.records[0].fields.len());
-    let entry = |line: u64, column: usize, text: &str| {
-        finite_number(text, || records.place(line, &(column + 1).to_string()))
-    };
-    if found_rows != rows || columns != rows {
-        // A header is the likeliest reason for one line too many: say so at its place.
-        let first = &records.records[0];
-        for (column, text) in first.fields.iter().enumerate() {
-            entry(first.line, column, text)?;
-        }
-        let way_out = match found_rows == columns && found_rows > rows {
-            true => "if it holds more rows than the table, name its rows with `covariance_rows`",
-            false => "give the covariance of the table's rows, before any `keep`, in the table's order",
+    covariance_from(Records::read(path.as_ref(), MATRIX)?, rows)
+}
+
+impl Covariance {
+    /// As [`read_covariance_csv`], from memory; `file` names it in messages.
+    ///
+    /// # Errors
+    /// As [`read_covariance_csv`].
+    pub fn parse_csv(file: &str, bytes: &[u8], rows: usize) -> Result<Self, DataError> {
+        covariance_from(Records::parse(file.to_owned(), bytes, MATRIX)?, rows)
+    }
+}
+
+fn covariance_from(records: Records, rows: usize) -> Result<Covariance, DataError> {
+    let first = &records.records[0];
+    if first
+        .fields
+        .iter()
+        .all(|text| text.parse::<f64>().is_err() && !text.contains(char::is_whitespace))
+    {
+        let text = shown(&first.fields[0]);
+        return Err(DataError::MatrixHeader {
+            file: records.file.clone(),
+            line: first.line,
+            text,
+        });
+    }
+    let (lines, columns) = (records.records.len(), first.fields.len());
+    if (lines, columns) != (rows, rows) {
+        let way_out = if columns == 1 && rows > 1 {
+            "separate the numbers of a line with commas"
+        } else if lines == columns && lines > rows {
+            "if it holds more rows than the table, name its rows with `covariance_rows`"
+        } else {
+            "give the covariance of all rows of the table, in the table's order"
         };
         return Err(DataError::CovarianceSize {
             file: records.file,
             expected: rows,
-            rows: found_rows,
+            rows: lines,
             columns,
             way_out,
         });
@@ -47,7 +71,7 @@ pub fn read_covariance_csv(path: impl AsRef<Path>, rows: usize) -> Result<Covari
     let mut matrix = DMatrix::zeros(rows, rows);
     for (i, record) in records.records.iter().enumerate() {
         for (j, text) in record.fields.iter().enumerate() {
-            matrix[(i, j)] = entry(record.line, j, text)?;
+            matrix[(i, j)] = finite_number(text, || records.place(record.line, &(j + 1).to_string()))?;
         }
     }
     let labels = records
@@ -69,7 +93,8 @@ pub struct CovarianceRows {
 }
 
 /// Reads a `covariance_rows` file: a CSV header `bin`, `multipole`, `separation` or `wavenumber`, optionally `pair`, and
-/// below it a line for each row of the covariance, in its order. It may hold more rows than the table.
+/// below it a line for each row of the covariance, in its order. It may hold more rows than the table. `columns` is the
+/// table's, of which the entries for other columns are passed over.
 ///
 /// # Errors
 /// As [`read_multipoles`](crate::read_multipoles); two lines for the same row are an error.
@@ -77,51 +102,56 @@ pub fn read_covariance_rows(
     path: impl AsRef<Path>,
     columns: &BTreeMap<String, String>,
 ) -> Result<CovarianceRows, DataError> {
-    let wanted = "a header such as bin,multipole,separation and a line for each row of the covariance";
-    let records = Records::read(path.as_ref(), wanted)?;
-    let known_only: BTreeMap<String, String> = columns
-        .iter()
-        .filter(|(name, _)| !["low", "high", "value", "error"].contains(&name.as_str()))
-        .map(|(name, in_file)| (name.clone(), in_file.clone()))
-        .collect();
-    let header = Header::new(&records, &COVARIANCE_ROW_COLUMNS, &known_only)?;
-    for any_of in [&["bin"][..], &["multipole"], &["separation", "wavenumber"]] {
-        header.require(&records, any_of)?;
-    }
-    records.check_field_counts()?;
-    let mut index = RowIndex::default();
-    let mut keys: Vec<RowKey> = Vec::new();
-    for record in &records.records[1..] {
-        let key = RowReader {
-            records: &records,
-            header: &header,
-            record,
-        }
-        .key()?;
-        if let Some(first) = index.find(&key) {
-            return Err(DataError::DuplicateRow {
-                file: records.file.clone(),
-                line: record.line,
-                first: records.records[first + 1].line,
-                row: key.to_string(),
-            });
-        }
-        index.insert(&key, keys.len());
-        keys.push(key);
-    }
-    if keys.is_empty() {
-        return Err(DataError::NoRows {
-            file: records.file,
-            line: records.records[0].line,
-        });
-    }
-    Ok(CovarianceRows {
-        file: records.file,
-        keys,
-    })
+    CovarianceRows::from_records(&Records::read(path.as_ref(), ROWS)?, columns)
 }
 
 impl CovarianceRows {
+    /// As [`read_covariance_rows`], from memory; `file` names it in messages.
+    ///
+    /// # Errors
+    /// As [`read_covariance_rows`].
+    pub fn parse(file: &str, bytes: &[u8], columns: &BTreeMap<String, String>) -> Result<Self, DataError> {
+        Self::from_records(&Records::parse(file.to_owned(), bytes, ROWS)?, columns)
+    }
+
+    fn from_records(records: &Records, columns: &BTreeMap<String, String>) -> Result<Self, DataError> {
+        let of_the_table_only = ["low", "high", "value", "error"];
+        let columns = columns
+            .iter()
+            .filter(|(name, _)| !of_the_table_only.contains(&name.as_str()));
+        let columns = columns
+            .map(|(name, in_file)| (name.clone(), in_file.clone()))
+            .collect();
+        let header = Header::new(records, &COVARIANCE_ROW_COLUMNS, &columns)?;
+        for any_of in [&["bin"][..], &["multipole"], &["separation", "wavenumber"]] {
+            header.require(records, any_of)?;
+        }
+        let file = records.file.clone();
+        let below = records.below_header()?;
+        let mut index = RowIndex::default();
+        let mut keys: Vec<RowKey> = Vec::with_capacity(below.len());
+        for record in below {
+            let key = RowReader {
+                records,
+                header: &header,
+                record,
+            }
+            .key()?;
+            if let Some(earlier) = index.find(&key) {
+                let (line, first) = (record.line, below[earlier].line);
+                return Err(DataError::DuplicateRow {
+                    file,
+                    line,
+                    first,
+                    row: key.to_string(),
+                });
+            }
+            index.insert(&key, keys.len());
+            keys.push(key);
+        }
+        Ok(Self { file, keys })
+    }
+
     /// Number of rows, so the size of the covariance.
     pub fn len(&self) -> usize {
         self.keys.len()
@@ -142,7 +172,7 @@ impl CovarianceRows {
         for (position, key) in self.keys.iter().enumerate() {
             index.insert(key, position);
         }
-        let position = |row: &crate::table::MeasuredRow| {
+        let position = |row: &MeasuredRow| {
             index
                 .find(&row.key())
                 .ok_or_else(|| DataError::RowNotInCovariance {

@@ -302,6 +302,18 @@ pub enum DataError {
         /// What to do.
         way_out: &'static str,
     },
+    /// A line of names above a matrix.
+    #[error(
+        "{file}, line {line}: a covariance has no header, found `{text}`; begin the line with # to make it a note"
+    )]
+    MatrixHeader {
+        /// The path, as it was given.
+        file: String,
+        /// The line.
+        line: u64,
+        /// Its first field.
+        text: String,
+    },
     /// A measured row that `covariance_rows` does not hold.
     #[error(
         "{file}: has no row for {row}, which {table}, line {line}, measures; add the row, with its line and column in the covariance, or cut it with `keep`"
@@ -328,20 +340,18 @@ pub enum DataError {
         /// Upper end.
         high: f64,
     },
-    /// A `keep` entry that names something no row has.
-    #[error("entry {entry} of `keep`: no row of {file} has the {what} `{name}`{}; the table has {known}", did_you_mean(.nearest))]
+    /// A `keep` entry that names something that does not exist.
+    #[error("entry {entry} of `keep`: there is no {what} `{name}`, only {known}{}", did_you_mean(.nearest))]
     KeepUnknown {
         /// Entry number, from 1.
         entry: usize,
-        /// The table's file.
-        file: String,
         /// `bin`, `pair` or `multipole`.
         what: &'static str,
         /// What was asked for.
         name: String,
-        /// The nearest name in the table.
+        /// The nearest that there is.
         nearest: Option<String>,
-        /// What the table has.
+        /// What there is.
         known: String,
     },
     /// No row passes.
@@ -400,6 +410,14 @@ pub(crate) fn nearest<'a>(word: &str, candidates: impl IntoIterator<Item = &'a s
         .filter(|(similarity, _)| *similarity >= 0.5)
         .max_by(|left, right| left.0.total_cmp(&right.0))
         .map(|(_, name)| name.to_owned())
+}
+
+/// At most 40 characters of what stands in a file.
+pub(crate) fn shown(text: &str) -> String {
+    match text.char_indices().nth(40) {
+        None => text.to_owned(),
+        Some((end, _)) => format!("{}…", &text[..end]),
+    }
 }
 
 /// Names in backticks, comma-separated.

@@ -1,7 +1,7 @@
 //! Which rows of a table enter the likelihood.
 
 use crate::error::{DataError, listed, nearest};
-use crate::rows::Axis;
+use crate::rows::{Axis, PAIRS};
 use crate::table::{MeasuredRow, MultipoleTable};
 
 /// Slack of an end, relative to it: a shell that ends at 144 Mpc/h still lies inside [24, 144] after its ends went
@@ -46,7 +46,8 @@ impl Keep {
             && self.pairs.as_ref().is_none_or(|list| list.contains(&row.pair))
     }
 
-    /// Names in the entry must be in the table: a slip of the pen would otherwise cut data without a word.
+    /// Names must exist: a slip of the pen would otherwise cut data without a word. A pair or multipole that exists
+    /// and that the table lacks is no mistake.
     fn check(&self, entry: usize, table: &MultipoleTable) -> Result<(), DataError> {
         for (what, interval) in [("separation", self.separation), ("wavenumber", self.wavenumber)] {
             if let Some((low, high)) =
@@ -60,37 +61,31 @@ impl Keep {
                 });
             }
         }
-        let of = |of_row: fn(&MeasuredRow) -> String| {
-            let mut names: Vec<String> = Vec::new();
-            for row in &table.rows {
-                let name = of_row(row);
-                if !names.contains(&name) {
-                    names.push(name);
-                }
-            }
-            names
-        };
-        let multipoles = self
-            .multipoles
-            .as_ref()
-            .map(|list| list.iter().map(u8::to_string).collect());
+        if let Some(order) = self.multipoles.iter().flatten().find(|order| **order > 4) {
+            return Err(DataError::KeepUnknown {
+                entry,
+                what: "multipole",
+                name: order.to_string(),
+                nearest: None,
+                known: listed(["0", "1", "2", "3", "4"]),
+            });
+        }
+        let bins = table.bins();
         for (what, wanted, known) in [
-            ("bin", self.bins.clone(), of(|row| row.bin.clone())),
-            ("pair", self.pairs.clone(), of(|row| row.pair.clone())),
-            ("multipole", multipoles, of(|row| row.multipole.to_string())),
+            ("bin", &self.bins, bins.as_slice()),
+            ("pair", &self.pairs, &PAIRS),
         ] {
             if let Some(name) = wanted
-                .unwrap_or_default()
-                .into_iter()
-                .find(|name| !known.contains(name))
+                .iter()
+                .flatten()
+                .find(|name| !known.contains(&name.as_str()))
             {
                 return Err(DataError::KeepUnknown {
                     entry,
-                    file: table.file.clone(),
                     what,
-                    nearest: nearest(&name, known.iter().map(String::as_str)),
-                    name,
-                    known: listed(known.iter().map(String::as_str)),
+                    name: name.clone(),
+                    nearest: nearest(name, known.iter().copied()),
+                    known: listed(known.iter().copied()),
                 });
             }
         }
@@ -110,7 +105,7 @@ pub struct Kept {
 /// Applies a list of `keep` entries: a row stays if it passes any of them. An empty list keeps everything.
 ///
 /// # Errors
-/// An interval inside out, a bin, pair or multipole that no row has, nothing left.
+/// An interval inside out, a bin that no row has, an unknown pair or multipole, nothing left.
 pub fn keep_rows(table: &MultipoleTable, keep: &[Keep]) -> Result<Kept, DataError> {
     for (entry, criteria) in keep.iter().enumerate() {
         criteria.check(entry + 1, table)?;

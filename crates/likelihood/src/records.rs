@@ -4,7 +4,7 @@ use std::path::Path;
 
 use csv::{ReaderBuilder, StringRecord, Trim};
 
-use crate::error::{DataError, Place};
+use crate::error::{DataError, Place, shown};
 
 /// One line of fields.
 #[derive(Clone, Debug)]
@@ -93,6 +93,18 @@ impl Records {
         }
     }
 
+    /// The records below the header, of which there must be one and which must have as many fields as it.
+    pub(crate) fn below_header(&self) -> Result<&[Record], DataError> {
+        self.check_field_counts()?;
+        match self.records.as_slice() {
+            [header] => Err(DataError::NoRows {
+                file: self.file.clone(),
+                line: header.line,
+            }),
+            records => Ok(&records[1..]),
+        }
+    }
+
     /// Every record must have as many fields as the first.
     pub(crate) fn check_field_counts(&self) -> Result<(), DataError> {
         let Some(first) = self.records.first() else {
@@ -120,11 +132,11 @@ pub(crate) fn finite_number(text: &str, place: impl FnOnce() -> Place) -> Result
     match text.parse::<f64>() {
         Err(_) => Err(DataError::NotANumber {
             place: place(),
-            text: text.to_owned(),
+            text: shown(text),
         }),
         Ok(value) if !value.is_finite() => Err(DataError::NotFinite {
             place: place(),
-            text: text.to_owned(),
+            text: shown(text),
         }),
         Ok(value) => Ok(value),
     }

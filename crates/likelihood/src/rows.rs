@@ -2,7 +2,7 @@
 
 use std::collections::HashMap;
 
-use crate::error::{DataError, Place, nearest};
+use crate::error::{DataError, Place, nearest, shown};
 use crate::header::Header;
 use crate::records::{Record, Records, finite_number};
 
@@ -114,7 +114,7 @@ impl RowReader<'_> {
             Some(order) => Ok(order),
             None => Err(DataError::BadMultipole {
                 place: self.place("multipole"),
-                text: text.to_owned(),
+                text: shown(text),
             }),
         }
     }
@@ -135,7 +135,7 @@ impl RowReader<'_> {
         };
         Err(DataError::UnknownPair {
             place: self.place("pair"),
-            text: text.to_owned(),
+            text: shown(text),
             way_out,
         })
     }

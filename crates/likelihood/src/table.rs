@@ -103,14 +103,7 @@ impl MultipoleTable {
                 header.require(records, &[other])?;
             }
         }
-        let (first, below) = records.records.split_first().expect("records are never empty");
-        if below.is_empty() {
-            return Err(DataError::NoRows {
-                file: records.file.clone(),
-                line: first.line,
-            });
-        }
-        records.check_field_counts()?;
+        let below = records.below_header()?;
         let mut index = RowIndex::default();
         let mut rows: Vec<MeasuredRow> = Vec::with_capacity(below.len());
         for record in below {
