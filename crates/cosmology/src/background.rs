@@ -53,20 +53,10 @@ impl Background {
             ("wa", wa, "give 0 for a constant equation of state"),
         ] {
             if !value.is_finite() {
-                return Err(CosmologyError::OutOfRange {
-                    name,
-                    value,
-                    rule: "finite",
-                    way_out,
-                });
+                return Err(CosmologyError::OutOfRange { name, value, rule: "finite", way_out });
             }
         }
-        Ok(Self {
-            omega_m,
-            omega_k,
-            w0,
-            wa,
-        })
+        Ok(Self { omega_m, omega_k, w0, wa })
     }
 
     /// Ωde = 1 − Ωm − Ωk.
@@ -76,17 +66,38 @@ impl Background {
 
     /// Density of dark energy at `a` over today's: a^(−3(1+w0+wa)) exp(−3 wa (1−a)).
     pub fn dark_energy_density(&self, a: f64) -> f64 {
+        self.dark_energy_density_at(a, || a.ln())
+    }
+
+    /// The same where ln a is known, or not needed.
+    fn dark_energy_density_at(&self, a: f64, log_a: impl Fn() -> f64) -> f64 {
         if self.w0 == -1.0 && self.wa == 0.0 {
             return 1.0;
         }
-        (-3.0 * ((1.0 + self.w0 + self.wa) * a.ln() + self.wa * (1.0 - a))).exp()
+        (-3.0 * ((1.0 + self.w0 + self.wa) * log_a() + self.wa * (1.0 - a))).exp()
+    }
+
+    /// The three terms of E²: matter, curvature, dark energy.
+    fn terms(&self, a: f64, log_a: impl Fn() -> f64) -> [f64; 3] {
+        let inverse = 1.0 / a;
+        let square = inverse * inverse;
+        [
+            self.omega_m * inverse * square,
+            self.omega_k * square,
+            self.omega_de() * self.dark_energy_density_at(a, log_a),
+        ]
+    }
+
+    /// d ln E/d ln a from the terms of E².
+    fn slope(&self, a: f64, [matter, curvature, dark_energy]: [f64; 3]) -> f64 {
+        let state = self.w0 + self.wa * (1.0 - a);
+        -0.5 * (3.0 * matter + 2.0 * curvature + 3.0 * (1.0 + state) * dark_energy)
+            / (matter + curvature + dark_energy)
     }
 
     /// E² = (H/H0)², which can be negative where there is no such universe.
     pub fn expansion_squared(&self, a: f64) -> f64 {
-        let inverse = 1.0 / a;
-        (self.omega_m * inverse + self.omega_k) * inverse * inverse
-            + self.omega_de() * self.dark_energy_density(a)
+        self.terms(a, || a.ln()).iter().sum()
     }
 
     /// E = H/H0 with the proper Hubble rate H, at a > 0; NaN where E² < 0.
@@ -94,15 +105,16 @@ impl Background {
         self.expansion_squared(a).sqrt()
     }
 
-    /// d ln E/d ln a = −[3Ωm a⁻³ + 2Ωk a⁻² + 3(1+w(a)) Ωde X(a)]/(2E²).
+    /// d ln E/d ln a = −[3Ωm a⁻³ + 2Ωk a⁻² + 3(1+w(a)) Ωde X(a)]/(2E²), X the density of dark energy over today's.
     pub fn expansion_slope(&self, a: f64) -> f64 {
-        let inverse = 1.0 / a;
-        let matter = self.omega_m * inverse * inverse * inverse;
-        let curvature = self.omega_k * inverse * inverse;
-        let dark_energy = self.omega_de() * self.dark_energy_density(a);
-        let state = self.w0 + self.wa * (1.0 - a);
-        -0.5 * (3.0 * matter + 2.0 * curvature + 3.0 * (1.0 + state) * dark_energy)
-            / (matter + curvature + dark_energy)
+        self.slope(a, self.terms(a, || a.ln()))
+    }
+
+    /// (a, d ln E/d ln a, Ωm(a)) at ln a: what the growth equation asks for at every step, for the price of two exponentials.
+    pub(crate) fn growth_terms(&self, log_a: f64) -> (f64, f64, f64) {
+        let a = log_a.exp();
+        let terms = self.terms(a, || log_a);
+        (a, self.slope(a, terms), terms[0] / terms.iter().sum::<f64>())
     }
 
     /// Ωm(a): matter over the critical density at `a`.
@@ -137,8 +149,9 @@ impl Background {
         let half = 0.5 * z.ln_1p();
         let sum: f64 = (DISTANCE_RULE.nodes.iter().zip(&DISTANCE_RULE.weights))
             .map(|(node, weight)| {
-                let a = (-half * (1.0 + node)).exp();
-                weight / (a * self.expansion(a))
+                let log_a = -half * (1.0 + node);
+                let a = log_a.exp();
+                weight / (a * self.terms(a, || log_a).iter().sum::<f64>().sqrt())
             })
             .sum();
         HUBBLE_DISTANCE * half * sum
@@ -174,9 +187,12 @@ impl Background {
 
     /// Where E² ≤ 0 first (as (a, E²)), between scale factor `a` and today, if it is anywhere.
     ///
-    /// E² a³ is looked at on a grid in ln a, and where an inner grid point is lower than its neighbours the minimum between
+    /// With no negative term there is nowhere. Else E² a³ is looked at on a grid in ln a, and where an inner grid point is lower than its neighbours the minimum between
     /// them is found by golden section, so that a dip between two grid points does not go unseen.
     pub(crate) fn missing_past(&self, a: f64) -> Option<(f64, f64)> {
+        if self.omega_k >= 0.0 && self.omega_de() >= 0.0 {
+            return None;
+        }
         const STEPS: usize = 64;
         const GOLDEN: f64 = 0.618_033_988_749_894_9;
         let start = a.ln();
@@ -188,11 +204,7 @@ impl Background {
         let values: Vec<f64> = (0..=STEPS).map(|index| at(place(index))).collect();
         // The test is written so that NaN fails it.
         let found = |x: f64, value: f64| {
-            if value > 0.0 {
-                None
-            } else {
-                Some((x.exp(), self.expansion_squared(x.exp())))
-            }
+            if value > 0.0 { None } else { Some((x.exp(), self.expansion_squared(x.exp()))) }
         };
         for index in (0..=STEPS).rev() {
             if let Some(found) = found(place(index), values[index]) {
@@ -202,11 +214,7 @@ impl Background {
                 let (mut low, mut high) = (place(index - 1), place(index + 1));
                 for _ in 0..60 {
                     let (inner_low, inner_high) = (high - GOLDEN * (high - low), low + GOLDEN * (high - low));
-                    if at(inner_low) < at(inner_high) {
-                        high = inner_high
-                    } else {
-                        low = inner_low
-                    }
+                    if at(inner_low) < at(inner_high) { high = inner_high } else { low = inner_low }
                 }
                 let middle = 0.5 * (low + high);
                 if let Some(found) = found(middle, at(middle)) {

@@ -30,10 +30,7 @@ const DOUBLE_FACTORIAL: [f64; HIGHEST_ORDER + 1] = [1.0, 3.0, 15.0, 105.0, 945.0
 
 fn series(order: usize, x: f64) -> f64 {
     let square = x * x;
-    let sum = SERIES[order]
-        .iter()
-        .rev()
-        .fold(0.0, |sum, coefficient| sum * square + coefficient);
+    let sum = SERIES[order].iter().rev().fold(0.0, |sum, coefficient| sum * square + coefficient);
     x.powi(order as i32) / DOUBLE_FACTORIAL[order] * sum
 }
 
@@ -61,13 +58,7 @@ pub fn spherical_bessel_all(x: f64) -> [f64; HIGHEST_ORDER + 1] {
         return [1.0, 0.0, 0.0, 0.0, 0.0];
     }
     if x.abs() < SERIES_BELOW {
-        return [
-            x.sin() / x,
-            series(1, x),
-            series(2, x),
-            series(3, x),
-            series(4, x),
-        ];
+        return [x.sin() / x, series(1, x), series(2, x), series(3, x), series(4, x)];
     }
     let inverse = 1.0 / x;
     let (sine, cosine) = x.sin_cos();

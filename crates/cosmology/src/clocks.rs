@@ -50,43 +50,16 @@ pub fn clock_contrast(
     distortion: &dyn Fn(f64) -> f64,
     growth: &dyn Fn(f64) -> f64,
 ) -> Result<ClockContrast, CosmologyError> {
-    let ClockSetting {
-        redshift,
-        distance,
-        damping,
-        reached,
-    } = *setting;
-    let fail = |name, value, rule, way_out| {
-        Err(CosmologyError::OutOfRange {
-            name,
-            value,
-            rule,
-            way_out,
-        })
-    };
+    let ClockSetting { redshift, distance, damping, reached } = *setting;
+    let fail = |name, value, rule, way_out| Err(CosmologyError::OutOfRange { name, value, rule, way_out });
     if !(redshift >= 0.0 && redshift.is_finite()) {
-        return fail(
-            "redshift",
-            redshift,
-            "at least 0 and finite",
-            "give the redshift of the bin",
-        );
+        return fail("redshift", redshift, "at least 0 and finite", "give the redshift of the bin");
     }
     if !(distance > 0.0 && distance.is_finite()) {
-        return fail(
-            "clock_distance",
-            distance,
-            "above 0 and finite",
-            "give it in Mpc/h, such as 50",
-        );
+        return fail("clock_distance", distance, "above 0 and finite", "give it in Mpc/h, such as 50");
     }
     if !(damping >= 0.0 && damping.is_finite()) {
-        return fail(
-            "damping",
-            damping,
-            "at least 0 and finite",
-            "give it in Mpc/h, such as 0.5",
-        );
+        return fail("damping", damping, "at least 0 and finite", "give it in Mpc/h, such as 0.5");
     }
     let a = 1.0 / (1.0 + redshift);
     let hubble_square = background.expansion_squared(a) * (a / HUBBLE_DISTANCE).powi(2);
@@ -100,11 +73,7 @@ pub fn clock_contrast(
         edge = (edge * 1.8).min(edge + widest.min(PI / distance)).min(high);
         edges.push(edge);
     }
-    edges.extend(
-        [reached.0, reached.1]
-            .into_iter()
-            .filter(|k| (low..high).contains(k)),
-    );
+    edges.extend([reached.0, reached.1].into_iter().filter(|k| (low..high).contains(k)));
     edges.sort_by(f64::total_cmp);
     let rule = composite(&edges, POINTS);
     let (mut total, mut inside) = (0.0, 0.0);
@@ -121,10 +90,7 @@ pub fn clock_contrast(
             inside += term;
         }
     }
-    Ok(ClockContrast {
-        ratio: total.sqrt(),
-        share: inside / total,
-    })
+    Ok(ClockContrast { ratio: total.sqrt(), share: inside / total })
 }
 
 const WIGGLES_UNTIL: f64 = 0.4;

@@ -49,11 +49,7 @@ impl Epoch {
         }
         let a = 1.0 / (1.0 + redshift);
         if let Some((at, value)) = background.missing_past(a) {
-            return Err(CosmologyError::NoExpansion {
-                redshift: 1.0 / at - 1.0,
-                value,
-                asked: redshift,
-            });
+            return Err(CosmologyError::NoExpansion { redshift: 1.0 / at - 1.0, value, asked: redshift });
         }
         let comoving_distance = background.comoving_distance(redshift);
         if background.omega_k < 0.0 {

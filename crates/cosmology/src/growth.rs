@@ -53,18 +53,16 @@ struct Equation<'a> {
 
 impl Equation<'_> {
     /// (2 + d ln E/d ln a, 1.5 Ωm(a) G(a)): friction and pull.
-    fn terms(&self, a: f64) -> (f64, f64) {
-        let friction = 2.0 + self.background.expansion_slope(a);
-        (
-            friction,
-            1.5 * self.background.matter_fraction(a) * (self.gravity)(a),
-        )
+    fn terms(&self, log_a: f64) -> (f64, f64) {
+        let (a, slope, matter_fraction) = self.background.growth_terms(log_a);
+        // e^(ln a) may come out a last digit above 1, where G need not be defined.
+        (2.0 + slope, 1.5 * matter_fraction * (self.gravity)(a.min(1.0)))
     }
 }
 
 impl System<f64, Vector3<f64>> for Equation<'_> {
     fn system(&self, _: f64, state: &Vector3<f64>, slope: &mut Vector3<f64>) {
-        let (friction, pull) = self.terms(state[2].exp());
+        let (friction, pull) = self.terms(state[2]);
         slope[0] = state[1];
         slope[1] = (pull - 1.0 - friction) * state[0] - (2.0 + friction) * state[1];
         slope[2] = 1.0;
@@ -95,14 +93,7 @@ pub fn growth_history(
     let equation = Equation { background, gravity };
     let mut log_a = STARTING_SCALE_FACTOR.ln();
     let mut state = Vector3::new(1.0, 0.0, log_a);
-    let mut history = vec![
-        RawGrowth {
-            growth: 0.0,
-            rate: 0.0,
-            rate_slope: 0.0
-        };
-        scale_factors.len()
-    ];
+    let mut history = vec![RawGrowth { growth: 0.0, rate: 0.0, rate_slope: 0.0 }; scale_factors.len()];
     for index in order {
         let a = scale_factors[index];
         let target = a.ln();
@@ -111,7 +102,7 @@ pub fn growth_history(
             log_a = target;
             state[2] = target;
         }
-        let (friction, pull) = equation.terms(a);
+        let (friction, pull) = equation.terms(target);
         let rate = 1.0 + state[1] / state[0];
         let growth = a * state[0];
         let rate_slope = pull - rate * rate - friction * rate;
@@ -121,11 +112,7 @@ pub fn growth_history(
                 reason: "it is not a finite number".into(),
             });
         }
-        history[index] = RawGrowth {
-            growth,
-            rate,
-            rate_slope,
-        };
+        history[index] = RawGrowth { growth, rate, rate_slope };
     }
     Ok(history)
 }
@@ -136,26 +123,16 @@ fn advance(
     to: f64,
     state: Vector3<f64>,
 ) -> Result<Vector3<f64>, CosmologyError> {
-    let system = Equation {
-        background: equation.background,
-        gravity: equation.gravity,
-    };
+    let system = Equation { background: equation.background, gravity: equation.gravity };
     let mut solver = Dop853::new(system, from, to, to - from, state, STEP_TOLERANCE, STEP_TOLERANCE);
     solver.set_output(OutputType::Sparse);
-    let fail = |x: f64, reason: &str| CosmologyError::Growth {
-        scale_factor: x.exp(),
-        reason: reason.into(),
-    };
+    let fail = |x: f64, reason: &str| CosmologyError::Growth { scale_factor: x.exp(), reason: reason.into() };
     solver.integrate().map_err(|error| match error {
         IntegrationError::MaxNumStepReached { x, .. } => fail(x, "too many steps"),
         IntegrationError::StepSizeUnderflow { x } => fail(x, "the steps shrank to nothing"),
         IntegrationError::StiffnessDetected { x } => fail(x, "the equation became stiff"),
     })?;
-    solver
-        .y_out()
-        .last()
-        .copied()
-        .ok_or_else(|| fail(to, "no step was taken"))
+    solver.y_out().last().copied().ok_or_else(|| fail(to, "no step was taken"))
 }
 
 fn check_scale_factors(background: &Background, scale_factors: &[f64]) -> Result<(), CosmologyError> {
@@ -189,11 +166,7 @@ pub fn growth_states(
     let today = growth_history(background, &|_| 1.0, &[1.0])?[0].growth;
     Ok(growth_history(background, gravity, scale_factors)?
         .into_iter()
-        .map(|raw| GrowthState {
-            growth: raw.growth / today,
-            rate: raw.rate,
-            rate_slope: raw.rate_slope,
-        })
+        .map(|raw| GrowthState { growth: raw.growth / today, rate: raw.rate, rate_slope: raw.rate_slope })
         .collect())
 }
 

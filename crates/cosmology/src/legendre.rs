@@ -12,10 +12,8 @@ pub fn legendre(order: usize, x: f64) -> f64 {
     }
     for n in 1..order {
         let n_real = n as f64;
-        (previous, current) = (
-            current,
-            ((2.0 * n_real + 1.0) * x * current - n_real * previous) / (n_real + 1.0),
-        );
+        (previous, current) =
+            (current, ((2.0 * n_real + 1.0) * x * current - n_real * previous) / (n_real + 1.0));
     }
     current
 }

@@ -1,5 +1,6 @@
 //! The linear power spectrum of matter at z = 0, normalised to σ8.
 
+use std::array::from_fn;
 use std::f64::consts::PI;
 use std::sync::{Arc, LazyLock};
 
@@ -10,6 +11,9 @@ use crate::transfer::{EisensteinHu, EisensteinHuSmooth, PowerShape, PowerTable};
 
 /// Radius of the top-hat sphere of σ8, Mpc/h.
 pub const SIGMA8_RADIUS: f64 = 8.0;
+
+/// How many wavenumbers go through the transfer function at once.
+const BLOCK: usize = 8;
 
 /// P_lin(k), today's in general relativity.
 #[derive(Clone, Debug)]
@@ -30,12 +34,31 @@ enum Shape {
 impl Shape {
     /// Power of arbitrary amplitude.
     fn power(&self, k: f64, spectral_index: f64) -> f64 {
+        self.powers([k], spectral_index)[0]
+    }
+
+    /// The same for N wavenumbers: see [`EisensteinHu::transfers`] for what that saves.
+    fn powers<const N: usize>(&self, k: [f64; N], spectral_index: f64) -> [f64; N] {
+        let log_k = k.map(f64::ln);
         let transfer = match self {
-            Shape::EisensteinHu(fit) => fit.transfer(k),
-            Shape::EisensteinHuSmooth(fit) => fit.transfer(k),
-            Shape::Table(table) => return table.power(k),
+            Shape::EisensteinHu(fit) => fit.transfers(k, log_k),
+            Shape::EisensteinHuSmooth(fit) => k.map(|k| fit.transfer(k)),
+            Shape::Table(table) => return k.map(|k| table.power(k)),
         };
-        k.powf(spectral_index) * transfer * transfer
+        let primordial = log_k.map(|log_k| (spectral_index * log_k).exp());
+        from_fn(|i| primordial[i] * transfer[i] * transfer[i])
+    }
+
+    /// `scale` times the power at each of `k`, into `out` of the same length.
+    fn tabulate(&self, k: &[f64], spectral_index: f64, scale: f64, out: &mut [f64]) {
+        let (blocks, rest) = k.as_chunks::<BLOCK>();
+        let (out_blocks, out_rest) = out.as_chunks_mut::<BLOCK>();
+        for (out, &k) in out_blocks.iter_mut().zip(blocks) {
+            *out = self.powers(k, spectral_index).map(|power| scale * power);
+        }
+        for (out, &k) in out_rest.iter_mut().zip(rest) {
+            *out = scale * self.power(k, spectral_index);
+        }
     }
 }
 
@@ -109,14 +132,14 @@ impl LinearPower {
         };
         let variance = match &shape {
             Shape::Table(table) => table_variance(table),
-            _ => VARIANCE_RULE.integrate(|k| shape.power(k, n_s)),
+            _ => {
+                let rule = &*VARIANCE_RULE;
+                let mut power = vec![0.0; rule.len()];
+                shape.tabulate(&rule.nodes, n_s, 1.0, &mut power);
+                power.iter().zip(&rule.weights).map(|(power, weight)| power * weight).sum()
+            }
         };
-        Ok(Self {
-            shape,
-            spectral_index: n_s,
-            amplitude: sigma8 * sigma8 / variance,
-            sigma8,
-        })
+        Ok(Self { shape, spectral_index: n_s, amplitude: sigma8 * sigma8 / variance, sigma8 })
     }
 
     /// P(k) in (Mpc/h)³ for k > 0 in h/Mpc; NaN outside a table ([`LinearPower::tabulate`] says so instead).
@@ -130,11 +153,7 @@ impl LinearPower {
     /// `out` of another length; a wavenumber that is not above 0 or lies outside a table (the error names the range needed).
     pub fn tabulate(&self, k: &[f64], out: &mut [f64]) -> Result<(), CosmologyError> {
         if k.len() != out.len() {
-            return Err(CosmologyError::Length {
-                what: "powers",
-                given: out.len(),
-                wanted: k.len(),
-            });
+            return Err(CosmologyError::Length { what: "powers", given: out.len(), wanted: k.len() });
         }
         if let Some(&bad) = k.iter().find(|&&k| !(k > 0.0 && k.is_finite())) {
             return Err(CosmologyError::OutOfRange {
@@ -155,9 +174,7 @@ impl LinearPower {
                 });
             }
         }
-        for (out, &k) in out.iter_mut().zip(k) {
-            *out = self.power(k);
-        }
+        self.shape.tabulate(k, self.spectral_index, self.amplitude, out);
         Ok(())
     }
 
@@ -172,11 +189,7 @@ impl LinearPower {
     /// The same shape with another σ8 (above 0), without integrating again.
     pub fn rescaled(&self, sigma8: f64) -> Self {
         let ratio = sigma8 / self.sigma8;
-        Self {
-            amplitude: self.amplitude * ratio * ratio,
-            sigma8,
-            ..self.clone()
-        }
+        Self { amplitude: self.amplitude * ratio * ratio, sigma8, ..self.clone() }
     }
 
     /// The rms of a top-hat sphere of 8 Mpc/h.
@@ -203,9 +216,8 @@ fn table_variance(table: &PowerTable) -> f64 {
     let mut edges = vec![table.range().0];
     for pair in table.log_wavenumbers().windows(2) {
         let (low, high) = (pair[0].exp(), pair[1].exp());
-        let pieces = ((high - low) * SIGMA8_RADIUS / (0.5 * PI))
-            .ceil()
-            .max(((pair[1] - pair[0]) / 0.4).ceil());
+        let pieces =
+            ((high - low) * SIGMA8_RADIUS / (0.5 * PI)).ceil().max(((pair[1] - pair[0]) / 0.4).ceil());
         let pieces = pieces.max(1.0) as usize;
         edges.extend(geometric(low, high, pieces).into_iter().skip(1));
     }

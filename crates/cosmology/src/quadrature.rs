@@ -35,20 +35,14 @@ impl GaussLegendre {
 
     /// Σ weight f(node): the integral over the interval that the rule stands on.
     pub fn integrate(&self, mut integrand: impl FnMut(f64) -> f64) -> f64 {
-        self.nodes
-            .iter()
-            .zip(&self.weights)
-            .map(|(&node, &weight)| weight * integrand(node))
-            .sum()
+        self.nodes.iter().zip(&self.weights).map(|(&node, &weight)| weight * integrand(node)).sum()
     }
 
     /// Adds the panel [low, high], with the nodes of `unit`, a rule on [−1, 1].
     pub fn append_panel(&mut self, unit: &GaussLegendre, low: f64, high: f64) {
         let (middle, half) = (0.5 * (low + high), 0.5 * (high - low));
-        self.nodes
-            .extend(unit.nodes.iter().map(|node| middle + half * node));
-        self.weights
-            .extend(unit.weights.iter().map(|weight| half * weight));
+        self.nodes.extend(unit.nodes.iter().map(|node| middle + half * node));
+        self.weights.extend(unit.weights.iter().map(|weight| half * weight));
     }
 }
 
@@ -60,11 +54,8 @@ pub fn gauss_legendre(points: usize) -> GaussLegendre {
     match NonZeroUsize::new(points) {
         None => GaussLegendre::default(),
         Some(points) => {
-            let (nodes, weights) = gauss_quad::GaussLegendre::new(points)
-                .as_node_weight_pairs()
-                .iter()
-                .copied()
-                .unzip();
+            let (nodes, weights) =
+                gauss_quad::GaussLegendre::new(points).as_node_weight_pairs().iter().copied().unzip();
             GaussLegendre { nodes, weights }
         }
     }

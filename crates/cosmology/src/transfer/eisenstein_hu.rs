@@ -1,5 +1,6 @@
 //! The transfer function of cold dark matter and baryons, with acoustic wiggles.
 
+use std::array::from_fn;
 use std::f64::consts::E;
 
 use super::{CMB_TEMPERATURE, check_densities};
@@ -10,18 +11,26 @@ use crate::errors::CosmologyError;
 /// A fit to Boltzmann codes of their day, good to a few per cent; T → 1 as k → 0. Wavenumbers go in as h/Mpc.
 #[derive(Clone, Copy, Debug)]
 pub struct EisensteinHu {
-    h: f64,
     baryon_share: f64,
     dark_share: f64,
-    /// q/k, with k in 1/Mpc.
+    /// q/k, with k in h/Mpc.
     scaled: f64,
+    log_scaled: f64,
+    /// Mpc.
     sound_horizon: f64,
-    silk: f64,
-    alpha_dark: f64,
+    /// Mpc/h.
+    sound_horizon_scaled: f64,
+    /// ln of the Silk wavenumber in h/Mpc.
+    log_silk: f64,
+    /// 14.2/alpha_c.
+    dark_coefficient: f64,
+    /// 1.8 beta_c.
     beta_dark: f64,
     alpha_baryon: f64,
-    beta_baryon: f64,
-    beta_node: f64,
+    /// beta_b³.
+    beta_baryon_cube: f64,
+    /// beta_node³.
+    node_cube: f64,
 }
 
 impl EisensteinHu {
@@ -69,18 +78,20 @@ impl EisensteinHu {
         let beta_baryon =
             0.5 + baryon_share + (3.0 - 2.0 * baryon_share) * ((17.2 * matter).powi(2) + 1.0).sqrt();
 
+        let scaled = h / (13.41 * equality_wavenumber);
         Ok(Self {
-            h,
             baryon_share,
             dark_share,
-            scaled: 1.0 / (13.41 * equality_wavenumber),
+            scaled,
+            log_scaled: scaled.ln(),
             sound_horizon,
-            silk,
-            alpha_dark,
-            beta_dark,
+            sound_horizon_scaled: sound_horizon * h,
+            log_silk: (silk / h).ln(),
+            dark_coefficient: 14.2 / alpha_dark,
+            beta_dark: 1.8 * beta_dark,
             alpha_baryon,
-            beta_baryon,
-            beta_node,
+            beta_baryon_cube: beta_baryon.powi(3),
+            node_cube: beta_node.powi(3),
         })
     }
 
@@ -91,39 +102,52 @@ impl EisensteinHu {
 
     /// T(k) for k > 0 in h/Mpc (equations 10, 16 to 22).
     pub fn transfer(&self, wavenumber: f64) -> f64 {
-        let k = wavenumber * self.h;
-        let q = k * self.scaled;
-        let log_q = q.ln();
-        let q_power = (1.08 * log_q).exp();
-        let q_square = q * q;
-        let ks = k * self.sound_horizon;
+        self.transfers([wavenumber], [wavenumber.ln()])[0]
+    }
 
-        // T0~ = L/(L + C q²) (19, 20) with (alpha, beta) = (1, beta_c), (alpha_c, beta_c), (1, 1).
-        let falling = 386.0 / (1.0 + 69.9 * q_power);
-        let plain = (14.2 + falling) * q_square;
-        let suppressed = (14.2 / self.alpha_dark + falling) * q_square;
-        let log_dark = (E + 1.8 * self.beta_dark * q).ln();
-        let log_plain = (E + 1.8 * q).ln();
+    /// The same for N wavenumbers whose logarithms are known.
+    ///
+    /// This runs for every wavenumber at every evaluation in which the background moves. So powers are exponentials of
+    /// multiples of ln k, fractions are brought to common denominators, and the steps go one at a time through N values: a
+    /// call to a logarithm or sine spills every register, which between the steps of one value costs as much as the calls.
+    pub(crate) fn transfers<const N: usize>(
+        &self,
+        wavenumber: [f64; N],
+        log_wavenumber: [f64; N],
+    ) -> [f64; N] {
+        let q = wavenumber.map(|k| k * self.scaled);
+        let ks = wavenumber.map(|k| k * self.sound_horizon_scaled);
+        let q_power = log_wavenumber.map(|log_k| (1.08 * (log_k + self.log_scaled)).exp());
+        let log_dark = q.map(|q| (E + self.beta_dark * q).ln());
+        let log_plain = q.map(|q| (E + 1.8 * q).ln());
+        // (k/k_silk)^1.4; beyond 80, e^(-damping) is lost in the rounding of what stands beside it.
+        let damping = log_wavenumber.map(|log_k| (1.4 * (log_k - self.log_silk)).exp().min(80.0));
+        let damped = damping.map(|damping| (-damping).exp());
+        // 1 + (beta_node/ks)³ to the power -1/3, by logarithm: half the price of a cube root.
+        let node = ks.map(|ks| 1.0 + self.node_cube / (ks * ks * ks)).map(|node| node.ln() * (-1.0 / 3.0));
+        let root = node.map(f64::exp);
+        let shifted: [f64; N] = from_fn(|i| ks[i] * root[i]);
+        let sine = shifted.map(f64::sin);
+        from_fn(|i| {
+            let q_square = q[i] * q[i];
+            let ks_square = ks[i] * ks[i];
+            let cube = ks[i] * ks_square;
 
-        let ratio = ks / 5.4;
-        let weight = 1.0 / (1.0 + ratio * ratio * ratio * ratio);
-        let dark = log_dark * (weight / (log_dark + plain) + (1.0 - weight) / (log_dark + suppressed));
+            // T0~ = L/(L + C q²) (19, 20), with (alpha, beta) = (1, beta_c), (alpha_c, beta_c) and (1, 1).
+            let falling = 386.0 / (1.0 + 69.9 * q_power[i]);
+            let plain = (14.2 + falling) * q_square;
+            let suppressed = (self.dark_coefficient + falling) * q_square;
 
-        // exp(-(k/k_silk)^1.4) below e^-50 adds nothing to the last digit of what stands beside it.
-        let damping = (1.4 * (k / self.silk).ln()).exp();
-        let node = self.beta_node / ks;
-        let shifted = ks / (1.0 + node * node * node).cbrt();
-        let acoustic = if shifted > 0.0 {
-            shifted.sin() / shifted
-        } else {
-            1.0
-        };
-        let drop = self.beta_baryon / ks;
-        let ratio = ks / 5.2;
-        let baryon = (log_plain / (log_plain + plain) / (1.0 + ratio * ratio)
-            + self.alpha_baryon / (1.0 + drop * drop * drop) * (-damping).exp())
-            * acoustic;
+            // T_c (17, 18) = f L/(L + plain) + (1 - f) L/(L + suppressed) with f = 1/(1 + rise).
+            let rise = ks_square * ks_square * (1.0 / (5.4 * 5.4 * 5.4 * 5.4));
+            let (near, far) = (log_dark[i] + plain, log_dark[i] + suppressed);
+            let dark = log_dark[i] * (far + rise * near) / ((1.0 + rise) * near * far);
 
-        self.baryon_share * baryon + self.dark_share * dark
+            // T_b (21, 22).
+            let infall = log_plain[i] / ((log_plain[i] + plain) * (1.0 + ks_square * (1.0 / (5.2 * 5.2))));
+            let acoustic = self.alpha_baryon * cube / (cube + self.beta_baryon_cube) * damped[i];
+            let baryon = (infall + acoustic) * sine[i] / shifted[i];
+            self.baryon_share * baryon + self.dark_share * dark
+        })
     }
 }

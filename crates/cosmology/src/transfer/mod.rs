@@ -28,14 +28,7 @@ pub enum PowerShape {
 
 /// Checks what both transfer functions need: matter above 0, baryons above 0 and less than matter, h above 0.
 pub(crate) fn check_densities(omega_m: f64, omega_b: f64, h: f64) -> Result<(), CosmologyError> {
-    let fail = |name, value, rule, way_out| {
-        Err(CosmologyError::OutOfRange {
-            name,
-            value,
-            rule,
-            way_out,
-        })
-    };
+    let fail = |name, value, rule, way_out| Err(CosmologyError::OutOfRange { name, value, rule, way_out });
     if !(omega_m > 0.0 && omega_m.is_finite()) {
         return fail(
             "omega_m",
@@ -53,12 +46,7 @@ pub(crate) fn check_densities(omega_m: f64, omega_b: f64, h: f64) -> Result<(), 
         );
     }
     if !(h > 0.0 && h.is_finite()) {
-        return fail(
-            "h",
-            h,
-            "above 0 and finite",
-            "give the Hubble rate over 100 km/s/Mpc, such as 0.68",
-        );
+        return fail("h", h, "above 0 and finite", "give the Hubble rate over 100 km/s/Mpc, such as 0.68");
     }
     Ok(())
 }

@@ -37,12 +37,7 @@ impl PowerTable {
         }
         let mut before = 0.0;
         for (index, (&k, &p)) in wavenumber.iter().zip(&power).enumerate() {
-            let bad = |what, value, rule| CosmologyError::BadTable {
-                entry: index + 1,
-                what,
-                value,
-                rule,
-            };
+            let bad = |what, value, rule| CosmologyError::BadTable { entry: index + 1, what, value, rule };
             if !(k > 0.0 && k.is_finite()) {
                 return Err(bad("wavenumber", k, "above 0 and finite"));
             }
@@ -58,13 +53,7 @@ impl PowerTable {
         let log_k: Vec<f64> = wavenumber.iter().map(|k| k.ln()).collect();
         let log_p: Vec<f64> = power.iter().map(|p| p.ln()).collect();
         let curvature = spline_curvature(&log_k, &log_p);
-        Ok(Self {
-            log_k,
-            log_p,
-            curvature,
-            low,
-            high,
-        })
+        Ok(Self { log_k, log_p, curvature, low, high })
     }
 
     /// Lowest and highest wavenumber, h/Mpc.
@@ -88,11 +77,7 @@ impl PowerTable {
     /// ln P at ln k, for k inside the table.
     pub(crate) fn log_power(&self, x: f64) -> f64 {
         let last = self.log_k.len() - 2;
-        let i = self
-            .log_k
-            .partition_point(|&knot| knot <= x)
-            .saturating_sub(1)
-            .min(last);
+        let i = self.log_k.partition_point(|&knot| knot <= x).saturating_sub(1).min(last);
         let width = self.log_k[i + 1] - self.log_k[i];
         let right = (x - self.log_k[i]) / width;
         let left = 1.0 - right;
@@ -112,11 +97,7 @@ impl PowerTable {
 fn spline_curvature(x: &[f64], y: &[f64]) -> Vec<f64> {
     let n = x.len();
     let h: Vec<f64> = x.windows(2).map(|pair| pair[1] - pair[0]).collect();
-    let slope: Vec<f64> = y
-        .windows(2)
-        .zip(&h)
-        .map(|(pair, h)| (pair[1] - pair[0]) / h)
-        .collect();
+    let slope: Vec<f64> = y.windows(2).zip(&h).map(|(pair, h)| (pair[1] - pair[0]) / h).collect();
     // Unknowns m[1] ... m[n-2].
     let size = n - 2;
     let mut lower = vec![0.0; size];
