@@ -235,12 +235,7 @@ impl Chain {
 
     /// The values of one parameter, in the order of the rows.
     pub fn column(&self, parameter: usize) -> Vec<f64> {
-        self.points
-            .iter()
-            .skip(parameter)
-            .step_by(self.dimension)
-            .copied()
-            .collect()
+        self.points.iter().skip(parameter).step_by(self.dimension).copied().collect()
     }
 
     /// Diagnostics of any quantity that has one value a row, such as a derived one.

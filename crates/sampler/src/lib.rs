@@ -5,11 +5,18 @@
 
 mod chain;
 pub mod diagnostics;
+mod ensemble;
 mod error;
+mod history;
+pub mod moves;
 mod peak;
 pub mod priors;
+mod run;
 mod settings;
+mod start;
+mod stopping;
 mod target;
+mod warm_up;
 
 pub use chain::{
     BestPoint, Chain, Draw, FailedTest, MoveAcceptance, Outcome, RejectedEvaluations, StopReason, Test,
@@ -18,6 +25,7 @@ pub use error::SamplerError;
 pub use peak::{Peak, PeakSettings, find_peak, find_peak_with};
 pub use priors::{JointNormal, Prior, PriorError, PriorFamily, PriorSet, PriorShape, SharedPrior, Truncated};
 pub use priors::{build_prior, prior_families, prior_family};
+pub use run::sample;
 pub use settings::{Control, EnsembleSettings, Phase, Progress};
 pub use settings::{DEFAULT_MAXIMUM_EVALUATIONS, MAXIMUM_RHAT, MINIMUM_EFFECTIVE_SAMPLES};
 pub use target::{EvaluationFailure, Target};

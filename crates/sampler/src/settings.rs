@@ -20,9 +20,9 @@ pub struct EnsembleSettings {
     pub walkers: Option<usize>,
     /// The seed that every random number follows from.
     pub seed: u64,
-    /// Effective samples that every watched parameter must reach, bulk and mean.
+    /// Effective samples that every watched parameter must reach, in the bulk.
     pub effective_samples: f64,
-    /// Indices of the parameters that must reach `effective_samples`. The others (all, if this is empty) must reach
+    /// Indices of the parameters that must reach `effective_samples`. The others (all, if this is empty) need only
     /// `minimum_effective_samples`.
     pub watched: Vec<usize>,
     /// Evaluations of the likelihood after which sampling stops unconverged; by default [`DEFAULT_MAXIMUM_EVALUATIONS`].

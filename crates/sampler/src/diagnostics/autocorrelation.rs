@@ -8,11 +8,8 @@ pub fn autocovariance(values: &[f64], centre: f64, lag: usize) -> f64 {
     if lag >= count {
         return 0.0;
     }
-    let sum: f64 = values[..count - lag]
-        .iter()
-        .zip(&values[lag..])
-        .map(|(a, b)| (a - centre) * (b - centre))
-        .sum();
+    let sum: f64 =
+        values[..count - lag].iter().zip(&values[lag..]).map(|(a, b)| (a - centre) * (b - centre)).sum();
     sum / count as f64
 }
 
@@ -36,11 +33,7 @@ pub struct AutocorrelationTime {
 pub fn integrated_autocorrelation_time<C: AsRef<[f64]>>(series: &[C]) -> AutocorrelationTime {
     const WINDOW_FACTOR: f64 = 5.0;
     let centres: Vec<f64> = series.iter().map(|values| mean(values.as_ref())).collect();
-    let length = series
-        .iter()
-        .map(|values| values.as_ref().len())
-        .min()
-        .unwrap_or(0);
+    let length = series.iter().map(|values| values.as_ref().len()).min().unwrap_or(0);
     let at = |lag: usize| -> f64 {
         series
             .iter()
@@ -54,26 +47,14 @@ pub fn integrated_autocorrelation_time<C: AsRef<[f64]>>(series: &[C]) -> Autocor
         .map(|(values, centre)| squares_about(values.as_ref(), *centre) / values.as_ref().len() as f64)
         .sum();
     if length == 0 || !(variance > 0.0) {
-        return AutocorrelationTime {
-            time: length as f64,
-            window: 0,
-            closed: false,
-        };
+        return AutocorrelationTime { time: length as f64, window: 0, closed: false };
     }
     let mut time = 1.0;
     for window in 1..length {
         time += 2.0 * at(window) / variance;
         if window as f64 >= WINDOW_FACTOR * time {
-            return AutocorrelationTime {
-                time,
-                window,
-                closed: true,
-            };
+            return AutocorrelationTime { time, window, closed: true };
         }
     }
-    AutocorrelationTime {
-        time,
-        window: length,
-        closed: false,
-    }
+    AutocorrelationTime { time, window: length, closed: false }
 }

@@ -12,7 +12,7 @@
 use super::ess::effective_samples;
 use super::quantiles::{quantile_of_sorted, sorted};
 use super::ranks::{Chains, mean, rank_normalise, squares_about};
-use super::rhat::rank_normalised;
+use super::rhat::{classic, rank_normalised};
 use serde::{Deserialize, Serialize};
 
 /// What the draws of one parameter say, and how well.
@@ -64,11 +64,7 @@ pub fn diagnose_ensembles(values: &[f64], ensembles: usize, walkers: usize) -> P
     if group == 0 || !values.len().is_multiple_of(group) || values.iter().any(|value| !value.is_finite()) {
         return ParameterDiagnostics::UNKNOWN;
     }
-    let shape = Shape {
-        ensembles,
-        walkers,
-        steps: values.len() / group,
-    };
+    let shape = Shape { ensembles, walkers, steps: values.len() / group };
     if shape.steps < 4 {
         return ParameterDiagnostics::UNKNOWN;
     }
@@ -79,10 +75,7 @@ pub fn diagnose_ensembles(values: &[f64], ensembles: usize, walkers: usize) -> P
     let ess_mean = shape.effective_samples(values);
     let tail = |p: f64| {
         let level = at(p);
-        let indicator: Vec<f64> = values
-            .iter()
-            .map(|value| f64::from(u8::from(*value <= level)))
-            .collect();
+        let indicator: Vec<f64> = values.iter().map(|value| f64::from(u8::from(*value <= level))).collect();
         shape.effective_samples(&indicator)
     };
     ParameterDiagnostics {
@@ -116,18 +109,12 @@ impl Shape {
                 chains.extend(ensemble.iter().skip(walker).step_by(self.walkers));
             }
         }
-        Chains {
-            values: chains,
-            length: self.steps,
-        }
+        Chains { values: chains, length: self.steps }
     }
 
     /// The mean over each ensemble, step by step, as a chain.
     pub(crate) fn ensemble_means(self, values: &[f64]) -> Chains {
-        Chains {
-            values: values.chunks_exact(self.walkers).map(mean).collect(),
-            length: self.steps,
-        }
+        Chains { values: values.chunks_exact(self.walkers).map(mean).collect(), length: self.steps }
     }
 
     /// Effective samples of the mean of `values`: the smaller of both routes.
@@ -154,15 +141,13 @@ impl Shape {
     /// The larger of R̂ of walkers and R̂ of ensembles.
     pub(crate) fn rhat(self, values: &[f64]) -> f64 {
         let walkers = rank_normalised(&self.walker_chains(values).split());
-        let whole = Chains {
-            values: values.to_vec(),
-            length: self.steps * self.walkers,
-        };
+        let whole = Chains { values: values.to_vec(), length: self.steps * self.walkers };
         let ensembles = rank_normalised(&whole.split());
-        if walkers.is_nan() || ensembles.is_nan() {
-            f64::NAN
-        } else {
-            walkers.max(ensembles)
-        }
+        if walkers.is_nan() || ensembles.is_nan() { f64::NAN } else { walkers.max(ensembles) }
     }
+}
+
+/// R̂ of the split walkers without ranks: a first look in linear time.
+pub(crate) fn split_walkers_rhat(shape: Shape, values: &[f64]) -> f64 {
+    if shape.steps < 4 { f64::NAN } else { classic(&shape.walker_chains(values).split()) }
 }

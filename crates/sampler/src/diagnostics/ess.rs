@@ -52,11 +52,7 @@ fn valid<C: AsRef<[f64]>>(chains: &[C]) -> Option<Chains> {
 
 /// Effective samples of the indicator x ≤ `level`.
 pub(crate) fn indicator_ess(chains: &Chains, level: f64) -> f64 {
-    let indicator = chains
-        .values
-        .iter()
-        .map(|value| f64::from(u8::from(*value <= level)))
-        .collect();
+    let indicator = chains.values.iter().map(|value| f64::from(u8::from(*value <= level))).collect();
     effective_samples(&chains.with(indicator).split())
 }
 
@@ -69,20 +65,14 @@ pub(crate) fn effective_samples(chains: &Chains) -> f64 {
     let (low, high) = chains
         .values
         .iter()
-        .fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), value| {
-            (low.min(*value), high.max(*value))
-        });
+        .fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), value| (low.min(*value), high.max(*value)));
     if length < 2 || high - low < 1e-15 {
         return total;
     }
     let draws = length as f64;
     let means: Vec<f64> = chains.iter().map(mean).collect();
     let covariance = |lag: usize| -> f64 {
-        chains
-            .iter()
-            .zip(&means)
-            .map(|(chain, centre)| autocovariance(chain, *centre, lag))
-            .sum::<f64>()
+        chains.iter().zip(&means).map(|(chain, centre)| autocovariance(chain, *centre, lag)).sum::<f64>()
             / count as f64
     };
     let within = covariance(0) * draws / (draws - 1.0);

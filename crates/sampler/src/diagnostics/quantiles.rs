@@ -13,11 +13,7 @@ pub fn quantile_of_sorted(sorted: &[f64], p: f64) -> f64 {
     let fraction = position - below as f64;
     // Two forms, so that the ends are met exactly and the result is monotone in p.
     let (a, b) = (sorted[below], sorted[above]);
-    if fraction < 0.5 {
-        a + fraction * (b - a)
-    } else {
-        b - (1.0 - fraction) * (b - a)
-    }
+    if fraction < 0.5 { a + fraction * (b - a) } else { b - (1.0 - fraction) * (b - a) }
 }
 
 /// Quantile of values in any order; sorts a copy.
@@ -34,10 +30,7 @@ pub fn median(values: &[f64]) -> f64 {
 pub fn central_interval(values: &[f64], probability: f64) -> (f64, f64) {
     let sorted = sorted(values);
     let tail = 0.5 * (1.0 - probability);
-    (
-        quantile_of_sorted(&sorted, tail),
-        quantile_of_sorted(&sorted, 1.0 - tail),
-    )
+    (quantile_of_sorted(&sorted, tail), quantile_of_sorted(&sorted, 1.0 - tail))
 }
 
 /// A sorted copy.

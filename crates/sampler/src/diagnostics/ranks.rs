@@ -47,10 +47,7 @@ impl Chains {
             }
             values.extend_from_slice(chain);
         }
-        values
-            .iter()
-            .all(|value| value.is_finite())
-            .then_some(Self { values, length })
+        values.iter().all(|value| value.is_finite()).then_some(Self { values, length })
     }
 
     /// Each chain cut in two halves; the middle draw of an odd length is dropped.
@@ -66,10 +63,7 @@ impl Chains {
 
     /// The same chains with other values.
     pub(crate) fn with(&self, values: Vec<f64>) -> Self {
-        Self {
-            values,
-            length: self.length,
-        }
+        Self { values, length: self.length }
     }
 
     /// The chains as slices.
@@ -79,11 +73,7 @@ impl Chains {
 
     /// Number of chains.
     pub(crate) fn count(&self) -> usize {
-        if self.length == 0 {
-            0
-        } else {
-            self.values.len() / self.length
-        }
+        if self.length == 0 { 0 } else { self.values.len() / self.length }
     }
 }
 

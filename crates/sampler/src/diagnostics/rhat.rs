@@ -30,11 +30,7 @@ pub(crate) fn rank_normalised(split: &Chains) -> f64 {
     let folded: Vec<f64> = split.values.iter().map(|value| (value - centre).abs()).collect();
     let tail = classic(&split.with(rank_normalise(&folded)));
     // f64::max would hide a NaN.
-    if bulk.is_nan() || tail.is_nan() {
-        f64::NAN
-    } else {
-        bulk.max(tail)
-    }
+    if bulk.is_nan() || tail.is_nan() { f64::NAN } else { bulk.max(tail) }
 }
 
 /// √((B/W + N − 1)/N), B = N · variance of the chain means, W = mean of the chain variances (Gelman & Rubin 1992).

@@ -23,24 +23,17 @@ pub(super) struct Coordinates {
 impl Coordinates {
     /// Coordinates from the supports and spreads of the marginal priors.
     pub(super) fn new(priors: &PriorSet) -> Self {
-        let spreads: Vec<f64> = (0..priors.dimension())
-            .map(|dimension| priors.spread(dimension))
-            .collect();
+        let spreads: Vec<f64> = (0..priors.dimension()).map(|dimension| priors.spread(dimension)).collect();
         let maps = (0..priors.dimension())
             .map(|dimension| match priors.support(dimension) {
                 (low, high) if low.is_finite() && high.is_finite() => Map::Segment { low, high },
-                (low, _) if low.is_finite() => Map::Ray {
-                    edge: low,
-                    signed_width: priors.median(dimension) - low,
-                },
-                (_, high) if high.is_finite() => Map::Ray {
-                    edge: high,
-                    signed_width: priors.median(dimension) - high,
-                },
-                _ => Map::Line {
-                    centre: priors.median(dimension),
-                    spread: spreads[dimension],
-                },
+                (low, _) if low.is_finite() => {
+                    Map::Ray { edge: low, signed_width: priors.median(dimension) - low }
+                }
+                (_, high) if high.is_finite() => {
+                    Map::Ray { edge: high, signed_width: priors.median(dimension) - high }
+                }
+                _ => Map::Line { centre: priors.median(dimension), spread: spreads[dimension] },
             })
             .collect();
         Self { maps, spreads }

@@ -27,31 +27,19 @@ pub(super) struct Evaluator<'a, T: Target> {
 
 impl<'a, T: Target> Evaluator<'a, T> {
     pub(super) fn new(target: &'a T) -> Self {
-        Self {
-            target,
-            scratch: target.scratch(),
-            evaluations: 0,
-            first_rejection: None,
-            fatal: None,
-        }
+        Self { target, scratch: target.scratch(), evaluations: 0, first_rejection: None, fatal: None }
     }
 
     /// The height of a point; −∞ outside the support, where the model has no answer, and after a fatal failure.
     pub(super) fn height(&mut self, point: &[f64]) -> Height {
-        let nowhere = Height {
-            log_prior: f64::NEG_INFINITY,
-            log_likelihood: f64::NEG_INFINITY,
-        };
+        let nowhere = Height { log_prior: f64::NEG_INFINITY, log_likelihood: f64::NEG_INFINITY };
         let log_prior = self.target.log_prior(point);
         if self.fatal.is_some() || !log_prior.is_finite() {
             return nowhere;
         }
         self.evaluations += 1;
         match self.target.log_likelihood(point, &mut self.scratch) {
-            Ok(log_likelihood) if log_likelihood.is_finite() => Height {
-                log_prior,
-                log_likelihood,
-            },
+            Ok(log_likelihood) if log_likelihood.is_finite() => Height { log_prior, log_likelihood },
             Ok(_) => nowhere,
             Err(EvaluationFailure::Rejected { reason }) => {
                 self.first_rejection.get_or_insert(reason);
@@ -72,11 +60,7 @@ impl<'a, T: Target> Evaluator<'a, T> {
     /// Turns a fatal failure into an error.
     pub(super) fn check(&mut self) -> Result<(), SamplerError> {
         match self.fatal.take() {
-            Some((reason, point)) => Err(SamplerError::Evaluation {
-                reason,
-                point,
-                partial: None,
-            }),
+            Some((reason, point)) => Err(SamplerError::Evaluation { reason, point, partial: None }),
             None => Ok(()),
         }
     }

@@ -55,20 +55,9 @@ fn slice<'e, 'a, T: Target>(
     point: &[f64],
     pinned: &[usize],
 ) -> Slice<'e, 'a, T> {
-    let free: Vec<usize> = (0..point.len())
-        .filter(|dimension| !pinned.contains(dimension))
-        .collect();
-    let spreads = free
-        .iter()
-        .map(|dimension| coordinates.spread(*dimension))
-        .collect();
-    Slice {
-        evaluator,
-        spreads,
-        free,
-        origin: point.to_vec(),
-        point: point.to_vec(),
-    }
+    let free: Vec<usize> = (0..point.len()).filter(|dimension| !pinned.contains(dimension)).collect();
+    let spreads = free.iter().map(|dimension| coordinates.spread(*dimension)).collect();
+    Slice { evaluator, spreads, free, origin: point.to_vec(), point: point.to_vec() }
 }
 
 /// Climbs from `point` by Newton steps with the absolute eigenvalues of the Hessian, halved until the log posterior
@@ -110,11 +99,7 @@ pub(super) fn polish<T: Target>(
                 (gradient, curvature, true, f64::INFINITY)
             }
         };
-        if slope
-            .iter()
-            .chain(curvature.iter())
-            .any(|entry| !entry.is_finite())
-        {
+        if slope.iter().chain(curvature.iter()).any(|entry| !entry.is_finite()) {
             break;
         }
         let (step, gain) = newton_step(&curvature, &slope);
@@ -139,13 +124,7 @@ pub(super) fn polish<T: Target>(
         }
     }
     let pinned = pinned(evaluator, priors, coordinates, &point, value);
-    Polished {
-        point,
-        value,
-        pinned,
-        converged,
-        steps: all_steps,
-    }
+    Polished { point, value, pinned, converged, steps: all_steps }
 }
 
 /// |H|⁻¹ g and the gain ½ gᵀ|H|⁻¹ g that it promises.
@@ -231,10 +210,7 @@ impl Polished {
         let mut slice = slice(evaluator, coordinates, &self.point, &self.pinned);
         let (free, spreads) = (slice.free.clone(), slice.spreads.clone());
         if free.is_empty() {
-            return Laplace {
-                covariance,
-                bounded_by_prior: false,
-            };
+            return Laplace { covariance, bounded_by_prior: false };
         }
         let origin = vec![0.0; free.len()];
         let mut steps: Vec<f64> = free.iter().map(|dimension| self.steps[*dimension]).collect();
@@ -257,10 +233,7 @@ impl Polished {
                 covariance[(i, j)] = inverse[(row, column)] * spreads[row] * spreads[column];
             }
         }
-        Laplace {
-            covariance,
-            bounded_by_prior,
-        }
+        Laplace { covariance, bounded_by_prior }
     }
 }
 
@@ -274,11 +247,7 @@ fn width_inwards<T: Target>(
 ) -> f64 {
     let spread = coordinates.spread(dimension);
     let (low, high) = priors.support(dimension);
-    let sign = if polished.point[dimension] - low < high - polished.point[dimension] {
-        1.0
-    } else {
-        -1.0
-    };
+    let sign = if polished.point[dimension] - low < high - polished.point[dimension] { 1.0 } else { -1.0 };
     let mut moved = polished.point.clone();
     let mut width = spread;
     let mut drop = |width: f64| {
@@ -292,11 +261,7 @@ fn width_inwards<T: Target>(
         let (mut below, mut above) = (width, 2.0 * width);
         for _ in 0..4 {
             let middle = 0.5 * (below + above);
-            if drop(middle) > 0.5 {
-                above = middle
-            } else {
-                below = middle
-            }
+            if drop(middle) > 0.5 { above = middle } else { below = middle }
         }
         width = below;
     }

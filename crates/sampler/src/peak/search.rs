@@ -31,12 +31,7 @@ pub struct PeakSettings {
 
 impl Default for PeakSettings {
     fn default() -> Self {
-        Self {
-            seed: 1,
-            draws: 100,
-            climbs: 5,
-            starting_points: vec![],
-        }
+        Self { seed: 1, draws: 100, climbs: 5, starting_points: vec![] }
     }
 }
 
@@ -81,10 +76,7 @@ pub fn find_peak_with<T: Target>(
     callback: &mut dyn FnMut(u64) -> Control,
 ) -> Result<Peak, SamplerError> {
     if target.dimension() != priors.dimension() || target.dimension() == 0 {
-        return Err(SamplerError::Dimension {
-            target: target.dimension(),
-            prior: priors.dimension(),
-        });
+        return Err(SamplerError::Dimension { target: target.dimension(), prior: priors.dimension() });
     }
     let coordinates = Coordinates::new(priors);
     let mut evaluator = Evaluator::new(target);
@@ -102,9 +94,7 @@ pub fn find_peak_with<T: Target>(
         evaluator.check()?;
         let polished = polish(&mut evaluator, priors, &coordinates, climbed);
         evaluator.check()?;
-        let agrees = best
-            .as_ref()
-            .is_some_and(|best| (best.value - polished.value).abs() < SAME_HEIGHT);
+        let agrees = best.as_ref().is_some_and(|best| (best.value - polished.value).abs() < SAME_HEIGHT);
         if best.as_ref().is_none_or(|best| polished.value > best.value) {
             best = Some(polished);
         }
@@ -137,12 +127,8 @@ fn candidates<T: Target>(
 ) -> Result<Vec<Vec<f64>>, SamplerError> {
     let dimension = priors.dimension();
     let mut random = Xoshiro256PlusPlus::seed_from_u64(settings.seed);
-    let mut given: Vec<Vec<f64>> = settings
-        .starting_points
-        .iter()
-        .filter(|point| point.len() == dimension)
-        .cloned()
-        .collect();
+    let mut given: Vec<Vec<f64>> =
+        settings.starting_points.iter().filter(|point| point.len() == dimension).cloned().collect();
     given.retain(|point| evaluator.log_posterior(point).is_finite());
     let mut drawn: Vec<(f64, Vec<f64>)> = Vec::with_capacity(settings.draws + 1);
     let mut point: Vec<f64> = (0..dimension).map(|at| priors.median(at)).collect();
@@ -202,11 +188,7 @@ impl<T: Target> CostFunction for &Descent<'_, '_, T> {
         let mut state = self.state.borrow_mut();
         let value = state.value(self.coordinates, unbounded);
         // A line search needs a finite wall where there is no answer.
-        Ok(if value.is_finite() {
-            -value
-        } else {
-            1e8 - state.best.0
-        })
+        Ok(if value.is_finite() { -value } else { 1e8 - state.best.0 })
     }
 }
 
@@ -216,16 +198,10 @@ impl<T: Target> Gradient for &Descent<'_, '_, T> {
     fn gradient(&self, unbounded: &Vec<f64>) -> Result<Vec<f64>, argmin::core::Error> {
         let mut state = self.state.borrow_mut();
         let steps = state.steps.clone();
-        let slope = gradient(
-            &mut |u: &[f64]| state.value(self.coordinates, u).max(-1e300),
-            unbounded,
-            &steps,
-        );
+        let slope =
+            gradient(&mut |u: &[f64]| state.value(self.coordinates, u).max(-1e300), unbounded, &steps);
         // A side without an answer leaves a cliff of 1e300, which says nothing about the slope before it.
-        Ok(slope
-            .iter()
-            .map(|slope| if slope.abs() < 1e250 { -slope } else { 0.0 })
-            .collect())
+        Ok(slope.iter().map(|slope| if slope.abs() < 1e250 { -slope } else { 0.0 }).collect())
     }
 }
 
@@ -249,12 +225,7 @@ fn climb<'a, T: Target>(
     };
     fit_steps(&mut function, &unbounded, value, &mut steps);
     let descent = Descent {
-        state: RefCell::new(DescentState {
-            evaluator,
-            point,
-            best: (value, unbounded.clone()),
-            steps,
-        }),
+        state: RefCell::new(DescentState { evaluator, point, best: (value, unbounded.clone()), steps }),
         coordinates,
     };
     let solver = LBFGS::new(MoreThuenteLineSearch::new(), MEMORY)

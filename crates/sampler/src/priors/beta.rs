@@ -28,11 +28,7 @@ impl Beta {
     pub fn new(a: f64, b: f64) -> Result<Self, PriorError> {
         let a = positive(Self::KEY, "a", a, "a flat density is [1, 1]")?;
         let b = positive(Self::KEY, "b", b, "a flat density is [1, 1]")?;
-        Ok(Self {
-            a,
-            b,
-            ln_beta: ln_beta(a, b),
-        })
+        Ok(Self { a, b, ln_beta: ln_beta(a, b) })
     }
 
     /// (exponent) · ln(base) with 0 · ln 0 = 0.
@@ -51,13 +47,7 @@ impl Beta {
         let density =
             |x: f64| (Self::power(a - 1.0, x.ln()) + Self::power(b - 1.0, (-x).ln_1p()) - self.ln_beta).exp();
         let middle = (a / (a + b)).clamp(1e-300, 1.0 - 1e-15);
-        invert_positive(
-            |x| beta_reg(a, b, x),
-            density,
-            p,
-            (0.5 * middle, 0.5 + 0.5 * middle),
-            1.0,
-        )
+        invert_positive(|x| beta_reg(a, b, x), density, p, (0.5 * middle, 0.5 + 0.5 * middle), 1.0)
     }
 }
 
@@ -74,11 +64,7 @@ impl Prior for Beta {
         }
         let value =
             Self::power(self.a - 1.0, x.ln()) + Self::power(self.b - 1.0, (-x).ln_1p()) - self.ln_beta;
-        if value == f64::INFINITY {
-            f64::NEG_INFINITY
-        } else {
-            value
-        }
+        if value == f64::INFINITY { f64::NEG_INFINITY } else { value }
     }
     fn cdf(&self, x: f64) -> f64 {
         if x <= 0.0 {

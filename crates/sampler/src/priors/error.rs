@@ -145,15 +145,7 @@ pub enum PriorError {
 
 /// `value` if it is finite.
 pub(crate) fn finite(family: &'static str, argument: &'static str, value: f64) -> Result<f64, PriorError> {
-    if value.is_finite() {
-        Ok(value)
-    } else {
-        Err(PriorError::NotFinite {
-            family,
-            argument,
-            value,
-        })
-    }
+    if value.is_finite() { Ok(value) } else { Err(PriorError::NotFinite { family, argument, value }) }
 }
 
 /// `value` if it is finite and above zero.
@@ -164,24 +156,11 @@ pub(crate) fn positive(
     way_out: &'static str,
 ) -> Result<f64, PriorError> {
     let value = finite(family, argument, value)?;
-    if value > 0.0 {
-        Ok(value)
-    } else {
-        Err(PriorError::NotPositive {
-            family,
-            argument,
-            value,
-            way_out,
-        })
-    }
+    if value > 0.0 { Ok(value) } else { Err(PriorError::NotPositive { family, argument, value, way_out }) }
 }
 
 /// `(low, high)` if both are finite and in order.
 pub(crate) fn ordered(family: &'static str, low: f64, high: f64) -> Result<(f64, f64), PriorError> {
     let (low, high) = (finite(family, "low", low)?, finite(family, "high", high)?);
-    if low < high {
-        Ok((low, high))
-    } else {
-        Err(PriorError::InvertedBounds { family, low, high })
-    }
+    if low < high { Ok((low, high)) } else { Err(PriorError::InvertedBounds { family, low, high }) }
 }

@@ -30,11 +30,7 @@ impl Gamma {
     pub fn new(shape: f64, scale: f64) -> Result<Self, PriorError> {
         let shape = positive(Self::KEY, "shape", shape, "an exponential density is [1, scale]")?;
         let scale = positive(Self::KEY, "scale", scale, "the mean is shape × scale")?;
-        Ok(Self {
-            shape,
-            scale,
-            constant: -ln_gamma(shape) - scale.ln(),
-        })
+        Ok(Self { shape, scale, constant: -ln_gamma(shape) - scale.ln() })
     }
 
     fn unit_density(&self, y: f64) -> f64 {
@@ -58,17 +54,9 @@ impl Prior for Gamma {
             return f64::NEG_INFINITY;
         }
         let y = x / self.scale;
-        let power = if self.shape == 1.0 {
-            0.0
-        } else {
-            (self.shape - 1.0) * y.ln()
-        };
+        let power = if self.shape == 1.0 { 0.0 } else { (self.shape - 1.0) * y.ln() };
         let value = self.constant + power - y;
-        if value == f64::INFINITY {
-            f64::NEG_INFINITY
-        } else {
-            value
-        }
+        if value == f64::INFINITY { f64::NEG_INFINITY } else { value }
     }
     fn cdf(&self, x: f64) -> f64 {
         if x <= 0.0 {

@@ -30,10 +30,7 @@ impl HalfNormal {
     /// An `sd` that is not finite, or ≤ 0, such as 0.
     pub fn new(sd: f64) -> Result<Self, PriorError> {
         let sd = positive(Self::KEY, "sd", sd, "to hold the quantity, give a plain number")?;
-        Ok(Self {
-            sd,
-            constant: LN_2 - LN_SQRT_TWO_PI - sd.ln(),
-        })
+        Ok(Self { sd, constant: LN_2 - LN_SQRT_TWO_PI - sd.ln() })
     }
 }
 
@@ -46,25 +43,13 @@ impl Prior for HalfNormal {
     }
     fn log_density(&self, x: f64) -> f64 {
         let z = x / self.sd;
-        if x >= 0.0 {
-            self.constant - 0.5 * z * z
-        } else {
-            f64::NEG_INFINITY
-        }
+        if x >= 0.0 { self.constant - 0.5 * z * z } else { f64::NEG_INFINITY }
     }
     fn cdf(&self, x: f64) -> f64 {
-        if x <= 0.0 {
-            0.0
-        } else {
-            statrs::function::erf::erf(x / self.sd * std::f64::consts::FRAC_1_SQRT_2)
-        }
+        if x <= 0.0 { 0.0 } else { statrs::function::erf::erf(x / self.sd * std::f64::consts::FRAC_1_SQRT_2) }
     }
     fn survival(&self, x: f64) -> f64 {
-        if x <= 0.0 {
-            1.0
-        } else {
-            2.0 * normal_cdf(-x / self.sd)
-        }
+        if x <= 0.0 { 1.0 } else { 2.0 * normal_cdf(-x / self.sd) }
     }
     fn quantile(&self, p: f64) -> f64 {
         if p < 0.5 {
@@ -74,11 +59,7 @@ impl Prior for HalfNormal {
         }
     }
     fn upper_quantile(&self, q: f64) -> f64 {
-        if q > 0.5 {
-            self.quantile(1.0 - q.min(1.0))
-        } else {
-            -self.sd * normal_quantile(0.5 * q)
-        }
+        if q > 0.5 { self.quantile(1.0 - q.min(1.0)) } else { -self.sd * normal_quantile(0.5 * q) }
     }
     fn support(&self) -> (f64, f64) {
         (0.0, f64::INFINITY)

@@ -38,26 +38,19 @@ impl JointNormal {
             });
         }
         for (row, value) in mean.iter().enumerate().filter(|(_, value)| !value.is_finite()) {
-            return Err(PriorError::JointNotFinite {
-                part: "mean",
-                position: (row, 0),
-                value: *value,
-            });
+            return Err(PriorError::JointNotFinite { part: "mean", position: (row, 0), value: *value });
         }
         for (i, dimension) in of.iter().enumerate() {
             if of[..i].contains(dimension) {
-                return Err(PriorError::TwoPriors {
-                    dimension: *dimension,
-                });
+                return Err(PriorError::TwoPriors { dimension: *dimension });
             }
         }
         let matrix = DMatrix::from_fn(n, n, |row, column| covariance[row][column]);
         check_symmetric(&matrix)?;
         let factor = Cholesky::new(matrix.clone()).ok_or_else(|| indefinite(&matrix))?;
         let lower = factor.l();
-        let inverse = lower
-            .solve_lower_triangular(&DMatrix::identity(n, n))
-            .ok_or_else(|| indefinite(&matrix))?;
+        let inverse =
+            lower.solve_lower_triangular(&DMatrix::identity(n, n)).ok_or_else(|| indefinite(&matrix))?;
         let mut whitening = Vec::with_capacity(n * (n + 1) / 2);
         for row in 0..n {
             whitening.extend((0..=row).map(|column| inverse[(row, column)]));
@@ -117,9 +110,7 @@ impl JointNormal {
     /// Writes μ + L z into the dimensions it covers; `normals` in their order.
     pub(crate) fn colour(&self, normals: &[f64], point: &mut [f64]) {
         for (row, dimension) in self.of.iter().enumerate() {
-            let correlated: f64 = (0..=row)
-                .map(|column| self.lower[(row, column)] * normals[column])
-                .sum();
+            let correlated: f64 = (0..=row).map(|column| self.lower[(row, column)] * normals[column]).sum();
             point[*dimension] = self.mean[row] + correlated;
         }
     }
@@ -139,12 +130,7 @@ fn check_symmetric(matrix: &DMatrix<f64>) -> Result<(), PriorError> {
             let mirrored = matrix[(column, row)];
             let scale = (matrix[(row, row)] * matrix[(column, column)]).abs().sqrt();
             if column < row && (value - mirrored).abs() > 1e-10 * scale {
-                return Err(PriorError::JointAsymmetric {
-                    row,
-                    column,
-                    value,
-                    mirrored,
-                });
+                return Err(PriorError::JointAsymmetric { row, column, value, mirrored });
             }
         }
     }
@@ -153,8 +139,5 @@ fn check_symmetric(matrix: &DMatrix<f64>) -> Result<(), PriorError> {
 
 fn indefinite(matrix: &DMatrix<f64>) -> PriorError {
     let eigenvalues = matrix.clone().symmetric_eigenvalues();
-    PriorError::JointIndefinite {
-        smallest: eigenvalues.min(),
-        largest: eigenvalues.max(),
-    }
+    PriorError::JointIndefinite { smallest: eigenvalues.min(), largest: eigenvalues.max() }
 }

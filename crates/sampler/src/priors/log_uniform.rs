@@ -26,17 +26,8 @@ impl LogUniform {
     /// Numbers that are not finite; low ≥ high; low ≤ 0, such as [0, 1].
     pub fn new(low: f64, high: f64) -> Result<Self, PriorError> {
         let (low, high) = ordered(Self::KEY, low, high)?;
-        positive(
-            Self::KEY,
-            "low",
-            low,
-            "a logarithm needs positive bounds; `uniform` takes any",
-        )?;
-        Ok(Self {
-            low,
-            high,
-            ln_ratio: ((high - low) / low).ln_1p(),
-        })
+        positive(Self::KEY, "low", low, "a logarithm needs positive bounds; `uniform` takes any")?;
+        Ok(Self { low, high, ln_ratio: ((high - low) / low).ln_1p() })
     }
 }
 
@@ -48,11 +39,7 @@ impl Prior for LogUniform {
         vec![self.low, self.high]
     }
     fn log_density(&self, x: f64) -> f64 {
-        if x >= self.low && x <= self.high {
-            -x.ln() - self.ln_ratio.ln()
-        } else {
-            f64::NEG_INFINITY
-        }
+        if x >= self.low && x <= self.high { -x.ln() - self.ln_ratio.ln() } else { f64::NEG_INFINITY }
     }
     fn cdf(&self, x: f64) -> f64 {
         if x <= self.low {

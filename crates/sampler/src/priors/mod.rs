@@ -80,11 +80,7 @@ pub trait Prior: Send + Sync + Debug {
     /// One draw.
     fn sample(&self, rng: &mut dyn Rng) -> f64 {
         let u: f64 = rng.random();
-        if u < 0.5 {
-            self.quantile(u)
-        } else {
-            self.upper_quantile(1.0 - u)
-        }
+        if u < 0.5 { self.quantile(u) } else { self.upper_quantile(1.0 - u) }
     }
 
     /// What kind of log density it is, for code that integrates or evaluates the simple kinds faster.
@@ -215,9 +211,5 @@ fn unknown_family(key: &str) -> PriorError {
         .min()
         .filter(|(distance, name)| *distance <= name.len() / 2)
         .map(|(_, name)| name);
-    PriorError::UnknownFamily {
-        family: key.to_owned(),
-        nearest,
-        known,
-    }
+    PriorError::UnknownFamily { family: key.to_owned(), nearest, known }
 }

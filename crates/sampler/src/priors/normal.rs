@@ -29,11 +29,7 @@ impl Normal {
     pub fn new(mean: f64, sd: f64) -> Result<Self, PriorError> {
         let mean = finite(Self::KEY, "mean", mean)?;
         let sd = positive(Self::KEY, "sd", sd, "to hold the quantity, give a plain number")?;
-        Ok(Self {
-            mean,
-            sd,
-            constant: -LN_SQRT_TWO_PI - sd.ln(),
-        })
+        Ok(Self { mean, sd, constant: -LN_SQRT_TWO_PI - sd.ln() })
     }
 }
 
@@ -70,10 +66,7 @@ impl Prior for Normal {
         self.sd
     }
     fn shape(&self) -> PriorShape {
-        PriorShape::Normal {
-            mean: self.mean,
-            sd: self.sd,
-        }
+        PriorShape::Normal { mean: self.mean, sd: self.sd }
     }
     fn curvature(&self, _x: f64) -> f64 {
         self.sd.powi(-2)

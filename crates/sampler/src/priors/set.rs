@@ -45,10 +45,8 @@ impl PriorSet {
     ) -> Result<Self, PriorError> {
         let mut marginals: Vec<Option<SharedPrior>> = vec![None; dimension];
         let mut place = |at: usize, prior: SharedPrior| -> Result<(), PriorError> {
-            let slot = marginals.get_mut(at).ok_or(PriorError::NoDimension {
-                dimension: at,
-                count: dimension,
-            })?;
+            let slot =
+                marginals.get_mut(at).ok_or(PriorError::NoDimension { dimension: at, count: dimension })?;
             if slot.replace(prior).is_some() {
                 return Err(PriorError::TwoPriors { dimension: at });
             }
@@ -104,11 +102,7 @@ impl PriorSet {
             let prior = &self.marginals[dimension];
             match prior.shape() {
                 PriorShape::Normal { mean, sd } => {
-                    self.normals.push(NormalTerm {
-                        dimension,
-                        mean,
-                        inverse_sd: sd.recip(),
-                    });
+                    self.normals.push(NormalTerm { dimension, mean, inverse_sd: sd.recip() });
                     self.constant += prior.log_density(mean);
                 }
                 PriorShape::Flat { low, high } => {

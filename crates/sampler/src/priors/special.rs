@@ -55,11 +55,7 @@ pub(crate) fn invert_positive(
         low = (low / factor).max(1e-300);
         factor = (factor * factor).min(1e30);
     }
-    let mut x = if low * 4.0 < high {
-        (low.ln() * 0.5 + high.ln() * 0.5).exp()
-    } else {
-        0.5 * (low + high)
-    };
+    let mut x = if low * 4.0 < high { (low.ln() * 0.5 + high.ln() * 0.5).exp() } else { 0.5 * (low + high) };
     for _ in 0..400 {
         let value = residual(x);
         if value.abs() < 1e-15 || high - low <= 4e-16 * high {

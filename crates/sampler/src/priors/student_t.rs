@@ -30,20 +30,10 @@ impl StudentT {
     /// Numbers that are not finite; scale ≤ 0 or dof ≤ 0, such as [0, 1, 0].
     pub fn new(mean: f64, scale: f64, dof: f64) -> Result<Self, PriorError> {
         let mean = finite(Self::KEY, "mean", mean)?;
-        let scale = positive(
-            Self::KEY,
-            "scale",
-            scale,
-            "to hold the quantity, give a plain number",
-        )?;
+        let scale = positive(Self::KEY, "scale", scale, "to hold the quantity, give a plain number")?;
         let dof = positive(Self::KEY, "dof", dof, "from 3 on, the standard deviation exists")?;
         let constant = ln_gamma(0.5 * (dof + 1.0)) - ln_gamma(0.5 * dof) - 0.5 * (dof * PI).ln() - scale.ln();
-        Ok(Self {
-            mean,
-            scale,
-            dof,
-            constant,
-        })
+        Ok(Self { mean, scale, dof, constant })
     }
 
     /// Probability beyond `z` ≥ 0 on one side, in units of the scale.
@@ -84,34 +74,18 @@ impl Prior for StudentT {
     }
     fn cdf(&self, x: f64) -> f64 {
         let z = (x - self.mean) / self.scale;
-        if z < 0.0 {
-            self.tail(-z)
-        } else {
-            1.0 - self.tail(z)
-        }
+        if z < 0.0 { self.tail(-z) } else { 1.0 - self.tail(z) }
     }
     fn survival(&self, x: f64) -> f64 {
         let z = (x - self.mean) / self.scale;
-        if z < 0.0 {
-            1.0 - self.tail(-z)
-        } else {
-            self.tail(z)
-        }
+        if z < 0.0 { 1.0 - self.tail(-z) } else { self.tail(z) }
     }
     fn quantile(&self, p: f64) -> f64 {
-        let z = if p < 0.5 {
-            -self.tail_quantile(p)
-        } else {
-            self.tail_quantile(1.0 - p)
-        };
+        let z = if p < 0.5 { -self.tail_quantile(p) } else { self.tail_quantile(1.0 - p) };
         self.mean + self.scale * z
     }
     fn upper_quantile(&self, q: f64) -> f64 {
-        let z = if q < 0.5 {
-            self.tail_quantile(q)
-        } else {
-            -self.tail_quantile(1.0 - q)
-        };
+        let z = if q < 0.5 { self.tail_quantile(q) } else { -self.tail_quantile(1.0 - q) };
         self.mean + self.scale * z
     }
     fn support(&self) -> (f64, f64) {
@@ -121,11 +95,7 @@ impl Prior for StudentT {
         if self.dof > 1.0 { self.mean } else { f64::NAN }
     }
     fn standard_deviation(&self) -> f64 {
-        if self.dof > 2.0 {
-            self.scale * (self.dof / (self.dof - 2.0)).sqrt()
-        } else {
-            f64::INFINITY
-        }
+        if self.dof > 2.0 { self.scale * (self.dof / (self.dof - 2.0)).sqrt() } else { f64::INFINITY }
     }
     fn curvature(&self, x: f64) -> f64 {
         let z = (x - self.mean) / self.scale;

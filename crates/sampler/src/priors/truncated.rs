@@ -27,37 +27,16 @@ impl Truncated {
     /// as for a standard normal within [40, 50].
     pub fn new(prior: SharedPrior, low: f64, high: f64) -> Result<Self, PriorError> {
         if low.is_nan() || high.is_nan() || low >= high {
-            return Err(PriorError::InvertedBounds {
-                family: "within",
-                low,
-                high,
-            });
+            return Err(PriorError::InvertedBounds { family: "within", low, high });
         }
         let support = prior.support();
         let (from, to) = (low.max(support.0), high.min(support.1));
-        let mass = if from < to {
-            interval_mass(&*prior, from, to)
-        } else {
-            0.0
-        };
+        let mass = if from < to { interval_mass(&*prior, from, to) } else { 0.0 };
         if !(mass > 1e-280) {
-            return Err(PriorError::EmptyWindow {
-                family: prior.family(),
-                low,
-                high,
-                mass,
-                support,
-            });
+            return Err(PriorError::EmptyWindow { family: prior.family(), low, high, mass, support });
         }
-        let mut made = Self {
-            prior,
-            low,
-            high,
-            mass,
-            ln_mass: mass.ln(),
-            mean: f64::NAN,
-            standard_deviation: f64::NAN,
-        };
+        let mut made =
+            Self { prior, low, high, mass, ln_mass: mass.ln(), mean: f64::NAN, standard_deviation: f64::NAN };
         (made.mean, made.standard_deviation) = made.moments();
         Ok(made)
     }
@@ -200,8 +179,7 @@ impl Prior for Truncated {
         let x = if below + p * self.mass <= 0.5 {
             self.prior.quantile(below + p * self.mass)
         } else {
-            self.prior
-                .upper_quantile(self.prior.survival(high) + (1.0 - p) * self.mass)
+            self.prior.upper_quantile(self.prior.survival(high) + (1.0 - p) * self.mass)
         };
         x.clamp(low, high)
     }

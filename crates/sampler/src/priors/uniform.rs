@@ -36,11 +36,7 @@ impl Prior for Uniform {
         vec![self.low, self.high]
     }
     fn log_density(&self, x: f64) -> f64 {
-        if x >= self.low && x <= self.high {
-            -(self.high - self.low).ln()
-        } else {
-            f64::NEG_INFINITY
-        }
+        if x >= self.low && x <= self.high { -(self.high - self.low).ln() } else { f64::NEG_INFINITY }
     }
     fn cdf(&self, x: f64) -> f64 {
         ((x - self.low) / (self.high - self.low)).clamp(0.0, 1.0)
@@ -64,10 +60,7 @@ impl Prior for Uniform {
         (self.high - self.low) / 12f64.sqrt()
     }
     fn shape(&self) -> PriorShape {
-        PriorShape::Flat {
-            low: self.low,
-            high: self.high,
-        }
+        PriorShape::Flat { low: self.low, high: self.high }
     }
     fn curvature(&self, _x: f64) -> f64 {
         0.0

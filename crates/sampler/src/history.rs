@@ -1,0 +1,115 @@
+//! What is remembered of a run: every step at first, every second, fourth, … once memory runs short.
+
+use crate::diagnostics::Shape;
+use crate::ensemble::Ensemble;
+use serde::{Deserialize, Serialize};
+
+/// The remembered steps of all ensembles.
+///
+/// Kept are the steps after `dropped` that `thinning` divides. When the draws exceed the limit, `thinning` doubles and
+/// half of them go: so memory is bounded, and what is kept depends on nothing but the number of steps.
+#[derive(Debug, Clone, Serialize, Deserialize)]
+pub(crate) struct History {
+    dimension: usize,
+    walkers: usize,
+    maximum_draws: usize,
+    pub(crate) thinning: u64,
+    pub(crate) kept_steps: Vec<u64>,
+    pub(crate) records: Vec<Record>,
+}
+
+/// The remembered steps of one ensemble, step after step, walker after walker.
+#[derive(Debug, Clone, Default, Serialize, Deserialize)]
+pub(crate) struct Record {
+    pub(crate) points: Vec<f64>,
+    pub(crate) log_prior: Vec<f64>,
+    pub(crate) log_likelihood: Vec<f64>,
+}
+
+impl Record {
+    /// Appends the walkers as they stand.
+    pub(crate) fn push(&mut self, ensemble: &Ensemble) {
+        self.points.extend_from_slice(&ensemble.points);
+        self.log_prior.extend_from_slice(&ensemble.log_prior);
+        self.log_likelihood.extend_from_slice(&ensemble.log_likelihood);
+    }
+
+    /// Keeps the steps whose index `keep` accepts; a step is `walkers` rows of `dimension` coordinates.
+    fn retain(&mut self, steps: usize, walkers: usize, dimension: usize, keep: impl Fn(usize) -> bool) {
+        retain_blocks(&mut self.points, steps, walkers * dimension, &keep);
+        retain_blocks(&mut self.log_prior, steps, walkers, &keep);
+        retain_blocks(&mut self.log_likelihood, steps, walkers, &keep);
+    }
+}
+
+fn retain_blocks(values: &mut Vec<f64>, blocks: usize, size: usize, keep: &impl Fn(usize) -> bool) {
+    let mut filled = 0;
+    for block in 0..blocks {
+        if keep(block) {
+            values.copy_within(block * size..(block + 1) * size, filled * size);
+            filled += 1;
+        }
+    }
+    values.truncate(filled * size);
+}
+
+impl History {
+    /// An empty history.
+    pub(crate) fn new(ensembles: usize, walkers: usize, dimension: usize, maximum_draws: usize) -> Self {
+        Self {
+            dimension,
+            walkers,
+            maximum_draws,
+            thinning: 1,
+            kept_steps: vec![],
+            records: vec![Record::default(); ensembles],
+        }
+    }
+
+    /// Number of remembered steps.
+    pub(crate) fn steps(&self) -> usize {
+        self.kept_steps.len()
+    }
+
+    /// How rows are laid out.
+    pub(crate) fn shape(&self) -> Shape {
+        Shape { ensembles: self.records.len(), walkers: self.walkers, steps: self.steps() }
+    }
+
+    /// Notes that the records have grown to step `to`, and thins them if they are too long.
+    pub(crate) fn extend_to(&mut self, from: u64, to: u64) {
+        self.kept_steps.extend((from + 1..=to).filter(|step| step.is_multiple_of(self.thinning)));
+        while self.steps() * self.walkers * self.records.len() > self.maximum_draws && self.steps() > 8 {
+            self.thinning *= 2;
+            let (kept, thinning) = (std::mem::take(&mut self.kept_steps), self.thinning);
+            for record in &mut self.records {
+                let keep = |index: usize| kept[index].is_multiple_of(thinning);
+                record.retain(kept.len(), self.walkers, self.dimension, keep);
+            }
+            self.kept_steps = kept.into_iter().filter(|step| step.is_multiple_of(thinning)).collect();
+        }
+    }
+
+    /// Forgets the first `count` remembered steps.
+    pub(crate) fn drop_first(&mut self, count: usize) {
+        for record in &mut self.records {
+            record.retain(self.kept_steps.len(), self.walkers, self.dimension, |index| index >= count);
+        }
+        self.kept_steps.drain(..count);
+    }
+
+    /// Values of one parameter, ordered by ensemble, step, walker.
+    pub(crate) fn column(&self, parameter: usize) -> Vec<f64> {
+        let mut values = Vec::with_capacity(self.steps() * self.walkers * self.records.len());
+        for record in &self.records {
+            values.extend(record.points.iter().skip(parameter).step_by(self.dimension));
+        }
+        values
+    }
+
+    /// Log posterior, ordered by ensemble, step, walker.
+    pub(crate) fn log_posterior(&self) -> Vec<f64> {
+        let rows = self.records.iter().flat_map(|record| record.log_prior.iter().zip(&record.log_likelihood));
+        rows.map(|(prior, likelihood)| prior + likelihood).collect()
+    }
+}
