@@ -8,14 +8,19 @@
 //!
 //! This crate does no arithmetic of physics or statistics and prints nothing.
 
+mod checksum;
 mod describe;
 mod error;
 mod fault;
 mod nearest;
 mod parameter_map;
+mod predict;
+mod run_error;
 mod warnings;
 
+pub mod assemble;
 pub mod file;
+pub mod record;
 pub mod resolve;
 
 pub use describe::{DescribedQuantity, Kind, describe};
@@ -24,5 +29,7 @@ pub use fault::Fault;
 pub use file::{Located, Origin, Override, Place, PriorSpec, Quantity, StudyFile};
 pub use nearest::Nearest;
 pub use parameter_map::{ParameterMap, Term};
+pub use predict::{PredictedRow, predict};
+pub use run_error::RunError;
 pub use resolve::{AffineForm, FreeParameter, FreePrior, Hypothesis, ResolvedQuantity, State, Study};
 pub use warnings::Warning;

@@ -1,0 +1,202 @@
+//! One hypothesis of a study, ready to be evaluated.
+
+use super::measurements::Measurements;
+use super::power_table::read_power_table;
+use crate::file::PowerChoice;
+use crate::parameter_map::ParameterMap;
+use crate::resolve::{Hypothesis, State, Study};
+use crate::run_error::RunError;
+use oddwell_cosmology::PowerShape;
+use oddwell_likelihood::{CompressedSet, SurveySet};
+use oddwell_model::{BinSetup, Effects, Model, ModelError, ModelSetup, Row, Workspace};
+use oddwell_sampler::{EvaluationFailure, PriorSet, Target};
+use std::sync::Arc;
+
+/// A posterior: measurements, model, and the map from free parameters to the model's quantities.
+///
+/// Where no quantity that changes a k-shape is inferred, the data are compressed exactly and an evaluation costs the
+/// same for any number of measured rows.
+#[derive(Debug)]
+pub struct Problem {
+    /// The hypothesis, resolved.
+    pub hypothesis: Hypothesis,
+    /// The model of all kept rows.
+    pub model: Model,
+    /// From free parameters to the model's quantities.
+    pub map: ParameterMap,
+    /// The prior of the free parameters.
+    pub priors: PriorSet,
+    /// The kept measurements.
+    pub data: SurveySet,
+    compressed: Option<CompressedSet>,
+}
+
+/// Working memory of one thread.
+#[derive(Debug)]
+pub struct ProblemScratch {
+    values: Vec<f64>,
+    coefficients: Vec<f64>,
+    prediction: Vec<f64>,
+    workspace: Workspace,
+    residuals: Vec<f64>,
+}
+
+/// The model of `rows` under a hypothesis.
+pub(crate) fn model_setup(study: &Study, hypothesis: &Hypothesis, rows: Vec<Row>) -> Result<ModelSetup, RunError> {
+    let file = &study.file;
+    let mut bins = Vec::new();
+    for survey in &file.surveys {
+        bins.extend(survey.bins.iter().map(|bin| BinSetup {
+            survey: survey.name.value.clone(),
+            name: bin.name.value.clone(),
+            nodes: vec![(bin.redshift.value, 1.0)],
+            sight_line: survey.sight_line.value,
+            growth_given: bin.growth_rate.is_some(),
+        }));
+    }
+    let power = match &file.background.power.value {
+        PowerChoice::EisensteinHu => PowerShape::EisensteinHu,
+        PowerChoice::EisensteinHuSmooth => PowerShape::EisensteinHuSmooth,
+        PowerChoice::Table(path) => PowerShape::Table(Arc::new(read_power_table(&file.path_of(path))?)),
+    };
+    let effects = Effects {
+        wide_angle: file.prediction.wide_angle.value,
+        light_cone: file.prediction.light_cone.value,
+        lensing: file.prediction.lensing.value,
+        ..Effects::default()
+    };
+    Ok(ModelSetup {
+        bins,
+        rows,
+        power,
+        effects,
+        growth_index: file.prediction.growth_index.is_some(),
+        smallest_damping: smallest_damping(hypothesis)?,
+        departure: hypothesis.shape.0,
+        felt_by: hypothesis.felt_by,
+    })
+}
+
+/// The smallest damping that the hypothesis can ask for: it sets the range of the k integrals.
+fn smallest_damping(hypothesis: &Hypothesis) -> Result<f64, RunError> {
+    let Some(damping) = hypothesis.quantity("prediction.damping") else { return Ok(0.5) };
+    match damping.state {
+        State::Free(parameter) => Ok(hypothesis.priors()?.support(parameter).0.max(0.0)),
+        _ => Ok(damping.form.constant),
+    }
+}
+
+impl Problem {
+    /// Builds the model, checks that it can be evaluated at the prior's centre, and compresses the data where that is
+    /// exact.
+    ///
+    /// # Errors
+    /// [`RunError`] where the model has no prediction at the prior's centre, or the priors can't be built.
+    pub fn new(study: &Study, hypothesis: &Hypothesis, measurements: &Measurements) -> Result<Problem, RunError> {
+        let model = Model::new(model_setup(study, hypothesis, measurements.rows.clone())?)?;
+        let map = ParameterMap::new(hypothesis, model.layout().names())?;
+        let priors = hypothesis.priors()?;
+        let surveys = measurements.surveys.iter().map(|survey| survey.likelihood.clone()).collect();
+        let mut problem =
+            Problem { hypothesis: hypothesis.clone(), model, map, priors, data: SurveySet::new(surveys), compressed: None };
+        let start = hypothesis.start();
+        let mut scratch = problem.scratch();
+        let prediction = problem.predict(&start, &mut scratch)?;
+        debug_assert_eq!(prediction.len(), measurements.len());
+        if problem.has_fixed_kernels() {
+            let kernels = problem.model.kernels(&scratch.values, &mut scratch.workspace)?;
+            let compressed = problem.data.compress(&kernels.matrix);
+            problem.compressed = Some(compressed.map_err(|source| RunError::Likelihood {
+                survey: "all".into(),
+                source,
+            })?);
+        }
+        Ok(problem)
+    }
+
+    /// Whether the kernels stay as they are while the parameters move.
+    #[must_use]
+    pub fn has_fixed_kernels(&self) -> bool {
+        let layout = self.model.layout();
+        self.model.has_kernels()
+            && self.map.terms().iter().all(|term| !layout.changes_kernels(term.slot))
+    }
+
+    /// The model's quantities at a point.
+    #[must_use]
+    pub fn values(&self, point: &[f64]) -> Vec<f64> {
+        let mut values = vec![0.0; self.map.slots()];
+        self.map.fill(point, &mut values);
+        values
+    }
+
+    /// The prediction of all kept rows.
+    ///
+    /// # Errors
+    /// [`ModelError`] where there is none.
+    pub fn predict(&self, point: &[f64], scratch: &mut ProblemScratch) -> Result<Vec<f64>, ModelError> {
+        self.map.fill(point, &mut scratch.values);
+        self.predict_values(&scratch.values.clone(), scratch)
+    }
+
+    /// The prediction for quantities given outright.
+    ///
+    /// # Errors
+    /// [`ModelError`] where there is none.
+    pub fn predict_values(&self, values: &[f64], scratch: &mut ProblemScratch) -> Result<Vec<f64>, ModelError> {
+        let mut prediction = vec![0.0; self.data.rows()];
+        self.model.predict(values, &mut scratch.workspace, &mut prediction)?;
+        Ok(prediction)
+    }
+
+    /// The log-likelihood by the plain prediction, whether or not the data are compressed.
+    ///
+    /// # Errors
+    /// [`ModelError`] where the model has no prediction.
+    pub fn plain_log_likelihood(&self, point: &[f64], scratch: &mut ProblemScratch) -> Result<f64, ModelError> {
+        self.map.fill(point, &mut scratch.values);
+        self.model.predict(&scratch.values, &mut scratch.workspace, &mut scratch.prediction)?;
+        Ok(self.data.log_likelihood(&scratch.prediction, &mut scratch.residuals))
+    }
+
+    fn any_log_likelihood(&self, point: &[f64], scratch: &mut ProblemScratch) -> Result<f64, ModelError> {
+        let Some(compressed) = &self.compressed else { return self.plain_log_likelihood(point, scratch) };
+        self.map.fill(point, &mut scratch.values);
+        let ProblemScratch { values, coefficients, workspace, .. } = scratch;
+        self.model.coefficients(values, workspace, coefficients)?;
+        Ok(compressed.log_likelihood(coefficients))
+    }
+}
+
+impl Target for Problem {
+    type Scratch = ProblemScratch;
+
+    fn dimension(&self) -> usize {
+        self.map.dimension()
+    }
+
+    fn scratch(&self) -> ProblemScratch {
+        ProblemScratch {
+            values: vec![0.0; self.map.slots()],
+            coefficients: vec![0.0; self.model.coefficient_count()],
+            prediction: vec![0.0; self.data.rows()],
+            workspace: Workspace::new(),
+            residuals: Vec::new(),
+        }
+    }
+
+    fn log_prior(&self, point: &[f64]) -> f64 {
+        self.priors.log_density(point)
+    }
+
+    fn log_likelihood(&self, point: &[f64], scratch: &mut ProblemScratch) -> Result<f64, EvaluationFailure> {
+        self.any_log_likelihood(point, scratch).map_err(|error| {
+            let reason = error.to_string();
+            if error.is_recoverable() {
+                EvaluationFailure::Rejected { reason }
+            } else {
+                EvaluationFailure::Fatal { reason }
+            }
+        })
+    }
+}

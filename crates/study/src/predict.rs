@@ -1,0 +1,61 @@
+//! The prediction beside the measurements.
+
+use crate::assemble::{Problem, read_measurements};
+use crate::resolve::{Hypothesis, Study};
+use crate::run_error::RunError;
+use oddwell_likelihood::Axis;
+use oddwell_sampler::Target;
+use serde::Serialize;
+
+/// One measured row and what the model says of it.
+#[derive(Clone, Debug, PartialEq, Serialize)]
+pub struct PredictedRow {
+    /// The survey.
+    pub survey: String,
+    /// The bin.
+    pub bin: String,
+    /// The pair.
+    pub pair: String,
+    /// ℓ.
+    pub multipole: u8,
+    /// Mpc/h; none in Fourier space.
+    pub separation: Option<f64>,
+    /// h/Mpc; none in separation space.
+    pub wavenumber: Option<f64>,
+    /// The measured value.
+    pub measured: f64,
+    /// Its standard deviation, from the covariance.
+    pub error: f64,
+    /// The prediction.
+    pub predicted: f64,
+}
+
+/// Predicts every kept row at the centre of the priors and the values held.
+///
+/// # Errors
+/// [`RunError`] where the data can't be read or the model has no prediction there.
+pub fn predict(study: &Study, hypothesis: &Hypothesis) -> Result<Vec<PredictedRow>, RunError> {
+    let measurements = read_measurements(study)?;
+    let problem = Problem::new(study, hypothesis, &measurements)?;
+    let prediction = problem.predict(&hypothesis.start(), &mut problem.scratch())?;
+    let mut predicted = prediction.into_iter();
+    let mut rows = Vec::with_capacity(measurements.len());
+    for survey in &measurements.surveys {
+        let errors = survey.likelihood.covariance().standard_deviations();
+        for ((row, error), predicted) in survey.table.rows.iter().zip(errors).zip(&mut predicted) {
+            let at = |axis| (row.axis == axis).then_some(row.at);
+            rows.push(PredictedRow {
+                survey: survey.name.clone(),
+                bin: row.bin.clone(),
+                pair: row.pair.clone(),
+                multipole: row.multipole,
+                separation: at(Axis::Separation),
+                wavenumber: at(Axis::Wavenumber),
+                measured: row.value,
+                error,
+                predicted,
+            });
+        }
+    }
+    Ok(rows)
+}

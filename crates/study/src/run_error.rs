@@ -1,0 +1,136 @@
+//! What can stop a run, between a valid study file and a finished run directory.
+
+use crate::error::StudyError;
+use oddwell_cosmology::CosmologyError;
+use oddwell_likelihood::{DataError, LikelihoodError, NoiseError};
+use oddwell_model::ModelError;
+use oddwell_sampler::{PriorError, SamplerError};
+use std::path::PathBuf;
+use thiserror::Error;
+
+/// Why a study could not be assembled, predicted, fitted or written. The text is the whole message for the user.
+#[derive(Debug, Error)]
+#[non_exhaustive]
+pub enum RunError {
+    /// The study file is wrong.
+    #[error(transparent)]
+    Study(#[from] StudyError),
+    /// A table of measurements or a covariance is wrong.
+    #[error(transparent)]
+    Data(#[from] DataError),
+    /// Data and covariance don't go together, or the noise model doesn't suit them.
+    #[error("survey `{survey}`: {source}")]
+    Likelihood {
+        /// The survey.
+        survey: String,
+        /// What is wrong.
+        source: LikelihoodError,
+    },
+    /// The noise model needs what the study does not give.
+    #[error("survey `{survey}`: {source}")]
+    Noise {
+        /// The survey.
+        survey: String,
+        /// What is wrong.
+        source: NoiseError,
+    },
+    /// A row of a table belongs to no bin of the survey.
+    #[error(
+        "{file}, line {line}, column `bin`: `{bin}` is not a [[survey.bin]] of `{survey}`, which has {known}{suggestion}; add the bin to the study, or cut its rows with `keep`"
+    )]
+    RowWithoutBin {
+        /// The table.
+        file: String,
+        /// The line.
+        line: u64,
+        /// The bin's name in the table.
+        bin: String,
+        /// The survey.
+        survey: String,
+        /// The bins that are there.
+        known: String,
+        /// `; did you mean …?`, or nothing.
+        suggestion: String,
+    },
+    /// A bin of the study has no row left.
+    #[error(
+        "{study}, line {line}: the bin `{survey}.{bin}` has no row in {file}{after_keep}; add its rows, widen `keep`, or remove the bin"
+    )]
+    BinWithoutRow {
+        /// The study file.
+        study: String,
+        /// The line of the bin's name.
+        line: usize,
+        /// The survey.
+        survey: String,
+        /// The bin.
+        bin: String,
+        /// The table.
+        file: String,
+        /// ` that passes `keep``, or nothing.
+        after_keep: &'static str,
+    },
+    /// The background, growth or spectrum has no value.
+    #[error(transparent)]
+    Cosmology(#[from] CosmologyError),
+    /// The prediction has no value.
+    #[error(transparent)]
+    Model(#[from] ModelError),
+    /// A prior can't be built.
+    #[error(transparent)]
+    Prior(#[from] PriorError),
+    /// Sampling failed.
+    #[error(transparent)]
+    Sampler(#[from] SamplerError),
+    /// Nothing to infer.
+    #[error(
+        "hypothesis `{hypothesis}` has nothing to infer: every quantity is held; give at least one quantity a prior, such as `tau = {{ normal = [0.0, 3.0] }}`"
+    )]
+    NothingInferred {
+        /// The hypothesis.
+        hypothesis: String,
+    },
+    /// A table of the matter power spectrum is wrong.
+    #[error("{file}{at}: {rule}, found {value}; {way_out}")]
+    PowerTable {
+        /// The file.
+        file: String,
+        /// `, line N`, or nothing.
+        at: String,
+        /// The rule it breaks.
+        rule: &'static str,
+        /// What was found.
+        value: String,
+        /// What to do.
+        way_out: &'static str,
+    },
+    /// The run directory exists.
+    #[error("{}: exists already, and a run is never overwritten; give `--replace`, or another folder with `--out`", .path.display())]
+    Exists {
+        /// The directory.
+        path: PathBuf,
+    },
+    /// A file or folder can't be written.
+    #[error("{}: can't be written ({reason}); choose a folder that you may write to with `--out`", .path.display())]
+    Unwritable {
+        /// The path.
+        path: PathBuf,
+        /// What the operating system said.
+        reason: String,
+    },
+    /// A written file can't be read back.
+    #[error("{}: can't be read ({reason}); check that it is a run directory of this program", .path.display())]
+    UnreadableRun {
+        /// The path.
+        path: PathBuf,
+        /// What is wrong.
+        reason: String,
+    },
+}
+
+impl RunError {
+    pub(crate) fn unwritable(path: impl Into<PathBuf>) -> impl FnOnce(std::io::Error) -> RunError {
+        let path = path.into();
+        move |error| RunError::Unwritable { path, reason: error.to_string() }
+    }
+}
