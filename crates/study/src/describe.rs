@@ -68,20 +68,14 @@ pub fn describe(hypothesis: &Hypothesis) -> Vec<DescribedQuantity> {
 fn state_of(hypothesis: &Hypothesis, quantity: &ResolvedQuantity) -> (Kind, String) {
     match &quantity.state {
         State::Held(value) => (Kind::Held, format!("{value:?}")),
-        State::Tied(source) => (
-            Kind::Tied,
-            format!("same as {}", hypothesis.quantities[*source].name),
-        ),
+        State::Tied(source) => (Kind::Tied, format!("same as {}", hypothesis.quantities[*source].name)),
         State::Free(index) => match &hypothesis.free[*index].prior {
             FreePrior::Own(spec) => (Kind::Inferred, spec.to_string()),
             FreePrior::Joint { block, position, .. } => {
                 let block = &hypothesis.joint[*block];
                 let (mean, variance) = (block.mean[*position], block.covariance[*position][*position]);
                 let sd = variance.sqrt();
-                (
-                    Kind::Inferred,
-                    format!("joint normal on {}, mean {mean:?}, sd {sd:?}", block.origin),
-                )
+                (Kind::Inferred, format!("joint normal on {}, mean {mean:?}, sd {sd:?}", block.origin))
             }
         },
     }

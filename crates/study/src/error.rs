@@ -51,9 +51,12 @@ impl StudyError {
             Location::File { line, column, .. } => (line, column),
             _ => (0, 0),
         });
-        let mut said: Vec<Problem> = Vec::new();
+        let (mut said, mut texts): (Vec<Problem>, Vec<String>) = Default::default();
         for problem in problems {
-            if !said.contains(&problem) {
+            // The same in the user's eyes, even if found in two hypotheses with different names to choose from.
+            let text = problem.to_string();
+            if !texts.contains(&text) {
+                texts.push(text);
                 said.push(problem);
             }
         }
@@ -65,11 +68,7 @@ impl StudyError {
 }
 
 fn lines(problems: &[Problem]) -> String {
-    problems
-        .iter()
-        .map(Problem::to_string)
-        .collect::<Vec<_>>()
-        .join("\n")
+    problems.iter().map(Problem::to_string).collect::<Vec<_>>().join("\n")
 }
 
 /// One broken rule and where it is broken.

@@ -167,7 +167,7 @@ pub enum Fault {
 
     /// A quantity that is neither a number nor a prior.
     #[error(
-        "`{name}` must be a number (held) or a prior (inferred), not {found}; write `{name} = 1.0` or `{name} = {{ normal = [1.0, 0.1] }}`"
+        "`{name}` must be a number (held) or a prior (inferred), not {found}; write `{name} = NUMBER` or `{name} = {{ normal = [MEAN, SD] }}`"
     )]
     NotAQuantity {
         /// Key or dotted name.
@@ -204,7 +204,7 @@ pub enum Fault {
         first: String,
     },
     /// A family given something else than its numbers.
-    #[error("`{name}`: the prior `{key}` takes {takes}, not {found}")]
+    #[error("`{name}`: `{key}` takes {takes}, not {found}")]
     PriorForm {
         /// Key or dotted name of the quantity.
         name: String,

@@ -27,16 +27,17 @@ impl Nearest {
             }
         }
         let close = best.is_some_and(|(_, similarity)| similarity >= CLOSE);
-        Self {
-            name: best.map(|(candidate, _)| candidate.clone()),
-            close,
-            known,
-        }
+        Self { name: best.map(|(candidate, _)| candidate.clone()), close, known }
     }
 
     /// The nearest known name; none where nothing is known.
     pub fn name(&self) -> Option<&str> {
         self.name.as_deref()
+    }
+
+    /// Whether it is near enough to be what was meant.
+    pub fn is_close(&self) -> bool {
+        self.close
     }
 
     /// The names that are known, in their own order.
@@ -69,17 +70,8 @@ mod tests {
     #[test]
     fn a_slip_is_named_and_a_stranger_gets_the_list() {
         let known = ["constant", "dark-energy", "none"];
-        assert_eq!(
-            Nearest::find("constnt", known).to_string(),
-            "did you mean `constant`?"
-        );
-        assert_eq!(
-            Nearest::find("zzz", known).to_string(),
-            "known: `constant`, `dark-energy`, `none`"
-        );
-        assert_eq!(
-            Nearest::find("zzz", Vec::<String>::new()).to_string(),
-            "there is none"
-        );
+        assert_eq!(Nearest::find("constnt", known).to_string(), "did you mean `constant`?");
+        assert_eq!(Nearest::find("zzz", known).to_string(), "known: `constant`, `dark-energy`, `none`");
+        assert_eq!(Nearest::find("zzz", Vec::<String>::new()).to_string(), "there is none");
     }
 }

@@ -41,16 +41,8 @@ impl ParameterMap {
     /// # Errors
     /// [`StudyError::Mismatch`] for a slot that the study does not fill, and a quantity that has no slot.
     pub fn new<S: AsRef<str>>(hypothesis: &Hypothesis, slots: &[S]) -> Result<Self, StudyError> {
-        let mismatch = |name: &str, has, lacks| StudyError::Mismatch {
-            name: name.to_owned(),
-            has,
-            lacks,
-        };
-        for quantity in hypothesis
-            .quantities
-            .iter()
-            .filter(|quantity| !beside_the_model(&quantity.name))
-        {
+        let mismatch = |name: &str, has, lacks| StudyError::Mismatch { name: name.to_owned(), has, lacks };
+        for quantity in hypothesis.quantities.iter().filter(|quantity| !beside_the_model(&quantity.name)) {
             if !slots.iter().any(|slot| slot.as_ref() == quantity.name) {
                 return Err(mismatch(&quantity.name, "study", "model"));
             }
@@ -71,11 +63,7 @@ impl ParameterMap {
                 None => return Err(mismatch(name, "model", "study")),
             }
         }
-        let names = hypothesis
-            .free
-            .iter()
-            .map(|parameter| parameter.name.clone())
-            .collect();
+        let names = hypothesis.free.iter().map(|parameter| parameter.name.clone()).collect();
         Ok(Self { names, base, terms })
     }
 

@@ -121,21 +121,11 @@ impl Warning {
             Self::NuisanceMoved { parameter, shift } => format!(
                 "the data move `{parameter}` by {shift:+.1} of its prior's standard deviations; check that prior, and the data that pull it"
             ),
-            Self::UnsharedError {
-                quantity,
-                parameters,
-                departure,
-                independent,
-                shared,
-            } => format!(
+            Self::UnsharedError { quantity, parameters, departure, independent, shared } => format!(
                 "{} have equal priors on {quantity} with independent errors, which gives `{departure}` a standard deviation of {independent:.3}; were it one error in all of them it would be {shared:.3}: if they share a source, say so with a [[systematic]]",
                 parameters.join(", ")
             ),
-            Self::SmallSeparation {
-                bin,
-                separation,
-                worth,
-            } => format!(
+            Self::SmallSeparation { bin, separation, worth } => format!(
                 "in `{bin}` 1 km/s of redshift offset is worth {worth:.2} in tau at the smallest separation, {separation} Mpc/h; give `offset` a prior, or drop the smallest separations with `keep`"
             ),
             Self::GrowthAssumed { hypothesis } => format!(
@@ -144,11 +134,7 @@ impl Warning {
             Self::Untested { parameter, ratio } => format!(
                 "the posterior of `{parameter}` is {ratio:.2} times as wide as its prior: the data do not test it; widen the prior, or do not quote it as a measurement"
             ),
-            Self::NotConverged {
-                parameter,
-                failed,
-                longer,
-            } => {
+            Self::NotConverged { parameter, failed, longer } => {
                 let longer = longer.map_or_else(
                     || "run it longer".to_owned(),
                     |longer| format!("run it about {longer:.1} times as long"),
@@ -159,11 +145,7 @@ impl Warning {
                 "the rows of `{survey}` have no `low` and `high`: averaging over shells as wide as their spacing would change the prediction by up to {:.1} % of the multipole's largest value; add the two columns",
                 100.0 * difference
             ),
-            Self::IgnoredColumn {
-                file,
-                column,
-                nearest,
-            } => {
+            Self::IgnoredColumn { file, column, nearest } => {
                 let meant = nearest.as_ref().map_or_else(String::new, |name| {
                     format!("; if it is `{name}`, map it in [survey.columns]")
                 });

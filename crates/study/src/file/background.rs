@@ -40,10 +40,8 @@ pub enum PowerChoice {
     Table(String),
 }
 
-const POWER_SHAPES: [(&str, PowerChoice); 2] = [
-    ("eisenstein-hu", PowerChoice::EisensteinHu),
-    ("eisenstein-hu-smooth", PowerChoice::EisensteinHuSmooth),
-];
+const POWER_SHAPES: [(&str, PowerChoice); 2] =
+    [("eisenstein-hu", PowerChoice::EisensteinHu), ("eisenstein-hu-smooth", PowerChoice::EisensteinHuSmooth)];
 
 impl BackgroundSection {
     pub(super) fn read(section: Section<'_>) -> Option<Self> {
@@ -83,19 +81,9 @@ fn read_power(section: &Section<'_>) -> Option<Located<PowerChoice>> {
     if text.value.contains(['.', '/', '\\']) {
         return Some(text.map(PowerChoice::Table));
     }
-    let names = POWER_SHAPES
-        .iter()
-        .map(|(name, _)| *name)
-        .chain(["PATH/TABLE.csv"]);
+    let names = POWER_SHAPES.iter().map(|(name, _)| *name).chain(["PATH/TABLE.csv"]);
     let nearest = Nearest::find(&text.value, names);
-    section.fault_at(
-        "power",
-        Fault::UnknownChoice {
-            what: "power spectrum",
-            value: text.value,
-            nearest,
-        },
-    );
+    section.fault_at("power", Fault::UnknownChoice { what: "power spectrum", value: text.value, nearest });
     None
 }
 

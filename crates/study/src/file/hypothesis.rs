@@ -46,11 +46,16 @@ impl HypothesisSection {
     pub(super) fn read(section: Section<'_>) -> Option<Self> {
         let name = section.required_text("name", "\"constant\"");
         let departure = read_departure(&section);
-        let felt_by = departure
-            .as_ref()
-            .and_then(|departure| read_felt_by(&section, departure.value));
+        let felt_by = departure.as_ref().and_then(|departure| read_felt_by(&section, departure.value));
         let Some(departure) = departure else {
             // Which other keys belong here depends on the shape.
+            section.find("felt_by");
+            let any: Vec<&str> = departures::registry()
+                .iter()
+                .flat_map(|shape| shape.parameters())
+                .map(|each| each.name)
+                .collect();
+            section.finish_knowing(&any);
             return None;
         };
         let shape = departure.value;
@@ -78,18 +83,8 @@ fn read_departure(section: &Section<'_>) -> Option<Located<Shape>> {
     if let Some(shape) = departures::find(&text.value) {
         return Some(text.map(|_| Shape(shape)));
     }
-    let nearest = Nearest::find(
-        &text.value,
-        departures::registry().iter().map(|shape| shape.name()),
-    );
-    section.fault_at(
-        "departure",
-        Fault::UnknownChoice {
-            what: "departure",
-            value: text.value,
-            nearest,
-        },
-    );
+    let nearest = Nearest::find(&text.value, departures::registry().iter().map(|shape| shape.name()));
+    section.fault_at("departure", Fault::UnknownChoice { what: "departure", value: text.value, nearest });
     None
 }
 
@@ -113,20 +108,12 @@ fn read_felt_by(section: &Section<'_>, shape: Shape) -> Option<Located<FeltBy>> 
         };
     }
     let choices = FeltBy::ALL.map(|felt_by| (felt_by.name(), felt_by));
-    let felt_by = section.choice(
-        "felt_by",
-        "answer to who feels the departure:",
-        &choices,
-        "\"light\"",
-    )?;
+    let felt_by = section.choice("felt_by", "felt_by", &choices, "\"light\"")?;
     if allowed.contains(&felt_by.value) {
         return Some(felt_by);
     }
-    let fault = Fault::FeltBy {
-        departure: shape.name(),
-        felt_by: felt_by.value.name(),
-        allowed: words.join(" or "),
-    };
+    let fault =
+        Fault::FeltBy { departure: shape.name(), felt_by: felt_by.value.name(), allowed: words.join(" or ") };
     section.fault_at("felt_by", fault);
     None
 }
@@ -135,20 +122,13 @@ fn read_felt_by(section: &Section<'_>, shape: Shape) -> Option<Located<FeltBy>> 
 fn foreign_parameters(section: &Section<'_>, shape: Shape) -> Vec<&'static str> {
     let mut foreign = Vec::new();
     for (key, _) in section.keys() {
-        if shape
-            .parameters()
-            .iter()
-            .any(|parameter| parameter.name == key.get())
-        {
+        if shape.parameters().iter().any(|parameter| parameter.name == key.get()) {
             continue;
         }
         let owners: Vec<_> = departures::registry()
             .iter()
             .filter_map(|other| {
-                let parameter = other
-                    .parameters()
-                    .iter()
-                    .find(|parameter| parameter.name == key.get())?;
+                let parameter = other.parameters().iter().find(|parameter| parameter.name == key.get())?;
                 Some((other.name(), parameter.name))
             })
             .collect();

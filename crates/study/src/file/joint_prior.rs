@@ -30,10 +30,7 @@ impl JointPriorSection {
             "a list of rows of numbers",
             "[[1.0, 0.5], [0.5, 1.0]]",
             |item| {
-                let rows = item
-                    .as_array()?
-                    .iter()
-                    .map(|row| numbers_of(&Item::Value(row.clone())));
+                let rows = item.as_array()?.iter().map(|row| numbers_of(&Item::Value(row.clone())));
                 rows.collect::<Option<Vec<Vec<f64>>>>()
             },
         );
@@ -47,27 +44,18 @@ impl JointPriorSection {
 }
 
 fn read_names(section: &Section<'_>) -> Option<Located<Vec<String>>> {
-    let names = read_list(
-        section,
-        "of",
-        "a list of names",
-        "[\"SURVEY.BIN.first.evolution\", \"…\"]",
-        |item| {
+    let names =
+        read_list(section, "of", "a list of names", "[\"SURVEY.BIN.first.evolution\", \"…\"]", |item| {
             item.as_array()?
                 .iter()
                 .map(Value::as_str)
                 .map(|name| name.map(str::to_owned))
                 .collect::<Option<Vec<_>>>()
-        },
-    )?;
+        })?;
     for (index, name) in names.value.iter().enumerate() {
         if names.value[..index].contains(name) {
             let first_line = names.origin.line().unwrap_or(1);
-            let fault = Fault::DuplicateName {
-                what: "quantity",
-                name: name.clone(),
-                first_line,
-            };
+            let fault = Fault::DuplicateName { what: "quantity", name: name.clone(), first_line };
             section.fault_at("of", fault);
             return None;
         }
@@ -90,10 +78,7 @@ fn read_list<T>(
         section.wrong_type(key, expected, item, example);
         return None;
     };
-    Some(Located {
-        value,
-        origin: section.origin(key, item),
-    })
+    Some(Located { value, origin: section.origin(key, item) })
 }
 
 /// Sizes, symmetry and definiteness.
@@ -104,17 +89,10 @@ fn checked(
     rows: Located<Vec<Vec<f64>>>,
 ) -> Option<JointPriorSection> {
     match JointNormal::new((0..of.value.len()).collect(), &mean.value, &rows.value) {
-        Ok(_) => Some(JointPriorSection {
-            of,
-            mean,
-            covariance: rows,
-        }),
+        Ok(_) => Some(JointPriorSection { of, mean, covariance: rows }),
         Err(cause) => {
             let of_mean = matches!(cause, PriorError::JointShape { of, mean, .. } if of != mean);
-            section.fault_at(
-                if of_mean { "mean" } else { "covariance" },
-                Fault::JointPrior { cause },
-            );
+            section.fault_at(if of_mean { "mean" } else { "covariance" }, Fault::JointPrior { cause });
             None
         }
     }

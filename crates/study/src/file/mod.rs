@@ -66,10 +66,7 @@ impl StudyFile {
     /// [`StudyError::Unreadable`] where there is no such file, it is a folder or not UTF-8; else as [`StudyFile::parse`].
     pub fn read(path: impl AsRef<Path>) -> Result<Self, StudyError> {
         let path = path.as_ref();
-        let unreadable = |reason: String| StudyError::Unreadable {
-            path: path.to_owned(),
-            reason,
-        };
+        let unreadable = |reason: String| StudyError::Unreadable { path: path.to_owned(), reason };
         if path.is_dir() {
             return Err(unreadable("it is a folder".to_owned()));
         }
@@ -107,16 +104,8 @@ impl StudyFile {
             }
         };
         let parts = StudyError::unless_none(reader.into_problems(), read)?;
-        let Parts {
-            title,
-            background,
-            prediction,
-            surveys,
-            systematics,
-            joint_priors,
-            hypotheses,
-            sampling,
-        } = parts;
+        let Parts { title, background, prediction, surveys, systematics, joint_priors, hypotheses, sampling } =
+            parts;
         Ok(Self {
             source,
             folder,
@@ -156,23 +145,22 @@ impl Parts {
             None => Some(Located::default_of(stem(source.name()))),
         };
         if root.find("background").is_none() {
-            root.missing(
-                "[background]",
-                "[background]` with `omega_m`, `omega_b`, `h`, `n_s` and `sigma8",
-            );
+            root.missing("background", "[background]` with `omega_m`, `omega_b`, `h`, `n_s` and `sigma8");
+        }
+        for (key, example) in [
+            ("survey", "[[survey]]` with its `[[survey.bin]]"),
+            ("hypothesis", "[[hypothesis]]`, such as one with `departure = \"none\""),
+        ] {
+            if root.find(key).is_none() {
+                root.missing(key, example);
+            }
         }
         let example = "{ omega_m = 0.31, omega_b = 0.049, h = 0.68, n_s = 0.965, sigma8 = 0.81 }";
-        let background = root
-            .table("background", "background", "[background]", example)
-            .and_then(BackgroundSection::read);
+        let background =
+            root.table("background", "background", "[background]", example).and_then(BackgroundSection::read);
         let prediction = match root.find("prediction") {
             Some(_) => root
-                .table(
-                    "prediction",
-                    "prediction",
-                    "[prediction]",
-                    "{ wide_angle = true }",
-                )
+                .table("prediction", "prediction", "[prediction]", "{ wide_angle = true }")
                 .and_then(PredictionSection::read),
             None => Some(PredictionSection::defaults()),
         };
@@ -182,12 +170,7 @@ impl Parts {
         let hypotheses = all(&root, "hypothesis", "[[hypothesis]]", HypothesisSection::read);
         let sampling = match root.find("sampling") {
             Some(_) => root
-                .table(
-                    "sampling",
-                    "sampling",
-                    "[sampling]",
-                    "{ effective_samples = 4000 }",
-                )
+                .table("sampling", "sampling", "[sampling]", "{ effective_samples = 4000 }")
                 .and_then(SamplingSection::read),
             None => Some(SamplingSection::defaults()),
         };
@@ -212,16 +195,11 @@ fn all<T>(
     label: &str,
     read: impl Fn(Section<'_>) -> Option<T>,
 ) -> Option<Vec<T>> {
-    let read: Vec<Option<T>> = root
-        .tables(kind, kind, label, "[{ name = \"…\" }]")
-        .into_iter()
-        .map(read)
-        .collect();
+    let read: Vec<Option<T>> =
+        root.tables(kind, kind, label, "[{ name = \"…\" }]").into_iter().map(read).collect();
     read.into_iter().collect()
 }
 
 fn stem(name: &str) -> String {
-    Path::new(name)
-        .file_stem()
-        .map_or_else(|| "study".to_owned(), |stem| stem.to_string_lossy().into_owned())
+    Path::new(name).file_stem().map_or_else(|| "study".to_owned(), |stem| stem.to_string_lossy().into_owned())
 }

@@ -34,12 +34,7 @@ impl Override {
             _ => {
                 let source = Source::of_option(option, "");
                 let reader = Reader::new(&source);
-                reader.fault(
-                    None,
-                    Fault::SetForm {
-                        text: text.to_owned(),
-                    },
-                );
+                reader.fault(None, Fault::SetForm { text: text.to_owned() });
                 return StudyError::unless_none(reader.into_problems(), None);
             }
         };
@@ -47,25 +42,17 @@ impl Override {
         let source = Source::of_option(option.clone(), format!("{} = {value}\n", quoted(name)));
         let reader = Reader::new(&source);
         let quantity = match Document::parse(source.text()) {
-            Ok(document) => Section::new(&reader, document.as_table(), None, "set", "--set").quantity(name),
-            Err(_) => {
+            Ok(document) if document.as_table().len() == 1 => {
+                Section::new(&reader, document.as_table(), None, "set", "--set").quantity(name)
+            }
+            _ => {
                 let found = format!("`{value}`");
-                reader.fault(
-                    None,
-                    Fault::NotAQuantity {
-                        name: name.to_owned(),
-                        found,
-                    },
-                );
+                reader.fault(None, Fault::NotAQuantity { name: name.to_owned(), found });
                 None
             }
         };
         let quantity = StudyError::unless_none(reader.into_problems(), quantity)?;
-        Ok(Self {
-            name: name.to_owned(),
-            quantity,
-            option,
-        })
+        Ok(Self { name: name.to_owned(), quantity, option })
     }
 }
 

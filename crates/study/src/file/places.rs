@@ -30,14 +30,8 @@ impl StudyFile {
         .collect();
         let prediction = &mut self.prediction;
         places.push(("prediction.damping".to_owned(), Given(&mut prediction.damping)));
-        places.push((
-            "prediction.growth_index".to_owned(),
-            Optional(&mut prediction.growth_index),
-        ));
-        places.push((
-            "prediction.clock_distance".to_owned(),
-            Given(&mut prediction.clock_distance),
-        ));
+        places.push(("prediction.growth_index".to_owned(), Optional(&mut prediction.growth_index)));
+        places.push(("prediction.clock_distance".to_owned(), Given(&mut prediction.clock_distance)));
         for survey in &mut self.surveys {
             for bin in &mut survey.bins {
                 let path = format!("{}.{}", survey.name.value, bin.name.value);

@@ -71,19 +71,15 @@ impl Section<'_> {
     pub(crate) fn quantity(&self, key: &str) -> Option<Located<Quantity>> {
         let (_, item) = self.find(key)?;
         let value = self.read_quantity(key, item)?;
-        Some(Located {
-            value,
-            origin: self.origin(key, item),
-        })
+        Some(Located { value, origin: self.origin(key, item) })
     }
 
     /// A quantity that must be given.
     pub(crate) fn required_quantity(&self, key: &str, example: &'static str) -> Option<Located<Quantity>> {
         if self.find(key).is_none() {
-            self.missing(
-                key,
-                &format!("{key} = {example}` or a prior, `{key} = {{ normal = [{example}, 0.1] }}"),
-            );
+            let way =
+                format!("{key} = {example}`, or a prior, as in `{key} = {{ normal = [{example}, SD] }}");
+            self.missing(key, &way);
             return None;
         }
         self.quantity(key)
@@ -102,33 +98,15 @@ impl Section<'_> {
             if value.is_finite() {
                 return Some(Quantity::Held(value));
             }
-            self.fault_at(
-                key,
-                Fault::NotFinite {
-                    name: key.to_owned(),
-                    value,
-                },
-            );
+            self.fault_at(key, Fault::NotFinite { name: key.to_owned(), value });
             return None;
         }
         let Some(table) = item.as_table_like() else {
             let found = self.reader.found(item);
-            self.fault_at(
-                key,
-                Fault::NotAQuantity {
-                    name: key.to_owned(),
-                    found,
-                },
-            );
+            self.fault_at(key, Fault::NotAQuantity { name: key.to_owned(), found });
             return None;
         };
-        let inner = Section::new(
-            self.reader,
-            table,
-            item.span().or_else(|| self.span()),
-            "prior",
-            "a prior",
-        );
+        let inner = Section::new(self.reader, table, item.span().or_else(|| self.span()), "prior", "a prior");
         let quantity = inner.read_prior(key);
         if quantity.is_some() {
             inner.finish();
@@ -139,20 +117,13 @@ impl Section<'_> {
     /// Reads this table as the prior (or the tie) of the quantity `name`.
     fn read_prior(&self, name: &str) -> Option<Quantity> {
         let owned = || name.to_owned();
-        let given: Vec<(&toml_edit::Key, &Item)> = self
-            .keys()
-            .into_iter()
-            .filter(|(key, _)| key.get() != "within")
-            .collect();
+        let given: Vec<(&toml_edit::Key, &Item)> =
+            self.keys().into_iter().filter(|(key, _)| key.get() != "within").collect();
         for (key, _) in &given {
             if key.get() != "same_as" && prior_family(key.get()).is_none() {
                 let value = key.get().to_owned();
                 let nearest = Nearest::find(&value, family_keys().chain(["same_as", "within"]));
-                let fault = Fault::UnknownChoice {
-                    what: "prior family",
-                    value,
-                    nearest,
-                };
+                let fault = Fault::UnknownChoice { what: "prior family", value, nearest };
                 self.reader.fault(key.span().or_else(|| self.span()), fault);
                 return None;
             }
@@ -160,39 +131,20 @@ impl Section<'_> {
         let (key, item) = match given.as_slice() {
             [] => {
                 let families = family_keys().map(str::to_owned).collect();
-                self.reader.fault(
-                    self.span(),
-                    Fault::NoFamily {
-                        name: owned(),
-                        families,
-                    },
-                );
+                self.reader.fault(self.span(), Fault::NoFamily { name: owned(), families });
                 return None;
             }
             [one] => (one.0.get(), one.1),
             [first, second, ..] => {
                 let (first, second) = (first.0.get().to_owned(), second.0.get().to_owned());
-                self.fault_at(
-                    &second.clone(),
-                    Fault::TwoPriors {
-                        name: owned(),
-                        first,
-                        second,
-                    },
-                );
+                self.fault_at(&second.clone(), Fault::TwoPriors { name: owned(), first, second });
                 return None;
             }
         };
         if key == "same_as" {
             let source = self.text("same_as", "\"SURVEY.BIN.first.bias\"")?;
             if self.find("within").is_some() {
-                self.fault_at(
-                    "within",
-                    Fault::WithinTie {
-                        name: owned(),
-                        source_name: source.value,
-                    },
-                );
+                self.fault_at("within", Fault::WithinTie { name: owned(), source_name: source.value });
                 return None;
             }
             return Some(Quantity::SameAs(source.value));
@@ -219,11 +171,7 @@ impl Section<'_> {
                 }
             },
         };
-        let spec = PriorSpec {
-            family: family.key,
-            numbers,
-            within,
-        };
+        let spec = PriorSpec { family: family.key, numbers, within };
         let Err(cause) = spec.build() else {
             return Some(Quantity::Prior(spec));
         };
@@ -231,10 +179,7 @@ impl Section<'_> {
             cause,
             PriorError::InvertedBounds { family: "within", .. } | PriorError::EmptyWindow { .. }
         );
-        self.fault_at(
-            if of_window { "within" } else { key },
-            Fault::Prior { name: owned(), cause },
-        );
+        self.fault_at(if of_window { "within" } else { key }, Fault::Prior { name: owned(), cause });
         None
     }
 }

@@ -40,28 +40,13 @@ impl SamplingSection {
             Some(_) => section.count(key, range, rule, example),
             None => Some(Located::default_of(default)),
         };
-        let effective_samples = or(
-            "effective_samples",
-            EFFECTIVE_SAMPLES,
-            (1, 1_000_000_000),
-            "from 1 to 1000000000",
-            "4000",
-        );
+        let effective_samples =
+            or("effective_samples", EFFECTIVE_SAMPLES, (1, 1_000_000_000), "from 1 to 1000000000", "4000");
         let seed = or("seed", SEED, (0, i64::MAX as u64), "0 or above", "1");
-        let ensembles = or(
-            "ensembles",
-            ENSEMBLES,
-            (2, 64),
-            "from 2 (convergence compares them) to 64",
-            "4",
-        );
+        let ensembles = or("ensembles", ENSEMBLES, (2, 64), "from 2 (convergence compares them) to 64", "4");
         let walkers = section.count("walkers", (4, 100_000), "from 4 to 100000", "64");
-        let maximum_evaluations = section.count(
-            "maximum_evaluations",
-            (1, i64::MAX as u64),
-            "at least 1",
-            "1000000",
-        );
+        let maximum_evaluations =
+            section.count("maximum_evaluations", (1, i64::MAX as u64), "at least 1", "1000000");
         section.finish();
         Some(Self {
             effective_samples: effective_samples?,

@@ -19,10 +19,7 @@ pub(crate) struct Reader<'a> {
 
 impl<'a> Reader<'a> {
     pub(crate) fn new(source: &'a Source) -> Self {
-        Self {
-            source,
-            problems: RefCell::new(Vec::new()),
-        }
+        Self { source, problems: RefCell::new(Vec::new()) }
     }
 
     /// Records a broken rule at a range of bytes; without one, at the file as a whole.
@@ -32,11 +29,7 @@ impl<'a> Reader<'a> {
             _ if self.source.is_command_line() => Location::Option { option: name },
             Some(span) => {
                 let place = self.source.place(span);
-                Location::File {
-                    file: name,
-                    line: place.line,
-                    column: place.column,
-                }
+                Location::File { file: name, line: place.line, column: place.column }
             }
             None => Location::WholeFile { file: name },
         };
@@ -74,6 +67,7 @@ pub(crate) struct Section<'a> {
     /// How errors speak of it, as `[background]`.
     label: String,
     known: RefCell<Vec<String>>,
+    missing: RefCell<Vec<(String, Fault)>>,
 }
 
 impl<'a> Section<'a> {
@@ -90,7 +84,8 @@ impl<'a> Section<'a> {
             span,
             kind,
             label: label.into(),
-            known: RefCell::new(Vec::new()),
+            known: RefCell::default(),
+            missing: RefCell::default(),
         }
     }
 
@@ -109,37 +104,28 @@ impl<'a> Section<'a> {
 
     /// The keys that stand in the table, in its order.
     pub(crate) fn keys(&self) -> Vec<(&'a Key, &'a Item)> {
-        self.table
-            .iter()
-            .filter_map(|(name, _)| self.table.get_key_value(name))
-            .collect()
+        self.table.iter().filter_map(|(name, _)| self.table.get_key_value(name)).collect()
     }
 
+    /// A key that should be there. Said at [`Section::finish`], unless an unknown key turns out to be a slip of it.
     pub(crate) fn missing(&self, key: &str, example: &str) {
         let fault = Fault::MissingKey {
             section: self.label.clone(),
             key: key.to_owned(),
             example: example.to_owned(),
         };
-        self.reader.fault(self.span.clone(), fault);
+        self.missing.borrow_mut().push((key.to_owned(), fault));
     }
 
     pub(crate) fn wrong_type(&self, key: &str, expected: &'static str, item: &Item, example: &'static str) {
-        let fault = Fault::WrongType {
-            key: key.to_owned(),
-            expected,
-            found: self.reader.found(item),
-            example,
-        };
+        let fault =
+            Fault::WrongType { key: key.to_owned(), expected, found: self.reader.found(item), example };
         self.reader.fault(span_of(self.table, key, item), fault);
     }
 
     /// Records a broken rule at the value of a key.
     pub(crate) fn fault_at(&self, key: &str, fault: Fault) {
-        let span = self
-            .table
-            .get_key_value(key)
-            .and_then(|(key, item)| item.span().or_else(|| key.span()));
+        let span = self.table.get_key_value(key).and_then(|(key, item)| item.span().or_else(|| key.span()));
         self.reader.fault(span.or_else(|| self.span.clone()), fault);
     }
 
@@ -152,13 +138,7 @@ impl<'a> Section<'a> {
     /// Records that a value of a key is not supported by this version.
     fn unsupported(&self, key: &str, entry: &Unsupported, typed: Option<&str>) {
         let what = typed.map_or_else(|| format!("`{key}`"), |value| format!("`{key} = \"{value}\"`"));
-        self.fault_at(
-            key,
-            Fault::Unsupported {
-                what,
-                way_out: entry.way_out,
-            },
-        );
+        self.fault_at(key, Fault::Unsupported { what, way_out: entry.way_out });
     }
 
     pub(crate) fn text(&self, key: &str, example: &'static str) -> Option<Located<String>> {
@@ -181,10 +161,7 @@ impl<'a> Section<'a> {
             self.fault_at(key, fault);
             return None;
         }
-        Some(Located {
-            value: text.to_owned(),
-            origin: self.origin(key, item),
-        })
+        Some(Located { value: text.to_owned(), origin: self.origin(key, item) })
     }
 
     /// A text that must be there; `example` is the value, with its quotes.
@@ -209,14 +186,7 @@ impl<'a> Section<'a> {
             return Some(text.map(|_| *choice));
         }
         let nearest = Nearest::find(&text.value, choices.iter().map(|(name, _)| *name));
-        self.fault_at(
-            key,
-            Fault::UnknownChoice {
-                what,
-                value: text.value,
-                nearest,
-            },
-        );
+        self.fault_at(key, Fault::UnknownChoice { what, value: text.value, nearest });
         None
     }
 
@@ -228,10 +198,7 @@ impl<'a> Section<'a> {
             self.wrong_type(key, "true or false", item, if default { "true" } else { "false" });
             return None;
         };
-        Some(Located {
-            value,
-            origin: self.origin(key, item),
-        })
+        Some(Located { value, origin: self.origin(key, item) })
     }
 
     /// A finite number.
@@ -242,19 +209,10 @@ impl<'a> Section<'a> {
             return None;
         };
         if !value.is_finite() {
-            self.fault_at(
-                key,
-                Fault::NotFinite {
-                    name: key.to_owned(),
-                    value,
-                },
-            );
+            self.fault_at(key, Fault::NotFinite { name: key.to_owned(), value });
             return None;
         }
-        Some(Located {
-            value,
-            origin: self.origin(key, item),
-        })
+        Some(Located { value, origin: self.origin(key, item) })
     }
 
     /// A whole number of a range, both ends included.
@@ -271,21 +229,12 @@ impl<'a> Section<'a> {
             return None;
         };
         match u64::try_from(value) {
-            Ok(count) if (low..=high).contains(&count) => Some(Located {
-                value: count,
-                origin: self.origin(key, item),
-            }),
+            Ok(count) if (low..=high).contains(&count) => {
+                Some(Located { value: count, origin: self.origin(key, item) })
+            }
             _ => {
                 let (name, value) = (key.to_owned(), value.to_string());
-                self.fault_at(
-                    key,
-                    Fault::OutOfRange {
-                        name,
-                        rule,
-                        value,
-                        way_out: "choose another number",
-                    },
-                );
+                self.fault_at(key, Fault::OutOfRange { name, rule, value, way_out: "choose another number" });
                 None
             }
         }
@@ -301,13 +250,9 @@ impl<'a> Section<'a> {
     ) -> Option<Section<'a>> {
         let (name, item) = self.find(key)?;
         match item.as_table_like() {
-            Some(table) => Some(Section::new(
-                self.reader,
-                table,
-                item.span().or_else(|| name.span()),
-                kind,
-                label,
-            )),
+            Some(table) => {
+                Some(Section::new(self.reader, table, item.span().or_else(|| name.span()), kind, label))
+            }
             None => {
                 self.wrong_type(key, "a table", item, example);
                 None
@@ -358,37 +303,40 @@ impl<'a> Section<'a> {
     /// As [`Section::finish`], with keys that are dealt with elsewhere.
     pub(crate) fn finish_knowing(self, elsewhere: &[&str]) {
         let known = self.known.borrow();
+        let mut missing = self.missing.take();
         for (key, _) in self.keys() {
             let name = key.get();
             if known.iter().any(|each| each == name) || elsewhere.contains(&name) {
                 continue;
             }
             let fault = match unsupported_key(self.kind, name) {
-                Some(entry) => Fault::Unsupported {
-                    what: format!("`{name}`"),
-                    way_out: entry.way_out,
-                },
-                None => Fault::UnknownKey {
-                    key: name.to_owned(),
-                    section: self.label.clone(),
-                    nearest: Nearest::find(name, known.iter()),
-                },
+                Some(entry) => Fault::Unsupported { what: format!("`{name}`"), way_out: entry.way_out },
+                None => {
+                    let absent = known.iter().filter(|known| self.table.get(known).is_none());
+                    let nearest = match Nearest::find(name, absent) {
+                        slip if slip.is_close() => slip,
+                        _ => Nearest::find(name, known.iter()),
+                    };
+                    missing.retain(|(key, _)| !nearest.is_close() || nearest.name() != Some(key));
+                    Fault::UnknownKey { key: name.to_owned(), section: self.label.clone(), nearest }
+                }
             };
             self.reader.fault(key.span().or_else(|| self.span.clone()), fault);
+        }
+        for (_, fault) in missing {
+            self.reader.fault(self.span.clone(), fault);
         }
     }
 }
 
 /// The bytes of a value, or of its key where the value has none (a table opened by dotted keys).
 fn span_of(table: &dyn TableLike, key: &str, item: &Item) -> Option<Range<usize>> {
-    item.span()
-        .or_else(|| table.get_key_value(key).and_then(|(key, _)| key.span()))
+    item.span().or_else(|| table.get_key_value(key).and_then(|(key, _)| key.span()))
 }
 
 /// A number, whole or not.
 pub(crate) fn number_of(item: &Item) -> Option<f64> {
-    item.as_float()
-        .or_else(|| item.as_integer().map(|whole| whole as f64))
+    item.as_float().or_else(|| item.as_integer().map(|whole| whole as f64))
 }
 
 /// The numbers of a list; none where it holds anything else.
@@ -396,10 +344,6 @@ pub(crate) fn numbers_of(item: &Item) -> Option<Vec<f64>> {
     let array = item.as_array()?;
     array
         .iter()
-        .map(|value| {
-            value
-                .as_float()
-                .or_else(|| value.as_integer().map(|whole| whole as f64))
-        })
+        .map(|value| value.as_float().or_else(|| value.as_integer().map(|whole| whole as f64)))
         .collect()
 }

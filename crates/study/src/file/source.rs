@@ -59,18 +59,12 @@ pub struct Located<T> {
 impl<T> Located<T> {
     /// A value that the user did not give.
     pub fn default_of(value: T) -> Self {
-        Self {
-            value,
-            origin: Origin::Default,
-        }
+        Self { value, origin: Origin::Default }
     }
 
     /// The same origin, another value.
     pub fn map<U>(self, change: impl FnOnce(T) -> U) -> Located<U> {
-        Located {
-            value: change(self.value),
-            origin: self.origin,
-        }
+        Located { value: change(self.value), origin: self.origin }
     }
 }
 
@@ -95,15 +89,9 @@ impl Source {
     }
 
     fn new(name: String, text: String, command_line: bool) -> Self {
-        let line_starts = std::iter::once(0)
-            .chain(text.match_indices('\n').map(|(position, _)| position + 1))
-            .collect();
-        Self {
-            name,
-            text,
-            line_starts,
-            command_line,
-        }
+        let line_starts =
+            std::iter::once(0).chain(text.match_indices('\n').map(|(position, _)| position + 1)).collect();
+        Self { name, text, line_starts, command_line }
     }
 
     /// The path as the user gave it.
@@ -121,17 +109,8 @@ impl Source {
         let start = span.start.min(self.text.len());
         let line = self.line_starts.partition_point(|&first| first <= start).max(1);
         let first = self.line_starts[line - 1];
-        let column = self
-            .text
-            .get(first..start)
-            .map_or(start - first, |before| before.chars().count())
-            + 1;
-        Place {
-            line,
-            column,
-            start,
-            end: span.end.clamp(start, self.text.len()),
-        }
+        let column = self.text.get(first..start).map_or(start - first, |before| before.chars().count()) + 1;
+        Place { line, column, start, end: span.end.clamp(start, self.text.len()) }
     }
 
     /// The origin of what stands at these bytes.
@@ -146,11 +125,7 @@ impl Source {
     pub(crate) fn typed(&self, span: Option<Range<usize>>) -> String {
         let text = span.and_then(|span| self.text.get(span)).unwrap_or_default();
         let line = text.split_whitespace().collect::<Vec<_>>().join(" ");
-        if line.chars().count() <= 40 {
-            line
-        } else {
-            line.chars().take(39).chain(['…']).collect()
-        }
+        if line.chars().count() <= 40 { line } else { line.chars().take(39).chain(['…']).collect() }
     }
 
     pub(crate) fn is_command_line(&self) -> bool {
@@ -165,29 +140,12 @@ mod tests {
     #[test]
     fn places_count_from_one_and_in_characters() {
         let source = Source::of_file("s.toml", "a = 1\nµ = \"é\" # x\n");
-        assert_eq!(
-            source.place(0..1),
-            Place {
-                line: 1,
-                column: 1,
-                start: 0,
-                end: 1
-            }
-        );
+        assert_eq!(source.place(0..1), Place { line: 1, column: 1, start: 0, end: 1 });
         let quote = source.text().find('"').unwrap();
-        assert_eq!(
-            (
-                source.place(quote..quote + 4).line,
-                source.place(quote..quote + 4).column
-            ),
-            (2, 5)
-        );
+        assert_eq!((source.place(quote..quote + 4).line, source.place(quote..quote + 4).column), (2, 5));
         let hash = source.text().find('#').unwrap();
         assert_eq!(source.place(hash..hash + 1).column, 9);
         let end = source.text().len();
-        assert_eq!(
-            (source.place(end..end + 3).line, source.place(end..end + 3).column),
-            (3, 1)
-        );
+        assert_eq!((source.place(end..end + 3).line, source.place(end..end + 3).column), (3, 1));
     }
 }

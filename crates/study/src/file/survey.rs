@@ -71,10 +71,8 @@ pub struct TracerSection {
     pub bias_slope: Located<Quantity>,
 }
 
-const UNITS: [(&str, LengthUnit); 2] = [
-    ("Mpc/h", LengthUnit::MegaparsecPerH),
-    ("Mpc", LengthUnit::Megaparsec),
-];
+const UNITS: [(&str, LengthUnit); 2] =
+    [("Mpc/h", LengthUnit::MegaparsecPerH), ("Mpc", LengthUnit::Megaparsec)];
 
 impl SurveySection {
     pub(super) fn read(section: Section<'_>) -> Option<Self> {
@@ -85,10 +83,8 @@ impl SurveySection {
         let mock_count = section.count("mock_count", (2, u64::from(u32::MAX)), "at least 2", "600");
         let noise = match section.find("noise") {
             Some(_) => {
-                let choices: Vec<_> = noise_families()
-                    .iter()
-                    .map(|family| (family.name, family.name))
-                    .collect();
+                let choices: Vec<_> =
+                    noise_families().iter().map(|family| (family.name, family.name)).collect();
                 section.choice("noise", "noise model", &choices, "\"gaussian\"")
             }
             None => Some(Located::default_of("gaussian")),
@@ -113,12 +109,7 @@ impl SurveySection {
             .map(read_columns)
             .unwrap_or_default();
         let bins: Vec<_> = section
-            .tables(
-                "bin",
-                "bin",
-                "[[survey.bin]]",
-                "[{ name = \"near\", redshift = 0.35 }]",
-            )
+            .tables("bin", "bin", "[[survey.bin]]", "[{ name = \"near\", redshift = 0.35 }]")
             .into_iter()
             .map(BinSection::read)
             .collect();
@@ -187,10 +178,7 @@ impl TracerSection {
         };
         let bias = section.required_quantity("bias", "2.0");
         let magnification = section.required_quantity("magnification", "0.5");
-        let in_place = section
-            .keys()
-            .iter()
-            .any(|(key, _)| key.get() == "observed_density_slope");
+        let in_place = section.keys().iter().any(|(key, _)| key.get() == "observed_density_slope");
         let evolution = if in_place {
             section.quantity("evolution")
         } else {

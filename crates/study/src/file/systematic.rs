@@ -49,11 +49,7 @@ impl SystematicSection {
             section.fault_at("moves", fault);
         }
         section.finish();
-        Some(Self {
-            name: name?,
-            amplitude: amplitude?,
-            moves: moves.into_iter().collect::<Option<_>>()?,
-        })
+        Some(Self { name: name?, amplitude: amplitude?, moves: moves.into_iter().collect::<Option<_>>()? })
     }
 }
 
@@ -74,9 +70,6 @@ impl MoveEntry {
             section.fault_at("by", fault);
         }
         section.finish();
-        Some(Self {
-            quantity: quantity?,
-            by: by?,
-        })
+        Some(Self { quantity: quantity?, by: by? })
     }
 }

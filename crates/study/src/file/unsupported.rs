@@ -15,12 +15,7 @@ pub(crate) struct Unsupported {
 }
 
 const fn key(section: &'static str, key: &'static str, way_out: &'static str) -> Unsupported {
-    Unsupported {
-        section,
-        key,
-        value: None,
-        way_out,
-    }
+    Unsupported { section, key, value: None, way_out }
 }
 
 const fn value(
@@ -29,47 +24,22 @@ const fn value(
     value: &'static str,
     way_out: &'static str,
 ) -> Unsupported {
-    Unsupported {
-        section,
-        key,
-        value: Some(value),
-        way_out,
-    }
+    Unsupported { section, key, value: Some(value), way_out }
 }
 
 const AS_CSV: &str = "write it as a square table of numbers in a .csv file";
 
 /// Everything that this version knows of and cannot do.
 pub(crate) const UNSUPPORTED: &[Unsupported] = &[
-    key(
-        "study",
-        "joint_covariance",
-        "remove it, and leave out one of two surveys that share volume",
-    ),
-    key(
-        "survey",
-        "mocks",
-        "remove it, and give the covariance estimated from them, with `mock_count`",
-    ),
-    key(
-        "survey",
-        "fiducial",
-        "remove it, and hold the background that turned redshifts into distances",
-    ),
-    key(
-        "survey",
-        "window",
-        "remove it, and give multipoles that are corrected for the window",
-    ),
+    key("study", "joint_covariance", "remove it, and leave out one of two surveys that share volume"),
+    key("survey", "mocks", "remove it, and give the covariance estimated from them, with `mock_count`"),
+    key("survey", "fiducial", "remove it, and hold the background that turned redshifts into distances"),
+    key("survey", "window", "remove it, and give multipoles that are corrected for the window"),
     key("survey", "window_rows", "remove it together with `window`"),
     value("survey", "covariance", ".npy", AS_CSV),
     value("survey", "covariance", ".fits", AS_CSV),
     value("survey", "noise", "percival", "choose another noise model"),
-    key(
-        "bin",
-        "nodes",
-        "remove it, and give `redshift`, the pair-weighted mean",
-    ),
+    key("bin", "nodes", "remove it, and give `redshift`, the pair-weighted mean"),
     key(
         "tracer",
         "observed_density_slope",
@@ -79,9 +49,7 @@ pub(crate) const UNSUPPORTED: &[Unsupported] = &[
 
 /// The entry for a key as such.
 pub(crate) fn unsupported_key(section: &str, key: &str) -> Option<&'static Unsupported> {
-    UNSUPPORTED
-        .iter()
-        .find(|entry| entry.section == section && entry.key == key && entry.value.is_none())
+    UNSUPPORTED.iter().find(|entry| entry.section == section && entry.key == key && entry.value.is_none())
 }
 
 /// The entry for a value, or for a file's extension, of a key.

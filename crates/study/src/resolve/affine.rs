@@ -15,18 +15,12 @@ pub struct AffineForm {
 impl AffineForm {
     /// A number.
     pub fn held(value: f64) -> Self {
-        Self {
-            constant: value,
-            terms: Vec::new(),
-        }
+        Self { constant: value, terms: Vec::new() }
     }
 
     /// A free parameter.
     pub fn free(parameter: usize) -> Self {
-        Self {
-            constant: 0.0,
-            terms: vec![(parameter, 1.0)],
-        }
+        Self { constant: 0.0, terms: vec![(parameter, 1.0)] }
     }
 
     /// Whether no parameter moves it.
@@ -38,17 +32,12 @@ impl AffineForm {
     pub fn value(&self, theta: &[f64]) -> f64 {
         self.terms
             .iter()
-            .fold(self.constant, |sum, (parameter, coefficient)| {
-                sum + coefficient * theta[*parameter]
-            })
+            .fold(self.constant, |sum, (parameter, coefficient)| sum + coefficient * theta[*parameter])
     }
 
     /// How fast it moves with one parameter.
     pub fn coefficient(&self, parameter: usize) -> f64 {
-        self.terms
-            .iter()
-            .find(|(index, _)| *index == parameter)
-            .map_or(0.0, |(_, coefficient)| *coefficient)
+        self.terms.iter().find(|(index, _)| *index == parameter).map_or(0.0, |(_, coefficient)| *coefficient)
     }
 
     /// Adds `by` times another form.

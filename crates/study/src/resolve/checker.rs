@@ -13,29 +13,17 @@ pub(super) struct Checker<'a> {
 
 impl<'a> Checker<'a> {
     pub(super) fn new(file: &'a StudyFile, overrides: &'a [Override]) -> Self {
-        Self {
-            file: file.source.name(),
-            overrides,
-            problems: Vec::new(),
-        }
+        Self { file: file.source.name(), overrides, problems: Vec::new() }
     }
 
     /// Records a broken rule; `name` is the quantity it is about, or a key.
     pub(super) fn fault(&mut self, origin: Origin, name: &str, fault: Fault) {
         let file = self.file.to_owned();
         let location = match origin {
-            Origin::Written(place) => Location::File {
-                file,
-                line: place.line,
-                column: place.column,
-            },
+            Origin::Written(place) => Location::File { file, line: place.line, column: place.column },
             Origin::Default => Location::WholeFile { file },
             Origin::Set => {
-                let option = self
-                    .overrides
-                    .iter()
-                    .rev()
-                    .find(|each| name_covers(&each.name, name));
+                let option = self.overrides.iter().rev().find(|each| name_covers(&each.name, name));
                 Location::Option {
                     option: option.map_or_else(|| "--set".to_owned(), |each| each.option.clone()),
                 }

@@ -13,19 +13,12 @@ pub(super) fn entries(file: &StudyFile, section: &HypothesisSection, overrides: 
     let shape = section.departure.value;
     let suffixes: Vec<String> = match shape.spread() {
         Spread::Shared => vec![String::new()],
-        Spread::PerSurvey => file
-            .surveys
-            .iter()
-            .map(|survey| format!(".{}", survey.name.value))
-            .collect(),
+        Spread::PerSurvey => file.surveys.iter().map(|survey| format!(".{}", survey.name.value)).collect(),
         Spread::PerBin => file
             .surveys
             .iter()
             .flat_map(|survey| {
-                survey
-                    .bins
-                    .iter()
-                    .map(|bin| format!(".{}.{}", survey.name.value, bin.name.value))
+                survey.bins.iter().map(|bin| format!(".{}.{}", survey.name.value, bin.name.value))
             })
             .collect(),
     };
@@ -37,12 +30,7 @@ pub(super) fn entries(file: &StudyFile, section: &HypothesisSection, overrides: 
     };
     suffixes
         .iter()
-        .flat_map(|suffix| {
-            section
-                .parameters
-                .iter()
-                .map(move |(key, given)| entry(suffix, key, given))
-        })
+        .flat_map(|suffix| section.parameters.iter().map(move |(key, given)| entry(suffix, key, given)))
         .collect()
 }
 
@@ -64,10 +52,7 @@ pub(super) fn check(
 ) {
     check_growth(file, section, hypothesis, checker);
     let shape = hypothesis.shape;
-    for (_, name, needed) in NEEDED_BACKGROUND
-        .iter()
-        .filter(|(name, ..)| *name == shape.name())
-    {
+    for (_, name, needed) in NEEDED_BACKGROUND.iter().filter(|(name, ..)| *name == shape.name()) {
         let Some(quantity) = hypothesis.quantity(name) else {
             continue;
         };
@@ -104,10 +89,7 @@ fn check_growth(
     let rates = file.surveys.iter().flat_map(|survey| {
         survey.bins.iter().filter_map(|bin| {
             let given = bin.growth_rate.as_ref()?;
-            Some((
-                format!("{}.{}.growth_rate", survey.name.value, bin.name.value),
-                given.origin,
-            ))
+            Some((format!("{}.{}.growth_rate", survey.name.value, bin.name.value), given.origin))
         })
     });
     for (key, _) in index.into_iter().chain(rates) {
@@ -119,11 +101,7 @@ fn check_growth(
         checker.fault(
             origin,
             "felt_by",
-            Fault::GrowthGiven {
-                key,
-                hypothesis: hypothesis.name.clone(),
-                felt_by,
-            },
+            Fault::GrowthGiven { key, hypothesis: hypothesis.name.clone(), felt_by },
         );
     }
 }
@@ -131,19 +109,11 @@ fn check_growth(
 /// Lets the shape judge its held parameters, with the centre of the prior in place of those that are inferred.
 fn check_values(shape: Shape, hypothesis: &Hypothesis, checker: &mut Checker<'_>) {
     let start = hypothesis.start();
-    let own: Vec<_> = hypothesis
-        .quantities
-        .iter()
-        .filter(|quantity| quantity.name.starts_with("departure."))
-        .collect();
+    let own: Vec<_> =
+        hypothesis.quantities.iter().filter(|quantity| quantity.name.starts_with("departure.")).collect();
     for set in own.chunks(shape.parameters().len().max(1)) {
         let values: Vec<f64> = set.iter().map(|quantity| quantity.form.value(&start)).collect();
-        let Err(ModelError::Departure {
-            parameter,
-            value,
-            rule,
-        }) = shape.check(&values)
-        else {
+        let Err(ModelError::Departure { parameter, value, rule }) = shape.check(&values) else {
             continue;
         };
         let guilty = shape.parameters().iter().position(|each| each.name == parameter);
@@ -152,11 +122,7 @@ fn check_values(shape: Shape, hypothesis: &Hypothesis, checker: &mut Checker<'_>
         };
         if quantity.form.is_held() {
             let name = quantity.name.clone();
-            checker.fault(
-                quantity.given.origin,
-                &quantity.name,
-                Fault::DepartureValue { name, value, rule },
-            );
+            checker.fault(quantity.given.origin, &quantity.name, Fault::DepartureValue { name, value, rule });
         }
     }
 }

@@ -105,9 +105,7 @@ impl Hypothesis {
 
     /// The indices of the departure's free parameters: what the stop rule watches.
     pub fn watched(&self) -> Vec<usize> {
-        (0..self.free.len())
-            .filter(|index| self.free[*index].name.starts_with("departure."))
-            .collect()
+        (0..self.free.len()).filter(|index| self.free[*index].name.starts_with("departure.")).collect()
     }
 
     /// A point to start from: the number beside a joint prior, else the prior's mean, or its median where there is no mean.
@@ -117,9 +115,7 @@ impl Hypothesis {
             .map(|parameter| match &parameter.prior {
                 FreePrior::Joint { start, .. } => *start,
                 FreePrior::Own(spec) => spec.build().map_or(0.0, |prior| {
-                    Some(prior.mean())
-                        .filter(|mean| mean.is_finite())
-                        .unwrap_or_else(|| prior.median())
+                    Some(prior.mean()).filter(|mean| mean.is_finite()).unwrap_or_else(|| prior.median())
                 }),
             })
             .collect()

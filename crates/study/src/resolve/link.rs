@@ -35,11 +35,9 @@ pub(super) fn link(
     let mut parameter_of: Vec<Option<usize>> = vec![None; entries.len()];
     for (index, entry) in entries.iter().enumerate() {
         let prior = match (&entry.given.value, members[index]) {
-            (Quantity::Held(start), Some((block, position))) => Some(FreePrior::Joint {
-                block,
-                position,
-                start: *start,
-            }),
+            (Quantity::Held(start), Some((block, position))) => {
+                Some(FreePrior::Joint { block, position, start: *start })
+            }
             (Quantity::Prior(spec), _) => Some(FreePrior::Own(spec.clone())),
             _ => None,
         };
@@ -47,12 +45,7 @@ pub(super) fn link(
             (Some(prior), ..) => {
                 let (name, origin) = (entry.name.clone(), entry.given.origin);
                 parameter_of[index] = Some(free.len());
-                free.push(FreeParameter {
-                    name,
-                    prior,
-                    origin,
-                    quantity: index,
-                });
+                free.push(FreeParameter { name, prior, origin, quantity: index });
                 State::Free(free.len() - 1)
             }
             (None, Some(source), _) => State::Tied(source),
@@ -66,18 +59,11 @@ pub(super) fn link(
         // Positions in `of` that this hypothesis has, with their parameters.
         let present: Vec<(usize, usize)> = (0..section.of.value.len())
             .filter_map(|position| {
-                let entry = members
-                    .iter()
-                    .position(|member| *member == Some((number, position)))?;
+                let entry = members.iter().position(|member| *member == Some((number, position)))?;
                 Some((position, parameter_of[entry]?))
             })
             .collect();
-        let pick = |row: &[f64]| {
-            present
-                .iter()
-                .map(|(position, _)| row[*position])
-                .collect::<Vec<f64>>()
-        };
+        let pick = |row: &[f64]| present.iter().map(|(position, _)| row[*position]).collect::<Vec<f64>>();
         let block = JointBlock {
             of: present.iter().map(|(_, parameter)| *parameter).collect(),
             mean: pick(&section.mean.value),
@@ -88,12 +74,7 @@ pub(super) fn link(
             origin: section.of.origin,
         };
         for (position, parameter) in block.of.iter().enumerate() {
-            if let FreePrior::Joint {
-                block: number,
-                position: place,
-                ..
-            } = &mut free[*parameter].prior
-            {
+            if let FreePrior::Joint { block: number, position: place, .. } = &mut free[*parameter].prior {
                 (*number, *place) = (joint.len(), position);
             }
         }
@@ -108,34 +89,13 @@ pub(super) fn link(
         .zip(forms)
         .enumerate()
         .map(|(index, ((Entry { name, given }, state), form))| {
-            let moves = moves
-                .iter()
-                .filter(|each| each.quantity == index)
-                .cloned()
-                .collect();
-            ResolvedQuantity {
-                name,
-                given,
-                state,
-                moves,
-                form,
-            }
+            let moves = moves.iter().filter(|each| each.quantity == index).cloned().collect();
+            ResolvedQuantity { name, given, state, moves, form }
         })
         .collect();
     let shape = section.departure.value;
-    let felt_by = if shape.parameters().is_empty() {
-        FeltBy::Light
-    } else {
-        section.felt_by.value
-    };
-    Some(Hypothesis {
-        name: section.name.value.clone(),
-        shape,
-        felt_by,
-        quantities,
-        free,
-        joint,
-    })
+    let felt_by = if shape.parameters().is_empty() { FeltBy::Light } else { section.felt_by.value };
+    Some(Hypothesis { name: section.name.value.clone(), shape, felt_by, quantities, free, joint })
 }
 
 /// The index of the quantity that each tied one follows directly.
@@ -160,16 +120,8 @@ fn sources(entries: &[Entry], checker: &mut Checker<'_>) -> Vec<Option<usize>> {
         let mut chain = vec![start];
         while let Some(next) = sources[chain[chain.len() - 1]] {
             if next == start && chain.iter().all(|member| *member >= start) {
-                let chain = chain
-                    .iter()
-                    .chain([&start])
-                    .map(|index| entries[*index].name.clone())
-                    .collect();
-                checker.fault(
-                    entries[start].given.origin,
-                    &entries[start].name,
-                    Fault::Circle { chain },
-                );
+                let chain = chain.iter().chain([&start]).map(|index| entries[*index].name.clone()).collect();
+                checker.fault(entries[start].given.origin, &entries[start].name, Fault::Circle { chain });
             }
             if chain.contains(&next) {
                 break;
@@ -196,25 +148,18 @@ fn joint_members(
                 None => {
                     let known = entries.iter().map(|entry| &entry.name).chain(departures);
                     let nearest = Nearest::find(&name, known);
-                    Fault::UnknownQuantity {
-                        subject: "this [[joint_prior]]".to_owned(),
-                        name,
-                        nearest,
-                    }
+                    Fault::UnknownQuantity { subject: "this [[joint_prior]]".to_owned(), name, nearest }
                 }
                 Some(index) => match (&entries[index].given.value, members[index]) {
-                    (_, Some((other, _))) => Fault::TwoPriorsJoint {
-                        name,
-                        first: joint_priors[other].of.origin.to_string(),
-                    },
-                    (Quantity::Prior(_), None) => Fault::TwoPriorsJoint {
-                        name,
-                        first: entries[index].given.origin.to_string(),
-                    },
-                    (Quantity::SameAs(source), None) => Fault::JointTied {
-                        name,
-                        source_name: source.clone(),
-                    },
+                    (_, Some((other, _))) => {
+                        Fault::TwoPriorsJoint { name, first: joint_priors[other].of.origin.to_string() }
+                    }
+                    (Quantity::Prior(_), None) => {
+                        Fault::TwoPriorsJoint { name, first: entries[index].given.origin.to_string() }
+                    }
+                    (Quantity::SameAs(source), None) => {
+                        Fault::JointTied { name, source_name: source.clone() }
+                    }
                     (Quantity::Held(_), None) => {
                         members[index] = Some((number, position));
                         continue;

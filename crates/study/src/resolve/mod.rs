@@ -19,7 +19,7 @@ pub use systematics::Move;
 
 use crate::error::{Location, Problem, StudyError};
 use crate::fault::Fault;
-use crate::file::{Located, Override, Quantity, QuantityPlace, StudyFile};
+use crate::file::{HypothesisSection, Located, Override, Quantity, QuantityPlace, StudyFile};
 use crate::nearest::Nearest;
 use checker::{Checker, name_covers};
 
@@ -37,6 +37,7 @@ pub struct Study {
     pub file: StudyFile,
     /// Every hypothesis, in the order of the file; at least one.
     pub hypotheses: Vec<Hypothesis>,
+    default: usize,
     overrides: Vec<Override>,
 }
 
@@ -56,18 +57,15 @@ impl Study {
     /// systematics that lead nowhere, two priors of one quantity, departures that the rest of the study excludes, an
     /// override of a quantity that no hypothesis has.
     pub fn resolve(mut file: StudyFile, overrides: &[Override]) -> Result<Self, StudyError> {
-        let elsewhere: Vec<&Override> = overrides
-            .iter()
-            .filter(|each| !file.set(&each.name, &each.quantity))
-            .collect();
+        // Before the overrides: `--set departure.tau=0.5` shall not send the user to another hypothesis.
+        let default = file.hypotheses.iter().position(|section| infers(&file, section)).unwrap_or(0);
+        let elsewhere: Vec<&Override> =
+            overrides.iter().filter(|each| !file.set(&each.name, &each.quantity)).collect();
         let entries: Vec<Entry> = file
             .places()
             .into_iter()
             .filter_map(|(name, place)| match place {
-                QuantityPlace::Given(given) => Some(Entry {
-                    name,
-                    given: given.clone(),
-                }),
+                QuantityPlace::Given(given) => Some(Entry { name, given: given.clone() }),
                 QuantityPlace::Optional(given) => given.clone().map(|given| Entry { name, given }),
             })
             .collect();
@@ -79,21 +77,14 @@ impl Study {
             // Dotted names may be ambiguous, and what follows looks them up.
             return StudyError::unless_none(checker.problems, None);
         }
-        let own: Vec<Vec<Entry>> = file
-            .hypotheses
-            .iter()
-            .map(|section| departure::entries(&file, section, overrides))
-            .collect();
+        let own: Vec<Vec<Entry>> =
+            file.hypotheses.iter().map(|section| departure::entries(&file, section, overrides)).collect();
         let departures: Vec<String> = own.iter().flatten().map(|entry| entry.name.clone()).collect();
         for each in elsewhere {
             if !departures.iter().any(|name| name_covers(&each.name, name)) {
                 let known = entries.iter().map(|entry| &entry.name).chain(&departures);
                 let (name, nearest) = (each.name.clone(), Nearest::find(&each.name, known));
-                let fault = Fault::UnknownQuantity {
-                    subject: "`--set`".to_owned(),
-                    name,
-                    nearest,
-                };
+                let fault = Fault::UnknownQuantity { subject: "`--set`".to_owned(), name, nearest };
                 checker.fault(crate::file::Origin::Set, &each.name, fault);
             }
         }
@@ -101,14 +92,7 @@ impl Study {
         let mut hypotheses = Vec::new();
         for (section, own) in file.hypotheses.iter().zip(own) {
             let all = entries.iter().cloned().chain(own).collect();
-            let linked = link::link(
-                section,
-                all,
-                &moves,
-                &file.joint_priors,
-                &departures,
-                &mut checker,
-            );
+            let linked = link::link(section, all, &moves, &file.joint_priors, &departures, &mut checker);
             if let Some(hypothesis) = linked {
                 departure::check(&file, section, &hypothesis, &mut checker);
                 hypotheses.push(hypothesis);
@@ -116,22 +100,13 @@ impl Study {
         }
         check_units(&file, &hypotheses, &mut checker);
         let problems = checker.problems;
-        StudyError::unless_none(
-            problems,
-            Some(Self {
-                file,
-                hypotheses,
-                overrides: overrides.to_vec(),
-            }),
-        )
+        let overrides = overrides.to_vec();
+        StudyError::unless_none(problems, Some(Self { file, hypotheses, default, overrides }))
     }
 
-    /// The hypothesis that `fit` takes without being told: the first with an inferred departure, else the first.
+    /// The hypothesis that `fit` takes without being told: the first whose departure the file infers, else the first.
     pub fn default_hypothesis(&self) -> &Hypothesis {
-        self.hypotheses
-            .iter()
-            .find(|hypothesis| !hypothesis.watched().is_empty())
-            .unwrap_or(&self.hypotheses[0])
+        &self.hypotheses[self.default]
     }
 
     /// The hypothesis of that name; without a name, [`Study::default_hypothesis`].
@@ -160,9 +135,7 @@ impl Study {
             .iter()
             .filter(|each| !names().any(|name| name_covers(&each.name, name)))
             .map(|each| Problem {
-                location: Location::Option {
-                    option: each.option.clone(),
-                },
+                location: Location::Option { option: each.option.clone() },
                 fault: Fault::SetElsewhere {
                     hypothesis: chosen.name.clone(),
                     name: each.name.clone(),
@@ -174,21 +147,24 @@ impl Study {
     }
 }
 
+/// Whether a departure has a prior, its own or a joint one.
+fn infers(file: &StudyFile, section: &HypothesisSection) -> bool {
+    section.parameters.iter().any(|(key, given)| {
+        let name = format!("departure.{key}");
+        matches!(given.value, Quantity::Prior(_))
+            || file.joint_priors.iter().flat_map(|joint| &joint.of.value).any(|of| name_covers(&name, of))
+    })
+}
+
 /// Lengths in Mpc are converted once, so h must be known.
 fn check_units(file: &StudyFile, hypotheses: &[Hypothesis], checker: &mut Checker<'_>) {
     let inferred = hypotheses
         .iter()
         .filter_map(|hypothesis| hypothesis.quantity("background.h"))
         .any(|h| !h.form.is_held());
-    for survey in file
-        .surveys
-        .iter()
-        .filter(|survey| survey.unit.value == LengthUnit::Megaparsec)
-    {
+    for survey in file.surveys.iter().filter(|survey| survey.unit.value == LengthUnit::Megaparsec) {
         if inferred {
-            let fault = Fault::UnitNeedsHeldH {
-                survey: survey.name.value.clone(),
-            };
+            let fault = Fault::UnitNeedsHeldH { survey: survey.name.value.clone() };
             checker.fault(survey.unit.origin, "unit", fault);
         }
     }

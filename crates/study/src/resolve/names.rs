@@ -1,4 +1,4 @@
-//! Rules for names and for what a study must have at least one of.
+//! Rules for names.
 
 use super::checker::Checker;
 use crate::fault::Fault;
@@ -9,14 +9,9 @@ const NOT_A_SURVEY: [&str; 5] = ["background", "prediction", "systematic", "depa
 /// `--hypothesis all` means every one.
 const NOT_A_HYPOTHESIS: [&str; 1] = ["all"];
 
-/// Checks every name of the study and that no section is empty.
+/// Checks every name of the study, and that every survey has bins.
 pub(super) fn check(file: &StudyFile, checker: &mut Checker<'_>) {
-    check_names(
-        checker,
-        "survey",
-        file.surveys.iter().map(|each| &each.name),
-        &NOT_A_SURVEY,
-    );
+    check_names(checker, "survey", file.surveys.iter().map(|each| &each.name), &NOT_A_SURVEY);
     for survey in &file.surveys {
         check_names(checker, "bin", survey.bins.iter().map(|bin| &bin.name), &[]);
         if survey.bins.is_empty() {
@@ -28,39 +23,8 @@ pub(super) fn check(file: &StudyFile, checker: &mut Checker<'_>) {
             checker.fault(survey.name.origin, "name", fault);
         }
     }
-    check_names(
-        checker,
-        "systematic",
-        file.systematics.iter().map(|each| &each.name),
-        &[],
-    );
-    check_names(
-        checker,
-        "hypothesis",
-        file.hypotheses.iter().map(|each| &each.name),
-        &NOT_A_HYPOTHESIS,
-    );
-    for (empty, part, example) in [
-        (
-            file.surveys.is_empty(),
-            "survey",
-            "a [[survey]] with its [[survey.bin]]",
-        ),
-        (
-            file.hypotheses.is_empty(),
-            "hypothesis",
-            "a [[hypothesis]], such as one with `departure = \"none\"`",
-        ),
-    ] {
-        if empty {
-            let fault = Fault::Empty {
-                section: "the study file".to_owned(),
-                part,
-                example,
-            };
-            checker.fault(crate::file::Origin::Default, part, fault);
-        }
-    }
+    check_names(checker, "systematic", file.systematics.iter().map(|each| &each.name), &[]);
+    check_names(checker, "hypothesis", file.hypotheses.iter().map(|each| &each.name), &NOT_A_HYPOTHESIS);
 }
 
 fn check_names<'a>(
@@ -78,15 +42,8 @@ fn check_names<'a>(
         } else if reserved.contains(&name.as_str()) {
             Some(Fault::ReservedName { what, name })
         } else {
-            let first = seen
-                .iter()
-                .find(|other| other.value == name)
-                .and_then(|other| other.origin.line());
-            first.map(|first_line| Fault::DuplicateName {
-                what,
-                name,
-                first_line,
-            })
+            let first = seen.iter().find(|other| other.value == name).and_then(|other| other.origin.line());
+            first.map(|first_line| Fault::DuplicateName { what, name, first_line })
         };
         if let Some(fault) = fault {
             checker.fault(located.origin, "name", fault);

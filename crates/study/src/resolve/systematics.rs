@@ -32,11 +32,7 @@ pub(super) fn moves(file: &StudyFile, entries: &[Entry], checker: &mut Checker<'
             match targets(name, entry, entries) {
                 Ok(targets) => {
                     let by = entry.by.value;
-                    moves.extend(targets.into_iter().map(|quantity| Move {
-                        quantity,
-                        amplitude,
-                        by,
-                    }));
+                    moves.extend(targets.into_iter().map(|quantity| Move { quantity, amplitude, by }));
                 }
                 Err(fault) => checker.fault(entry.quantity.origin, "quantity", fault),
             }
@@ -61,11 +57,7 @@ fn targets(systematic: &str, entry: &MoveEntry, entries: &[Entry]) -> Result<Vec
             Quantity::SameAs(_) if pattern.contains('*') => {}
             Quantity::SameAs(source) => {
                 let (quantity, source_name) = (entry.name.clone(), source.clone());
-                return Err(Fault::MovesTied {
-                    systematic,
-                    quantity,
-                    source_name,
-                });
+                return Err(Fault::MovesTied { systematic, quantity, source_name });
             }
             Quantity::Held(_) | Quantity::Prior(_) => targets.push(index),
         }
@@ -82,11 +74,7 @@ fn targets(systematic: &str, entry: &MoveEntry, entries: &[Entry]) -> Result<Vec
             }
         }
         let nearest = Nearest::find(&pattern, known);
-        return Err(Fault::MovesNothing {
-            systematic,
-            pattern,
-            nearest,
-        });
+        return Err(Fault::MovesNothing { systematic, pattern, nearest });
     }
     Ok(targets)
 }
@@ -95,9 +83,7 @@ fn targets(systematic: &str, entry: &MoveEntry, entries: &[Entry]) -> Result<Vec
 fn matches(pattern: &str, name: &str) -> bool {
     let (pattern, name) = (pattern.split('.'), name.split('.'));
     pattern.clone().count() == name.clone().count()
-        && pattern
-            .zip(name)
-            .all(|(wanted, part)| wanted == "*" || wanted == part)
+        && pattern.zip(name).all(|(wanted, part)| wanted == "*" || wanted == part)
 }
 
 /// The name with a star wherever the pattern has one, for a suggestion in the pattern's own style.
@@ -107,11 +93,8 @@ fn with_stars(pattern: &str, name: &str) -> String {
     if parts.len() != wanted.len() {
         return name.to_owned();
     }
-    let starred: Vec<&str> = parts
-        .iter()
-        .zip(&wanted)
-        .map(|(part, wanted)| if *wanted == "*" { "*" } else { part })
-        .collect();
+    let starred: Vec<&str> =
+        parts.iter().zip(&wanted).map(|(part, wanted)| if *wanted == "*" { "*" } else { part }).collect();
     starred.join(".")
 }
 
@@ -121,32 +104,17 @@ mod tests {
 
     #[test]
     fn a_star_is_one_part_and_no_more() {
-        assert!(matches(
-            "larkfield.*.first.evolution",
-            "larkfield.near.first.evolution"
-        ));
+        assert!(matches("larkfield.*.first.evolution", "larkfield.near.first.evolution"));
         assert!(matches("*.*.first.evolution", "northmoor.far.first.evolution"));
-        assert!(!matches(
-            "larkfield.*.evolution",
-            "larkfield.near.first.evolution"
-        ));
-        assert!(!matches(
-            "larkfield.*.first.evolution",
-            "larkfield.near.second.evolution"
-        ));
-        assert!(!matches(
-            "lark*.near.first.evolution",
-            "larkfield.near.first.evolution"
-        ));
+        assert!(!matches("larkfield.*.evolution", "larkfield.near.first.evolution"));
+        assert!(!matches("larkfield.*.first.evolution", "larkfield.near.second.evolution"));
+        assert!(!matches("lark*.near.first.evolution", "larkfield.near.first.evolution"));
         assert!(!matches("*", "background.h"));
     }
 
     #[test]
     fn suggestions_keep_the_stars() {
-        assert_eq!(
-            with_stars("a.*.first.evolutoin", "a.near.first.evolution"),
-            "a.*.first.evolution"
-        );
+        assert_eq!(with_stars("a.*.first.evolutoin", "a.near.first.evolution"), "a.*.first.evolution");
         assert_eq!(with_stars("a.*", "a.near.offset"), "a.near.offset");
     }
 }

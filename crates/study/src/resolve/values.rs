@@ -16,19 +16,13 @@ struct Rule {
 }
 
 const fn above_zero(way_out: &'static str) -> Rule {
-    Rule {
-        holds: |value| value > 0.0,
-        rule: "above 0",
-        way_out,
-    }
+    Rule { holds: |value| value > 0.0, rule: "above 0", way_out }
 }
 
 /// The rule of a quantity's dotted name; most may be any finite number.
 fn rule_of(name: &str) -> Option<Rule> {
     match name {
-        "background.omega_m" => Some(above_zero(
-            "a universe without matter has no structure, as in 0.31",
-        )),
+        "background.omega_m" => Some(above_zero("a universe without matter has no structure, as in 0.31")),
         "background.omega_b" => Some(above_zero("the transfer function needs baryons, as in 0.049")),
         "background.h" => Some(Rule {
             holds: |value| value > 0.0 && value < 10.0,
@@ -54,20 +48,12 @@ pub(super) fn check_quantities(entries: &[Entry], checker: &mut Checker<'_>) {
             Quantity::Held(value) => {
                 let broken = rule_of(&name).filter(|rule| !(rule.holds)(*value));
                 if let Some(Rule { rule, way_out, .. }) = broken {
-                    let fault = Fault::OutOfRange {
-                        name,
-                        rule,
-                        value: format!("{value:?}"),
-                        way_out,
-                    };
+                    let fault = Fault::OutOfRange { name, rule, value: format!("{value:?}"), way_out };
                     checker.fault(entry.given.origin, &entry.name, fault);
                 }
             }
             given if name == "prediction.clock_distance" => {
-                let fault = Fault::MustBeHeld {
-                    name,
-                    found: given.to_string(),
-                };
+                let fault = Fault::MustBeHeld { name, found: given.to_string() };
                 checker.fault(entry.given.origin, &entry.name, fault);
             }
             _ => {}
@@ -85,11 +71,7 @@ pub(super) fn check_quantities(entries: &[Entry], checker: &mut Checker<'_>) {
         && omega_m > 0.0
         && omega_b >= omega_m
     {
-        checker.fault(
-            origin,
-            "background.omega_b",
-            Fault::BaryonsExceedMatter { omega_b, omega_m },
-        );
+        checker.fault(origin, "background.omega_b", Fault::BaryonsExceedMatter { omega_b, omega_m });
     }
 }
 
@@ -109,33 +91,20 @@ pub(super) fn check_surveys(file: &StudyFile, checker: &mut Checker<'_>) {
                 needs_other("covariance_rows", "covariance", way_out),
             );
         }
-        let needs_mocks = noise_families()
-            .iter()
-            .any(|family| family.name == survey.noise.value && family.needs_mocks);
+        let needs_mocks =
+            noise_families().iter().any(|family| family.name == survey.noise.value && family.needs_mocks);
         if needs_mocks && survey.mock_count.is_none() {
             let way_out =
                 "say how many mocks the covariance was estimated from, or choose `noise = \"gaussian\"`";
             let key = format!("noise = \"{}\"", survey.noise.value);
-            checker.fault(
-                survey.noise.origin,
-                "noise",
-                needs_other(&key, "mock_count", way_out),
-            );
+            checker.fault(survey.noise.origin, "noise", needs_other(&key, "mock_count", way_out));
         }
         for keep in &survey.keep {
             let Some(bins) = &keep.bins else { continue };
             let known = || survey.bins.iter().map(|bin| bin.name.value.as_str());
-            for name in bins
-                .value
-                .iter()
-                .filter(|name| known().all(|bin| bin != name.as_str()))
-            {
+            for name in bins.value.iter().filter(|name| known().all(|bin| bin != name.as_str())) {
                 let nearest = Nearest::find(name, known());
-                let fault = Fault::UnknownChoice {
-                    what: "bin in `keep`:",
-                    value: name.clone(),
-                    nearest,
-                };
+                let fault = Fault::UnknownChoice { what: "bin", value: name.clone(), nearest };
                 checker.fault(bins.origin, "bins", fault);
             }
         }
@@ -149,16 +118,7 @@ pub(super) fn check_surveys(file: &StudyFile, checker: &mut Checker<'_>) {
             };
             let value = format!("{:?}", range.value.0);
             let (name, rule, way_out) = (name.to_owned(), "0 or above at its low end", "raise its low end");
-            checker.fault(
-                range.origin,
-                &name.clone(),
-                Fault::OutOfRange {
-                    name,
-                    rule,
-                    value,
-                    way_out,
-                },
-            );
+            checker.fault(range.origin, &name.clone(), Fault::OutOfRange { name, rule, value, way_out });
         }
         for bin in &survey.bins {
             let path = format!("{}.{}", survey.name.value, bin.name.value);
