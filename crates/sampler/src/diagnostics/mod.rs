@@ -10,6 +10,7 @@ mod ess;
 mod quantiles;
 mod ranks;
 mod rhat;
+mod tails;
 
 pub use autocorrelation::{AutocorrelationTime, autocovariance, integrated_autocorrelation_time};
 pub use ensembles::{ParameterDiagnostics, diagnose_ensembles};
@@ -17,3 +18,4 @@ pub(crate) use ensembles::{Shape, split_walkers_rhat};
 pub use ess::{ess_bulk, ess_mean, ess_quantile, ess_tail, mcse_mean};
 pub use quantiles::{central_interval, median, quantile, quantile_of_sorted};
 pub use rhat::{rank_normalised_split_rhat, split_rhat};
+pub use tails::{Tail, TailSource, tail_of, tail_of_distance};

@@ -5,6 +5,8 @@
 //! To add a move: one file with one type that implements [`Move`], and one line in [`move_families`].
 
 mod differential_evolution;
+#[cfg(test)]
+mod invariance;
 mod snooker;
 mod stretch;
 

@@ -52,14 +52,24 @@ pub enum PriorError {
         "{family} prior: low must be below high, got [{low}, {high}]; swap them, or give a plain number to hold the quantity"
     )]
     InvertedBounds {
-        /// Family key, or `within`.
+        /// Family key.
         family: &'static str,
         /// Lower bound.
         low: f64,
         /// Upper bound.
         high: f64,
     },
-    /// The window of `within` is NaN or holds (almost) none of the prior's mass.
+    /// The window of `within` is NaN or upside down.
+    #[error("{family} prior: within must have low below high, got [{low}, {high}]; swap them")]
+    InvertedWindow {
+        /// Family key of the truncated prior.
+        family: &'static str,
+        /// Lower end of the window.
+        low: f64,
+        /// Upper end of the window.
+        high: f64,
+    },
+    /// The window of `within` holds (almost) none of the prior's mass.
     #[error("{family} prior: within = [{low}, {high}] leaves it no probability (its mass there is {mass:e}, its support [{}, {}]); widen the window or move the prior", support.0, support.1)]
     EmptyWindow {
         /// Family key of the truncated prior.

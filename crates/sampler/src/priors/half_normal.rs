@@ -46,7 +46,7 @@ impl Prior for HalfNormal {
         if x >= 0.0 { self.constant - 0.5 * z * z } else { f64::NEG_INFINITY }
     }
     fn cdf(&self, x: f64) -> f64 {
-        if x <= 0.0 { 0.0 } else { statrs::function::erf::erf(x / self.sd * std::f64::consts::FRAC_1_SQRT_2) }
+        if x <= 0.0 { 0.0 } else { libm::erf(x / self.sd * std::f64::consts::FRAC_1_SQRT_2) }
     }
     fn survival(&self, x: f64) -> f64 {
         if x <= 0.0 { 1.0 } else { 2.0 * normal_cdf(-x / self.sd) }

@@ -1,6 +1,7 @@
 //! Normal probabilities and the inversion of distribution functions, accurate in both tails.
 
-use statrs::function::erf::{erfc, erfc_inv};
+use libm::erfc;
+use statrs::function::erf::erfc_inv;
 use std::f64::consts::{FRAC_1_SQRT_2, SQRT_2};
 
 /// ln √(2π).

@@ -6,8 +6,8 @@ use super::{Prior, PriorError, PriorShape, SharedPrior};
 ///
 /// The mass comes from whichever tail keeps its digits; for a window so narrow that the difference of two
 /// probabilities would lose them (below a thousandth of either), from 20-point Gauss–Legendre quadrature of the density.
-/// Mean and standard deviation by the same quadrature on panels between quantiles: to a relative 1e-9 for a window with
-/// finite ends, or with an infinite one where the untruncated prior has moments of third order.
+/// Mean and standard deviation by the same rule over probability, on panels of a decade: to a relative 1e-9 for a window
+/// with finite ends, or with an infinite one where the untruncated prior has moments of third order.
 #[derive(Debug, Clone)]
 pub struct Truncated {
     prior: SharedPrior,
@@ -23,11 +23,11 @@ impl Truncated {
     /// Cuts `prior` to [low, high]; an end may be infinite.
     ///
     /// # Errors
-    /// [`PriorError::InvertedBounds`] for [1, 0]; [`PriorError::EmptyWindow`] where less than 1e-280 of the mass remains,
+    /// [`PriorError::InvertedWindow`] for [1, 0]; [`PriorError::EmptyWindow`] where less than 1e-280 of the mass remains,
     /// as for a standard normal within [40, 50].
     pub fn new(prior: SharedPrior, low: f64, high: f64) -> Result<Self, PriorError> {
         if low.is_nan() || high.is_nan() || low >= high {
-            return Err(PriorError::InvertedBounds { family: "within", low, high });
+            return Err(PriorError::InvertedWindow { family: prior.family(), low, high });
         }
         let support = prior.support();
         let (from, to) = (low.max(support.0), high.min(support.1));
@@ -58,28 +58,21 @@ impl Truncated {
         if (low.is_infinite() || high.is_infinite()) && untruncated_sd.is_infinite() {
             return (f64::NAN, f64::INFINITY);
         }
-        let mut edges = vec![];
-        let steps: Vec<f64> = (1..=30).map(|k| 10f64.powi(-2 * k)).collect();
-        edges.push(low);
-        edges.extend(steps.iter().rev().map(|p| self.quantile(*p)));
-        edges.extend([0.03, 0.1, 0.2, 0.3, 0.4, 0.5].iter().map(|p| self.quantile(*p)));
-        edges.extend([0.4, 0.3, 0.2, 0.1, 0.03].iter().map(|q| self.upper_quantile(*q)));
-        edges.extend(steps.iter().map(|q| self.upper_quantile(*q)));
-        edges.push(high);
-        edges.retain(|edge| edge.is_finite());
+        // Over probability instead of x: a power-law tail, or a singular end, is a smooth power on panels of one decade.
         let centre = self.median();
-        let (mut zeroth, mut first, mut second) = (0.0, 0.0, 0.0);
-        for panel in edges.windows(2).filter(|panel| panel[1] > panel[0]) {
-            legendre_panel(panel[0], panel[1], |x, weight| {
-                let density = weight * (self.prior.log_density(x) - self.ln_mass).exp();
-                zeroth += density;
-                first += density * (x - centre);
-                second += density * (x - centre) * (x - centre);
+        let (mut first, mut second) = (0.0, 0.0);
+        let mut panel = |from: f64, to: f64| {
+            legendre_panel(from, to, |p, weight| {
+                for x in [self.quantile(p) - centre, self.upper_quantile(p) - centre] {
+                    first += weight * x;
+                    second += weight * x * x;
+                }
             });
-        }
-        // Dividing by the same quadrature's own norm cancels what an end panel with a singular density misses.
-        let shift = first / zeroth;
-        (centre + shift, (second / zeroth - shift * shift).max(0.0).sqrt())
+        };
+        panel(0.0, 1e-30);
+        (1..30).rev().for_each(|k| panel(10f64.powi(-k - 1), 10f64.powi(-k)));
+        (1..5).for_each(|k| panel(0.1 * f64::from(k), 0.1 * f64::from(k + 1)));
+        (centre + first, (second - first * first).max(0.0).sqrt())
     }
 }
 
