@@ -40,10 +40,7 @@ pub(crate) fn independent_parts(covariance: &DMatrix<f64>, kernels: &DMatrix<f64
         let leader = find(&mut leader, row);
         let part = *part_of[leader].get_or_insert(parts.len());
         if part == parts.len() {
-            parts.push(Part {
-                rows: Vec::new(),
-                columns: Vec::new(),
-            });
+            parts.push(Part { rows: Vec::new(), columns: Vec::new() });
         }
         parts[part].rows.push(row);
     }
@@ -90,9 +87,8 @@ impl Block {
         factors.p().permute_columns(&mut order);
         // Columns have unit length: what rounding leaves of a dependent one is of order 2⁻⁵² times their number.
         let rounding = rows.max(count) as f64 * f64::EPSILON;
-        let rank = (0..rows.min(count))
-            .find(|i| triangle[(*i, *i)].abs() <= rounding)
-            .unwrap_or(rows.min(count));
+        let rank =
+            (0..rows.min(count)).find(|i| triangle[(*i, *i)].abs() <= rounding).unwrap_or(rows.min(count));
         let unfitted = data.rows_range(rank..).norm_squared();
         let entry = |i: usize, j: usize| match i < rank && i <= j {
             true => triangle[(i, j)] * lengths[order[(0, j)]],
@@ -102,25 +98,13 @@ impl Block {
         let mut targets = Vec::new();
         for start in (0..rank).step_by(LANES) {
             let lane = |lane: usize| {
-                if start + lane < rank {
-                    data[start + lane]
-                } else {
-                    0.0
-                }
+                if start + lane < rank { data[start + lane] } else { 0.0 }
             };
             targets.push(std::array::from_fn(lane));
             panels.extend((start..count).map(|j| std::array::from_fn(|lane| entry(start + lane, j))));
         }
         let columns = order.iter().map(|column| columns[*column]).collect();
-        (
-            Some(Self {
-                columns,
-                rank,
-                panels,
-                targets,
-            }),
-            unfitted,
-        )
+        (Some(Self { columns, rank, panels, targets }), unfitted)
     }
 
     /// The coefficients, in the order of R's columns.

@@ -40,10 +40,7 @@ impl CompressedLikelihood {
     /// Kernels with another number of rows, or with an entry that is not finite.
     pub fn new(survey: &SurveyLikelihood, kernels: &DMatrix<f64>) -> Result<Self, LikelihoodError> {
         if kernels.nrows() != survey.rows() {
-            return Err(LikelihoodError::KernelRows {
-                expected: survey.rows(),
-                found: kernels.nrows(),
-            });
+            return Err(LikelihoodError::KernelRows { expected: survey.rows(), found: kernels.nrows() });
         }
         for (column, kernel) in kernels.column_iter().enumerate() {
             if let Some((row, value)) = kernel.iter().enumerate().find(|(_, value)| !value.is_finite()) {
@@ -56,30 +53,20 @@ impl CompressedLikelihood {
         }
         let whitened_data = survey.whiten_slice(survey.data().as_slice());
         let parts = independent_parts(survey.covariance().matrix(), kernels);
-        let used: Vec<usize> = parts
-            .iter()
-            .flat_map(|part| part.columns.iter().copied())
-            .collect();
+        let used: Vec<usize> = parts.iter().flat_map(|part| part.columns.iter().copied()).collect();
         let whitened = survey.whiten(&kernels.select_columns(&used));
         let mut blocks = Vec::new();
         let mut floor = 0.0;
         let mut first = 0;
         for part in parts {
-            let kernels = whitened
-                .columns(first, part.columns.len())
-                .select_rows(&part.rows);
+            let kernels = whitened.columns(first, part.columns.len()).select_rows(&part.rows);
             first += part.columns.len();
             let data = part.rows.iter().map(|row| whitened_data[*row]).collect();
             let (block, unfitted) = Block::new(kernels, data, &part.columns);
             floor += unfitted;
             blocks.extend(block);
         }
-        Ok(Self {
-            blocks,
-            floor,
-            coefficients: kernels.ncols(),
-            noise: survey.shared_noise(),
-        })
+        Ok(Self { blocks, floor, coefficients: kernels.ncols(), noise: survey.shared_noise() })
     }
 
     /// Number of coefficients, whether they matter or not.
@@ -105,14 +92,8 @@ impl CompressedLikelihood {
     /// χ²(c) ≥ 0; NaN where a coefficient that matters is. Allocates nothing while a block has at most 512
     /// coefficients. Costs about rank × coefficients/2 multiplications a block.
     pub fn chi_squared(&self, coefficients: &[f64]) -> f64 {
-        assert_eq!(
-            coefficients.len(),
-            self.coefficients,
-            "a number for each coefficient"
-        );
-        self.blocks.iter().fold(self.floor, |sum, block| {
-            sum + block.squared_distance(coefficients)
-        })
+        assert_eq!(coefficients.len(), self.coefficients, "a number for each coefficient");
+        self.blocks.iter().fold(self.floor, |sum, block| sum + block.squared_distance(coefficients))
     }
 
     /// Log-likelihood, with the constants of the noise model.
@@ -123,18 +104,12 @@ impl CompressedLikelihood {
     /// F = Jᵀ KᵀC⁻¹K J for J = ∂coefficients/∂parameters (coefficients × parameters), as
     /// [`SurveyLikelihood::fisher_information`] of K J.
     pub fn fisher_information(&self, coefficient_jacobian: &DMatrix<f64>) -> DMatrix<f64> {
-        assert_eq!(
-            coefficient_jacobian.nrows(),
-            self.coefficients,
-            "a row for each coefficient"
-        );
+        assert_eq!(coefficient_jacobian.nrows(), self.coefficients, "a row for each coefficient");
         let parameters = coefficient_jacobian.ncols();
-        self.blocks
-            .iter()
-            .fold(DMatrix::zeros(parameters, parameters), |sum, block| {
-                let image = block.triangle() * coefficient_jacobian.select_rows(block.columns());
-                sum + image.tr_mul(&image)
-            })
+        self.blocks.iter().fold(DMatrix::zeros(parameters, parameters), |sum, block| {
+            let image = block.triangle() * coefficient_jacobian.select_rows(block.columns());
+            sum + image.tr_mul(&image)
+        })
     }
 
     /// The coefficients of smallest χ² (generalised least squares), by back substitution in R.
@@ -142,10 +117,8 @@ impl CompressedLikelihood {
     /// # Errors
     /// [`LikelihoodError::Undetermined`] where the data do not determine every coefficient.
     pub fn least_squares(&self) -> Result<LeastSquares, LikelihoodError> {
-        let undetermined = || LikelihoodError::Undetermined {
-            coefficients: self.coefficients,
-            rank: self.rank(),
-        };
+        let undetermined =
+            || LikelihoodError::Undetermined { coefficients: self.coefficients, rank: self.rank() };
         if self.rank() < self.coefficients {
             return Err(undetermined());
         }
@@ -154,12 +127,8 @@ impl CompressedLikelihood {
         for block in &self.blocks {
             let triangle = block.triangle();
             let identity = DMatrix::identity(block.rank(), block.rank());
-            let inverse = triangle
-                .solve_upper_triangular(&identity)
-                .ok_or_else(undetermined)?;
-            let solution = triangle
-                .solve_upper_triangular(&block.target())
-                .ok_or_else(undetermined)?;
+            let inverse = triangle.solve_upper_triangular(&identity).ok_or_else(undetermined)?;
+            let solution = triangle.solve_upper_triangular(&block.target()).ok_or_else(undetermined)?;
             let spread = &inverse * inverse.transpose();
             for (i, row) in block.columns().iter().enumerate() {
                 values[*row] = solution[i];
@@ -168,10 +137,7 @@ impl CompressedLikelihood {
                 }
             }
         }
-        Ok(LeastSquares {
-            coefficients: values,
-            covariance,
-        })
+        Ok(LeastSquares { coefficients: values, covariance })
     }
 }
 

@@ -82,7 +82,8 @@ pub enum CovarianceError {
     },
     /// Not positive definite.
     #[error(
-        "{origin}: must be positive definite, but the smallest eigenvalue of its correlations is {eigenvalue:.3e}; that mode is made of {mode}: cut or merge such rows, or estimate the covariance from more mocks than rows"
+        "{origin}: must be positive definite, but the smallest eigenvalue of its correlations is {}; that mode is made of {mode}: cut or merge such rows, or estimate the covariance from more mocks than rows",
+        eigenvalue_text(*.eigenvalue)
     )]
     NotDefinite {
         /// Where the matrix comes from.
@@ -102,6 +103,14 @@ pub enum CovarianceError {
         /// The row's line.
         line: u64,
     },
+}
+
+/// An eigenvalue of a matrix with unit diagonal; rounding in matrices of thousands of rows stays below 10⁻¹².
+fn eigenvalue_text(eigenvalue: f64) -> String {
+    match eigenvalue.abs() < 1e-12 {
+        true => "0 within rounding".to_owned(),
+        false => format!("{eigenvalue:.3}"),
+    }
 }
 
 /// A covariance matrix: finite, exactly symmetric, variances above zero. Whether it is positive definite is asked
@@ -132,22 +141,13 @@ impl Covariance {
     ) -> Result<Self, CovarianceError> {
         let (size, columns) = matrix.shape();
         if size != columns {
-            return Err(CovarianceError::NotSquare {
-                origin,
-                rows: size,
-                columns,
-            });
+            return Err(CovarianceError::NotSquare { origin, rows: size, columns });
         }
         for (i, j) in (0..size).flat_map(|i| (0..size).map(move |j| (i, j))) {
             let value = matrix[(i, j)];
             if !value.is_finite() {
                 let (row, column) = (labels[i].clone(), labels[j].clone());
-                return Err(CovarianceError::NotFinite {
-                    origin,
-                    row,
-                    column,
-                    value,
-                });
+                return Err(CovarianceError::NotFinite { origin, row, column, value });
             }
         }
         if let Some(i) = (0..size).find(|i| matrix[(*i, *i)] <= 0.0) {
@@ -162,23 +162,13 @@ impl Covariance {
             let scale = matrix[(i, i)].sqrt() * matrix[(j, j)].sqrt();
             if (upper - lower).abs() > SYMMETRY_TOLERANCE * scale {
                 let (row, column) = (labels[i].clone(), labels[j].clone());
-                return Err(CovarianceError::Asymmetric {
-                    origin,
-                    row,
-                    column,
-                    upper,
-                    lower,
-                });
+                return Err(CovarianceError::Asymmetric { origin, row, column, upper, lower });
             }
             let mean = 0.5 * upper + 0.5 * lower;
             matrix[(i, j)] = mean;
             matrix[(j, i)] = mean;
         }
-        Ok(Self {
-            matrix,
-            origin,
-            labels,
-        })
+        Ok(Self { matrix, origin, labels })
     }
 
     /// The diagonal covariance of a table's `error` column.
@@ -188,17 +178,10 @@ impl Covariance {
     pub fn from_errors(table: &MultipoleTable) -> Result<Self, CovarianceError> {
         let mut matrix = DMatrix::zeros(table.len(), table.len());
         for (i, row) in table.rows.iter().enumerate() {
-            let no_error = || CovarianceError::NoError {
-                file: table.file.clone(),
-                line: row.line,
-            };
+            let no_error = || CovarianceError::NoError { file: table.file.clone(), line: row.line };
             matrix[(i, i)] = row.error.ok_or_else(no_error)?.powi(2);
         }
-        Self::labelled(
-            matrix,
-            format!("{} (column `error`)", table.file),
-            table.row_labels(),
-        )
+        Self::labelled(matrix, format!("{} (column `error`)", table.file), table.row_labels())
     }
 
     /// Names the rows, for messages: as a table's, by [`MultipoleTable::row_labels`]. As many as there are rows.
@@ -235,43 +218,23 @@ impl Covariance {
 
     /// Square roots of the variances.
     pub fn standard_deviations(&self) -> Vec<f64> {
-        self.matrix
-            .diagonal()
-            .iter()
-            .map(|variance| variance.sqrt())
-            .collect()
+        self.matrix.diagonal().iter().map(|variance| variance.sqrt()).collect()
     }
 
     /// Rows and columns at these positions (each below [`Self::len`], none twice), in this order.
     pub fn select(&self, positions: &[usize]) -> Self {
         let size = positions.len();
         let matrix = DMatrix::from_fn(size, size, |i, j| self.matrix[(positions[i], positions[j])]);
-        let labels = positions
-            .iter()
-            .map(|position| self.labels[*position].clone())
-            .collect();
-        Self {
-            matrix,
-            origin: self.origin.clone(),
-            labels,
-        }
+        let labels = positions.iter().map(|position| self.labels[*position].clone()).collect();
+        Self { matrix, origin: self.origin.clone(), labels }
     }
 
     /// C_ij f_i f_j: the covariance of rows that were multiplied by `factors`, one a row and above 0.
     pub fn scaled(&self, factors: &[f64]) -> Self {
-        assert_eq!(
-            factors.len(),
-            self.len(),
-            "a factor for each row of the covariance"
-        );
-        let matrix = DMatrix::from_fn(self.len(), self.len(), |i, j| {
-            self.matrix[(i, j)] * (factors[i] * factors[j])
-        });
-        Self {
-            matrix,
-            origin: self.origin.clone(),
-            labels: self.labels.clone(),
-        }
+        assert_eq!(factors.len(), self.len(), "a factor for each row of the covariance");
+        let matrix =
+            DMatrix::from_fn(self.len(), self.len(), |i, j| self.matrix[(i, j)] * (factors[i] * factors[j]));
+        Self { matrix, origin: self.origin.clone(), labels: self.labels.clone() }
     }
 
     /// Whether it is positive definite beyond rounding: by Cholesky on the correlations, each pivot² above n·2⁻⁵².
@@ -297,21 +260,17 @@ impl Covariance {
         let mode = eigen.eigenvectors.column(smallest);
         let mut by_share: Vec<usize> = (0..self.len()).collect();
         by_share.sort_by(|left, right| mode[*right].abs().total_cmp(&mode[*left].abs()));
-        // Enough rows for half of the mode, at most four: the ones to look at.
-        let mut shown = Vec::new();
-        let mut sum = 0.0;
-        for row in by_share.into_iter().take(4) {
-            let share = mode[row].powi(2);
-            shown.push(format!("{} ({:.0} %)", self.labels[row], 100.0 * share));
-            sum += share;
-            if sum > 0.9 {
-                break;
-            }
-        }
+        // The rows to look at: those that make up nine tenths of the mode, at most four, in the matrix's order.
+        let share = |row: &usize| mode[*row].powi(2);
+        let enough =
+            (1..4).find(|count| by_share.iter().take(*count).map(share).sum::<f64>() > 0.9).unwrap_or(4);
+        by_share.truncate(enough);
+        by_share.sort_unstable();
+        let shown = |row: &usize| format!("{} ({:.0} %)", self.labels[*row], 100.0 * share(row));
         CovarianceError::NotDefinite {
             origin: self.origin.clone(),
             eigenvalue: eigen.eigenvalues[smallest],
-            mode: shown.join(", "),
+            mode: by_share.iter().map(shown).collect::<Vec<_>>().join(", "),
         }
     }
 }

@@ -38,17 +38,9 @@ impl Covariance {
 
 fn covariance_from(records: Records, rows: usize) -> Result<Covariance, DataError> {
     let first = &records.records[0];
-    if first
-        .fields
-        .iter()
-        .all(|text| text.parse::<f64>().is_err() && !text.contains(char::is_whitespace))
-    {
+    if first.fields.iter().all(|text| text.parse::<f64>().is_err() && !text.contains(char::is_whitespace)) {
         let text = shown(&first.fields[0]);
-        return Err(DataError::MatrixHeader {
-            file: records.file.clone(),
-            line: first.line,
-            text,
-        });
+        return Err(DataError::MatrixHeader { file: records.file.clone(), line: first.line, text });
     }
     let (lines, columns) = (records.records.len(), first.fields.len());
     if (lines, columns) != (rows, rows) {
@@ -74,11 +66,7 @@ fn covariance_from(records: Records, rows: usize) -> Result<Covariance, DataErro
             matrix[(i, j)] = finite_number(text, || records.place(record.line, &(j + 1).to_string()))?;
         }
     }
-    let labels = records
-        .records
-        .iter()
-        .map(|record| format!("line {}", record.line))
-        .collect();
+    let labels = records.records.iter().map(|record| format!("line {}", record.line)).collect();
     Ok(Covariance::labelled(matrix, records.file, labels)?)
 }
 
@@ -116,12 +104,8 @@ impl CovarianceRows {
 
     fn from_records(records: &Records, columns: &BTreeMap<String, String>) -> Result<Self, DataError> {
         let of_the_table_only = ["low", "high", "value", "error"];
-        let columns = columns
-            .iter()
-            .filter(|(name, _)| !of_the_table_only.contains(&name.as_str()));
-        let columns = columns
-            .map(|(name, in_file)| (name.clone(), in_file.clone()))
-            .collect();
+        let columns = columns.iter().filter(|(name, _)| !of_the_table_only.contains(&name.as_str()));
+        let columns = columns.map(|(name, in_file)| (name.clone(), in_file.clone())).collect();
         let header = Header::new(records, &COVARIANCE_ROW_COLUMNS, &columns)?;
         for any_of in [&["bin"][..], &["multipole"], &["separation", "wavenumber"]] {
             header.require(records, any_of)?;
@@ -131,20 +115,10 @@ impl CovarianceRows {
         let mut index = RowIndex::default();
         let mut keys: Vec<RowKey> = Vec::with_capacity(below.len());
         for record in below {
-            let key = RowReader {
-                records,
-                header: &header,
-                record,
-            }
-            .key()?;
+            let key = RowReader { records, header: &header, record }.key()?;
             if let Some(earlier) = index.find(&key) {
                 let (line, first) = (record.line, below[earlier].line);
-                return Err(DataError::DuplicateRow {
-                    file,
-                    line,
-                    first,
-                    row: key.to_string(),
-                });
+                return Err(DataError::DuplicateRow { file, line, first, row: key.to_string() });
             }
             index.insert(&key, keys.len());
             keys.push(key);
@@ -173,14 +147,12 @@ impl CovarianceRows {
             index.insert(key, position);
         }
         let position = |row: &MeasuredRow| {
-            index
-                .find(&row.key())
-                .ok_or_else(|| DataError::RowNotInCovariance {
-                    file: self.file.clone(),
-                    row: row.description(),
-                    table: table.file.clone(),
-                    line: row.line,
-                })
+            index.find(&row.key()).ok_or_else(|| DataError::RowNotInCovariance {
+                file: self.file.clone(),
+                row: row.description(),
+                table: table.file.clone(),
+                line: row.line,
+            })
         };
         table.rows.iter().map(position).collect()
     }

@@ -15,11 +15,7 @@ pub struct Place {
 
 impl std::fmt::Display for Place {
     fn fmt(&self, formatter: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
-        write!(
-            formatter,
-            "{}, line {}, column `{}`",
-            self.file, self.line, self.column
-        )
+        write!(formatter, "{}, line {}, column `{}`", self.file, self.line, self.column)
     }
 }
 
@@ -389,25 +385,17 @@ pub enum DataError {
 
 /// `; did you mean `x`?` or nothing.
 pub(crate) fn did_you_mean(nearest: &Option<String>) -> String {
-    nearest
-        .as_ref()
-        .map(|name| format!("; did you mean `{name}`?"))
-        .unwrap_or_default()
+    nearest.as_ref().map(|name| format!("; did you mean `{name}`?")).unwrap_or_default()
 }
 
-/// The candidate nearest to `word`, if one is near: normalised Damerau–Levenshtein similarity of at least one
-/// half, letters' case aside.
+/// The candidate nearest to `word`, if one is near: normalised Damerau–Levenshtein similarity of at least 0.6,
+/// letters' case aside.
 pub(crate) fn nearest<'a>(word: &str, candidates: impl IntoIterator<Item = &'a str>) -> Option<String> {
     let lower = word.to_lowercase();
     candidates
         .into_iter()
-        .map(|name| {
-            (
-                strsim::normalized_damerau_levenshtein(&lower, &name.to_lowercase()),
-                name,
-            )
-        })
-        .filter(|(similarity, _)| *similarity >= 0.5)
+        .map(|name| (strsim::normalized_damerau_levenshtein(&lower, &name.to_lowercase()), name))
+        .filter(|(similarity, _)| *similarity >= 0.6)
         .max_by(|left, right| left.0.total_cmp(&right.0))
         .map(|(_, name)| name.to_owned())
 }
@@ -422,9 +410,5 @@ pub(crate) fn shown(text: &str) -> String {
 
 /// Names in backticks, comma-separated.
 pub(crate) fn listed<'a>(names: impl IntoIterator<Item = &'a str>) -> String {
-    names
-        .into_iter()
-        .map(|name| format!("`{name}`"))
-        .collect::<Vec<_>>()
-        .join(", ")
+    names.into_iter().map(|name| format!("`{name}`")).collect::<Vec<_>>().join(", ")
 }

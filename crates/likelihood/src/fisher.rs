@@ -71,10 +71,7 @@ impl Combined {
     fn new(fisher: &DMatrix<f64>, prior: &DMatrix<f64>) -> Result<Self, FisherError> {
         let size = fisher.nrows();
         if prior.nrows() != size {
-            return Err(FisherError::Size {
-                fisher: size,
-                prior: prior.nrows(),
-            });
+            return Err(FisherError::Size { fisher: size, prior: prior.nrows() });
         }
         check("data's", fisher)?;
         check("priors'", prior)?;
@@ -82,59 +79,42 @@ impl Combined {
         let scale = unit_diagonal(&total);
         let eigen = SymmetricEigen::new(scaled(&total, &scale));
         let smallest = size as f64 * ROUNDING;
-        let informed = (0..size)
-            .filter(|mode| eigen.eigenvalues[*mode] > smallest)
-            .collect();
-        Ok(Self {
-            scale,
-            eigen,
-            informed,
-        })
+        let informed = (0..size).filter(|mode| eigen.eigenvalues[*mode] > smallest).collect();
+        Ok(Self { scale, eigen, informed })
     }
 }
 
 /// 1/√(diagonal), and 0 where a parameter has no information at all.
 fn unit_diagonal(matrix: &DMatrix<f64>) -> DVector<f64> {
-    matrix
-        .diagonal()
-        .map(|entry| if entry > 0.0 { entry.sqrt().recip() } else { 0.0 })
+    matrix.diagonal().map(|entry| if entry > 0.0 { entry.sqrt().recip() } else { 0.0 })
 }
 
 fn scaled(matrix: &DMatrix<f64>, scale: &DVector<f64>) -> DMatrix<f64> {
-    DMatrix::from_fn(matrix.nrows(), matrix.ncols(), |i, j| {
-        matrix[(i, j)] * scale[i] * scale[j]
-    })
+    DMatrix::from_fn(matrix.nrows(), matrix.ncols(), |i, j| matrix[(i, j)] * scale[i] * scale[j])
 }
 
 fn check(of: &'static str, matrix: &DMatrix<f64>) -> Result<(), FisherError> {
     for (j, column) in matrix.column_iter().enumerate() {
         if let Some(value) = column.iter().find(|value| !value.is_finite()) {
-            return Err(FisherError::NotFinite {
-                of,
-                parameter: j + 1,
-                value: *value,
-            });
+            return Err(FisherError::NotFinite { of, parameter: j + 1, value: *value });
         }
     }
     let eigenvalues = scaled(matrix, &unit_diagonal(matrix)).symmetric_eigenvalues();
     let largest_diagonal = matrix.diagonal().amax();
     let negative_diagonal = matrix.diagonal().iter().copied().fold(0.0, f64::min);
-    let smallest = eigenvalues.iter().copied().fold(
-        negative_diagonal / largest_diagonal.max(f64::MIN_POSITIVE),
-        f64::min,
-    );
+    let smallest = eigenvalues
+        .iter()
+        .copied()
+        .fold(negative_diagonal / largest_diagonal.max(f64::MIN_POSITIVE), f64::min);
     // 1e-9: a precision matrix that was inverted from a covariance may carry rounding; more is a mistake.
     match smallest < -1e-9 {
-        true => Err(FisherError::Negative {
-            of,
-            eigenvalue: smallest,
-        }),
+        true => Err(FisherError::Negative { of, eigenvalue: smallest }),
         false => Ok(()),
     }
 }
 
 /// The number of parameters that the data, rather than the priors, determine: trace F (F + P)⁻¹, between 0 and the
-/// number of parameters (Spiegelhalter et al. 2002, JRSS B 64, 583, Sect. 5; the trace of the hat matrix).
+/// number of parameters (Spiegelhalter et al. 2002, JRSS B 64, 583: their p_D for a normal likelihood and prior).
 ///
 /// `fisher` is the data's information F, `prior` the precision matrix P of the priors, both symmetric and without
 /// negative eigenvalues; a flat prior is a row and a column of zeros. Where F + P is singular, the directions that
@@ -162,11 +142,7 @@ pub fn expected_standard_deviations(
     fisher: &DMatrix<f64>,
     prior: &DMatrix<f64>,
 ) -> Result<Vec<f64>, FisherError> {
-    let Combined {
-        scale,
-        eigen,
-        informed,
-    } = Combined::new(fisher, prior)?;
+    let Combined { scale, eigen, informed } = Combined::new(fisher, prior)?;
     let deviation = |parameter: usize| {
         let part = |mode: &usize| eigen.eigenvectors[(parameter, *mode)].powi(2);
         let known: f64 = informed.iter().map(part).sum();
@@ -174,10 +150,7 @@ pub fn expected_standard_deviations(
         if scale[parameter] == 0.0 || known < 1.0 - 1e-6 {
             return f64::INFINITY;
         }
-        let variance: f64 = informed
-            .iter()
-            .map(|mode| part(mode) / eigen.eigenvalues[*mode])
-            .sum();
+        let variance: f64 = informed.iter().map(|mode| part(mode) / eigen.eigenvalues[*mode]).sum();
         scale[parameter] * variance.sqrt()
     };
     Ok((0..scale.len()).map(deviation).collect())

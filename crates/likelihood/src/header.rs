@@ -75,11 +75,7 @@ impl Header {
                 None => {}
             }
         }
-        let absent: Vec<&str> = known
-            .iter()
-            .copied()
-            .filter(|name| header.field(name).is_none())
-            .collect();
+        let absent: Vec<&str> = known.iter().copied().filter(|name| header.field(name).is_none()).collect();
         header.ignored = (0..header.names.len())
             .filter(|field| !header.fields.values().any(|used| used == field))
             .map(|field| IgnoredColumn {
@@ -121,10 +117,9 @@ impl Header {
                 )
             }
             None if self.names.len() == 1 => "separate the columns with commas".to_owned(),
-            None => format!(
-                "add it, or name the column that holds it with columns = {{ {} = \"…\" }}",
-                any_of[0]
-            ),
+            None => {
+                format!("add it, or name the column that holds it with columns = {{ {} = \"…\" }}", any_of[0])
+            }
         };
         DataError::MissingColumn {
             file: records.file.clone(),

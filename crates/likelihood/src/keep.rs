@@ -38,10 +38,7 @@ impl Keep {
             None => other.is_none(),
         };
         in_interval
-            && self
-                .multipoles
-                .as_ref()
-                .is_none_or(|list| list.contains(&row.multipole))
+            && self.multipoles.as_ref().is_none_or(|list| list.contains(&row.multipole))
             && self.bins.as_ref().is_none_or(|list| list.contains(&row.bin))
             && self.pairs.as_ref().is_none_or(|list| list.contains(&row.pair))
     }
@@ -53,12 +50,7 @@ impl Keep {
             if let Some((low, high)) =
                 interval.filter(|(low, high)| low > high || low.is_nan() || high.is_nan())
             {
-                return Err(DataError::KeepInverted {
-                    entry,
-                    what,
-                    low,
-                    high,
-                });
+                return Err(DataError::KeepInverted { entry, what, low, high });
             }
         }
         if let Some(order) = self.multipoles.iter().flatten().find(|order| **order > 4) {
@@ -71,15 +63,8 @@ impl Keep {
             });
         }
         let bins = table.bins();
-        for (what, wanted, known) in [
-            ("bin", &self.bins, bins.as_slice()),
-            ("pair", &self.pairs, &PAIRS),
-        ] {
-            if let Some(name) = wanted
-                .iter()
-                .flatten()
-                .find(|name| !known.contains(&name.as_str()))
-            {
+        for (what, wanted, known) in [("bin", &self.bins, bins.as_slice()), ("pair", &self.pairs, &PAIRS)] {
+            if let Some(name) = wanted.iter().flatten().find(|name| !known.contains(&name.as_str())) {
                 return Err(DataError::KeepUnknown {
                     entry,
                     what,
@@ -125,17 +110,10 @@ pub fn keep_rows(table: &MultipoleTable, keep: &[Keep]) -> Result<Kept, DataErro
 /// The separations and wavenumbers that a table covers, shells included, in words.
 fn reach(table: &MultipoleTable) -> String {
     let over = |axis: Axis| {
-        let ends = table
-            .rows
-            .iter()
-            .filter(|row| row.axis == axis)
-            .map(|row| row.edges.unwrap_or((row.at, row.at)));
+        let ends =
+            table.rows.iter().filter(|row| row.axis == axis).map(|row| row.edges.unwrap_or((row.at, row.at)));
         ends.reduce(|all, next| (all.0.min(next.0), all.1.max(next.1)))
             .map(|(low, high)| format!("{}s from {low} to {high}", axis.name()))
     };
-    [Axis::Separation, Axis::Wavenumber]
-        .into_iter()
-        .filter_map(over)
-        .collect::<Vec<_>>()
-        .join(" and ")
+    [Axis::Separation, Axis::Wavenumber].into_iter().filter_map(over).collect::<Vec<_>>().join(" and ")
 }

@@ -26,10 +26,7 @@ impl Records {
         let file = path.display().to_string();
         let bytes = std::fs::read(path).map_err(|reason| match reason.kind() {
             std::io::ErrorKind::NotFound => DataError::Missing { file: file.clone() },
-            _ => DataError::Unreadable {
-                file: file.clone(),
-                reason,
-            },
+            _ => DataError::Unreadable { file: file.clone(), reason },
         })?;
         Self::parse(file, &bytes, wanted)
     }
@@ -43,17 +40,9 @@ impl Records {
         let text = std::str::from_utf8(bytes).map_err(|error| {
             let (before, rest) = bytes.split_at(error.valid_up_to());
             let line = 1 + before.iter().filter(|byte| **byte == b'\n').count() as u64;
-            DataError::NotText {
-                file: file.clone(),
-                line,
-                byte: rest.first().copied().unwrap_or(0),
-            }
+            DataError::NotText { file: file.clone(), line, byte: rest.first().copied().unwrap_or(0) }
         })?;
-        let text = text
-            .strip_prefix('\u{feff}')
-            .unwrap_or(text)
-            .replace("\r\n", "\n")
-            .replace('\r', "\n");
+        let text = text.strip_prefix('\u{feff}').unwrap_or(text).replace("\r\n", "\n").replace('\r', "\n");
         let (lines, kept): (Vec<u64>, Vec<&str>) = (1..)
             .zip(text.split('\n'))
             .filter(|(_, line)| !line.trim().is_empty() && !line.trim_start().starts_with('#'))
@@ -69,10 +58,7 @@ impl Records {
             .from_reader(joined.as_bytes());
         let mut records = Vec::with_capacity(lines.len());
         for (line, fields) in lines.iter().zip(reader.records()) {
-            let open_quote = DataError::OpenQuote {
-                file: file.clone(),
-                line: *line,
-            };
+            let open_quote = DataError::OpenQuote { file: file.clone(), line: *line };
             let Ok(fields) = fields else {
                 return Err(open_quote);
             };
@@ -86,21 +72,14 @@ impl Records {
 
     /// Place of a field, for an error.
     pub(crate) fn place(&self, line: u64, column: &str) -> Place {
-        Place {
-            file: self.file.clone(),
-            line,
-            column: column.to_owned(),
-        }
+        Place { file: self.file.clone(), line, column: column.to_owned() }
     }
 
     /// The records below the header, of which there must be one and which must have as many fields as it.
     pub(crate) fn below_header(&self) -> Result<&[Record], DataError> {
         self.check_field_counts()?;
         match self.records.as_slice() {
-            [header] => Err(DataError::NoRows {
-                file: self.file.clone(),
-                line: header.line,
-            }),
+            [header] => Err(DataError::NoRows { file: self.file.clone(), line: header.line }),
             records => Ok(&records[1..]),
         }
     }
@@ -110,11 +89,7 @@ impl Records {
         let Some(first) = self.records.first() else {
             return Ok(());
         };
-        match self
-            .records
-            .iter()
-            .find(|record| record.fields.len() != first.fields.len())
-        {
+        match self.records.iter().find(|record| record.fields.len() != first.fields.len()) {
             None => Ok(()),
             Some(record) => Err(DataError::FieldCount {
                 file: self.file.clone(),
@@ -130,14 +105,8 @@ impl Records {
 /// A finite number, or the error that says why not. The place is made only for an error.
 pub(crate) fn finite_number(text: &str, place: impl FnOnce() -> Place) -> Result<f64, DataError> {
     match text.parse::<f64>() {
-        Err(_) => Err(DataError::NotANumber {
-            place: place(),
-            text: shown(text),
-        }),
-        Ok(value) if !value.is_finite() => Err(DataError::NotFinite {
-            place: place(),
-            text: shown(text),
-        }),
+        Err(_) => Err(DataError::NotANumber { place: place(), text: shown(text) }),
+        Ok(value) if !value.is_finite() => Err(DataError::NotFinite { place: place(), text: shown(text) }),
         Ok(value) => Ok(value),
     }
 }

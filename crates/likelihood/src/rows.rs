@@ -44,18 +44,8 @@ pub(crate) struct RowKey {
 
 impl std::fmt::Display for RowKey {
     fn fmt(&self, formatter: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
-        let Self {
-            bin,
-            pair,
-            multipole,
-            axis,
-            at,
-        } = self;
-        write!(
-            formatter,
-            "bin `{bin}`, pair {pair}, multipole {multipole}, {} {at}",
-            axis.name()
-        )
+        let Self { bin, pair, multipole, axis, at } = self;
+        write!(formatter, "bin `{bin}`, pair {pair}, multipole {multipole}, {} {at}", axis.name())
     }
 }
 
@@ -78,25 +68,18 @@ impl RowReader<'_> {
     }
 
     pub(crate) fn needed(&self, name: &str, way_out: &'static str) -> Result<&str, DataError> {
-        self.text(name).ok_or_else(|| DataError::EmptyField {
-            place: self.place(name),
-            way_out,
-        })
+        self.text(name).ok_or_else(|| DataError::EmptyField { place: self.place(name), way_out })
     }
 
     /// The number of an optional field.
     pub(crate) fn number(&self, name: &str) -> Result<Option<f64>, DataError> {
-        self.text(name)
-            .map(|text| finite_number(text, || self.place(name)))
-            .transpose()
+        self.text(name).map(|text| finite_number(text, || self.place(name))).transpose()
     }
 
     pub(crate) fn key(&self) -> Result<RowKey, DataError> {
         let (axis, at) = self.at()?;
         Ok(RowKey {
-            bin: self
-                .needed("bin", "write the name of a bin of the study")?
-                .to_owned(),
+            bin: self.needed("bin", "write the name of a bin of the study")?.to_owned(),
             pair: self.pair()?,
             multipole: self.multipole()?,
             axis,
@@ -107,15 +90,9 @@ impl RowReader<'_> {
     fn multipole(&self) -> Result<u8, DataError> {
         let text = self.needed("multipole", "write 0, 1, 2, 3 or 4")?;
         let value = finite_number(text, || self.place("multipole"))?;
-        match [0u8, 1, 2, 3, 4]
-            .into_iter()
-            .find(|order| f64::from(*order) == value)
-        {
+        match [0u8, 1, 2, 3, 4].into_iter().find(|order| f64::from(*order) == value) {
             Some(order) => Ok(order),
-            None => Err(DataError::BadMultipole {
-                place: self.place("multipole"),
-                text: shown(text),
-            }),
+            None => Err(DataError::BadMultipole { place: self.place("multipole"), text: shown(text) }),
         }
     }
 
@@ -133,11 +110,7 @@ impl RowReader<'_> {
             Some(near) => format!("did you mean `{near}`?"),
             None => "an empty field stands for first-second".to_owned(),
         };
-        Err(DataError::UnknownPair {
-            place: self.place("pair"),
-            text: shown(text),
-            way_out,
-        })
+        Err(DataError::UnknownPair { place: self.place("pair"), text: shown(text), way_out })
     }
 
     fn at(&self) -> Result<(Axis, f64), DataError> {
@@ -147,12 +120,7 @@ impl RowReader<'_> {
             (None, Some(_)) => Axis::Wavenumber,
             (Some(separation), Some(wavenumber)) => {
                 let (separation, wavenumber) = (separation.to_owned(), wavenumber.to_owned());
-                return Err(DataError::TwoAxes {
-                    file,
-                    line,
-                    separation,
-                    wavenumber,
-                });
+                return Err(DataError::TwoAxes { file, line, separation, wavenumber });
             }
             (None, None) => return Err(DataError::NoAxis { file, line }),
         };
@@ -162,11 +130,7 @@ impl RowReader<'_> {
                 Axis::Separation => "a separation is a length in Mpc/h",
                 Axis::Wavenumber => "a wavenumber is counted in h/Mpc",
             };
-            return Err(DataError::NotPositive {
-                place: self.place(axis.name()),
-                value: at,
-                way_out,
-            });
+            return Err(DataError::NotPositive { place: self.place(axis.name()), value: at, way_out });
         }
         Ok((axis, at))
     }
@@ -184,12 +148,8 @@ pub(crate) struct RowIndex {
 impl RowIndex {
     /// The row for the same thing, `at` compared to one part in a million.
     pub(crate) fn find(&self, key: &RowKey) -> Option<usize> {
-        let group = self
-            .by_group
-            .get(&(key.bin.clone(), key.pair.clone(), key.multipole, key.axis))?;
-        let same = group
-            .iter()
-            .filter(|(at, _)| (at - key.at).abs() <= SAME_PLACE * key.at);
+        let group = self.by_group.get(&(key.bin.clone(), key.pair.clone(), key.multipole, key.axis))?;
+        let same = group.iter().filter(|(at, _)| (at - key.at).abs() <= SAME_PLACE * key.at);
         same.min_by(|left, right| (left.0 - key.at).abs().total_cmp(&(right.0 - key.at).abs()))
             .map(|(_, row)| *row)
     }

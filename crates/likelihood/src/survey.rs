@@ -108,22 +108,12 @@ impl SurveyLikelihood {
             .into());
         }
         if let Some((row, value)) = data.iter().enumerate().find(|(_, value)| !value.is_finite()) {
-            return Err(LikelihoodError::DataNotFinite {
-                row: row + 1,
-                value: *value,
-            });
+            return Err(LikelihoodError::DataNotFinite { row: row + 1, value: *value });
         }
         let factor = covariance.factor()?;
         let log_determinant = factor.log_determinant();
         let model = noise.build(data.len(), log_determinant)?;
-        Ok(Self {
-            data,
-            covariance,
-            factor,
-            log_determinant,
-            choice: *noise,
-            noise: model,
-        })
+        Ok(Self { data, covariance, factor, log_determinant, choice: *noise, noise: model })
     }
 
     /// The same measurements with another noise model; the factor is kept.
@@ -182,12 +172,7 @@ impl SurveyLikelihood {
     pub fn chi_squared(&self, prediction: &[f64], scratch: &mut Vec<f64>) -> f64 {
         assert_eq!(prediction.len(), self.rows(), "a predicted number for each row");
         scratch.clear();
-        scratch.extend(
-            self.data
-                .iter()
-                .zip(prediction)
-                .map(|(measured, predicted)| measured - predicted),
-        );
+        scratch.extend(self.data.iter().zip(prediction).map(|(measured, predicted)| measured - predicted));
         self.factor.solve_in_place(scratch);
         dot(scratch, scratch)
     }
@@ -213,10 +198,8 @@ impl SurveyLikelihood {
     ) -> Result<f64, LikelihoodError> {
         assert_eq!(prediction.len(), self.rows(), "a predicted number for each row");
         let factor = self.covariance.select(positions).factor()?;
-        let mut residual: Vec<f64> = positions
-            .iter()
-            .map(|position| self.data[*position] - prediction[*position])
-            .collect();
+        let mut residual: Vec<f64> =
+            positions.iter().map(|position| self.data[*position] - prediction[*position]).collect();
         factor.solve_in_place(&mut residual);
         Ok(dot(&residual, &residual))
     }
@@ -224,11 +207,7 @@ impl SurveyLikelihood {
     /// L⁻¹ M for a matrix of n_d rows: columns become directions in which the noise has unit variance and no
     /// correlation.
     pub fn whiten(&self, matrix: &DMatrix<f64>) -> DMatrix<f64> {
-        assert_eq!(
-            matrix.nrows(),
-            self.rows(),
-            "a matrix row for each measured number"
-        );
+        assert_eq!(matrix.nrows(), self.rows(), "a matrix row for each measured number");
         let mut whitened = matrix.clone();
         for mut column in whitened.column_iter_mut() {
             self.factor.solve_in_place(column.as_mut_slice());

@@ -71,17 +71,12 @@ impl SurveySet {
     /// As [`CompressedLikelihood::new`].
     pub fn compress(&self, kernels: &DMatrix<f64>) -> Result<CompressedSet, LikelihoodError> {
         if kernels.nrows() != self.rows() {
-            return Err(LikelihoodError::KernelRows {
-                expected: self.rows(),
-                found: kernels.nrows(),
-            });
+            return Err(LikelihoodError::KernelRows { expected: self.rows(), found: kernels.nrows() });
         }
         let compress = |(first, survey): (usize, &SurveyLikelihood)| {
             CompressedLikelihood::new(survey, &kernels.rows(first, survey.rows()).into_owned())
         };
-        Ok(CompressedSet {
-            surveys: self.with_offsets().map(compress).collect::<Result<_, _>>()?,
-        })
+        Ok(CompressedSet { surveys: self.with_offsets().map(compress).collect::<Result<_, _>>()? })
     }
 }
 
@@ -99,27 +94,19 @@ impl CompressedSet {
 
     /// Sum of the surveys' χ².
     pub fn chi_squared(&self, coefficients: &[f64]) -> f64 {
-        self.surveys
-            .iter()
-            .map(|survey| survey.chi_squared(coefficients))
-            .sum()
+        self.surveys.iter().map(|survey| survey.chi_squared(coefficients)).sum()
     }
 
     /// Sum of the surveys' log-likelihoods; allocates nothing.
     pub fn log_likelihood(&self, coefficients: &[f64]) -> f64 {
-        self.surveys
-            .iter()
-            .map(|survey| survey.log_likelihood(coefficients))
-            .sum()
+        self.surveys.iter().map(|survey| survey.log_likelihood(coefficients)).sum()
     }
 
     /// Sum of the surveys' information; see [`CompressedLikelihood::fisher_information`].
     pub fn fisher_information(&self, coefficient_jacobian: &DMatrix<f64>) -> DMatrix<f64> {
         let parameters = coefficient_jacobian.ncols();
-        self.surveys
-            .iter()
-            .fold(DMatrix::zeros(parameters, parameters), |sum, survey| {
-                sum + survey.fisher_information(coefficient_jacobian)
-            })
+        self.surveys.iter().fold(DMatrix::zeros(parameters, parameters), |sum, survey| {
+            sum + survey.fisher_information(coefficient_jacobian)
+        })
     }
 }

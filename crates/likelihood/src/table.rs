@@ -11,17 +11,8 @@ use crate::records::Records;
 use crate::rows::{Axis, RowIndex, RowKey, RowReader};
 
 /// The columns of a table of multipoles, by our names; the file's may differ (`columns`).
-pub const TABLE_COLUMNS: [&str; 9] = [
-    "bin",
-    "pair",
-    "multipole",
-    "separation",
-    "wavenumber",
-    "low",
-    "high",
-    "value",
-    "error",
-];
+pub const TABLE_COLUMNS: [&str; 9] =
+    ["bin", "pair", "multipole", "separation", "wavenumber", "low", "high", "value", "error"];
 
 /// One measured number.
 #[derive(Clone, Debug, PartialEq)]
@@ -48,21 +39,8 @@ pub struct MeasuredRow {
 
 impl MeasuredRow {
     pub(crate) fn key(&self) -> RowKey {
-        let Self {
-            bin,
-            pair,
-            multipole,
-            axis,
-            at,
-            ..
-        } = self;
-        RowKey {
-            bin: bin.clone(),
-            pair: pair.clone(),
-            multipole: *multipole,
-            axis: *axis,
-            at: *at,
-        }
+        let Self { bin, pair, multipole, axis, at, .. } = self;
+        RowKey { bin: bin.clone(), pair: pair.clone(), multipole: *multipole, axis: *axis, at: *at }
     }
 
     /// The row in words: bin, pair, multipole and where.
@@ -90,12 +68,7 @@ impl MultipoleTable {
 
     fn from_records(records: &Records, columns: &BTreeMap<String, String>) -> Result<Self, DataError> {
         let header = Header::new(records, &TABLE_COLUMNS, columns)?;
-        for any_of in [
-            &["bin"][..],
-            &["multipole"],
-            &["separation", "wavenumber"],
-            &["value"],
-        ] {
+        for any_of in [&["bin"][..], &["multipole"], &["separation", "wavenumber"], &["value"]] {
             header.require(records, any_of)?;
         }
         for (edge, other) in [("low", "high"), ("high", "low")] {
@@ -107,11 +80,7 @@ impl MultipoleTable {
         let mut index = RowIndex::default();
         let mut rows: Vec<MeasuredRow> = Vec::with_capacity(below.len());
         for record in below {
-            let row = measured_row(&RowReader {
-                records,
-                header: &header,
-                record,
-            })?;
+            let row = measured_row(&RowReader { records, header: &header, record })?;
             if let Some(first) = index.find(&row.key()) {
                 return Err(DataError::DuplicateRow {
                     file: records.file.clone(),
@@ -123,11 +92,7 @@ impl MultipoleTable {
             index.insert(&row.key(), rows.len());
             rows.push(row);
         }
-        Ok(Self {
-            file: records.file.clone(),
-            rows,
-            ignored_columns: header.ignored,
-        })
+        Ok(Self { file: records.file.clone(), rows, ignored_columns: header.ignored })
     }
 
     /// Number of rows.
@@ -147,23 +112,13 @@ impl MultipoleTable {
 
     /// The rows at these positions, in this order. Positions are below [`Self::len`].
     pub fn select(&self, positions: &[usize]) -> Self {
-        let rows = positions
-            .iter()
-            .map(|position| self.rows[*position].clone())
-            .collect();
-        Self {
-            file: self.file.clone(),
-            rows,
-            ignored_columns: self.ignored_columns.clone(),
-        }
+        let rows = positions.iter().map(|position| self.rows[*position].clone()).collect();
+        Self { file: self.file.clone(), rows, ignored_columns: self.ignored_columns.clone() }
     }
 
     /// What the rows are called in messages: line and what is measured.
     pub fn row_labels(&self) -> Vec<String> {
-        self.rows
-            .iter()
-            .map(|row| format!("line {} ({})", row.line, row.description()))
-            .collect()
+        self.rows.iter().map(|row| format!("line {} ({})", row.line, row.description())).collect()
     }
 
     /// The distinct bins, in order of appearance.
@@ -200,23 +155,13 @@ pub fn read_multipoles(
 const WANTED: &str = "a header such as bin,multipole,separation,value and a row for each measured number";
 
 fn measured_row(reader: &RowReader<'_>) -> Result<MeasuredRow, DataError> {
-    let RowKey {
-        bin,
-        pair,
-        multipole,
-        axis,
-        at,
-    } = reader.key()?;
+    let RowKey { bin, pair, multipole, axis, at } = reader.key()?;
     reader.needed("value", "write the measured number, or leave the row out")?;
     let value = reader.number("value")?.unwrap_or_default();
     let error = reader.number("error")?;
     if let Some(error) = error.filter(|error| *error <= 0.0) {
         let way_out = "an error is a standard deviation; leave the row out if it was not measured";
-        return Err(DataError::NotPositive {
-            place: reader.place("error"),
-            value: error,
-            way_out,
-        });
+        return Err(DataError::NotPositive { place: reader.place("error"), value: error, way_out });
     }
     Ok(MeasuredRow {
         edges: edges(reader, axis, at)?,
@@ -238,43 +183,20 @@ fn edges(reader: &RowReader<'_>, axis: Axis, at: f64) -> Result<Option<(f64, f64
         (None, None) => return Ok(None),
         (Some(low), Some(high)) => (low, high),
         (Some(_), None) => {
-            return Err(DataError::OneEdge {
-                file,
-                line,
-                present: name("low"),
-                absent: name("high"),
-            });
+            return Err(DataError::OneEdge { file, line, present: name("low"), absent: name("high") });
         }
         (None, Some(_)) => {
-            return Err(DataError::OneEdge {
-                file,
-                line,
-                present: name("high"),
-                absent: name("low"),
-            });
+            return Err(DataError::OneEdge { file, line, present: name("high"), absent: name("low") });
         }
     };
     if low < 0.0 {
-        return Err(DataError::NegativeEdge {
-            place: reader.place("low"),
-            value: low,
-        });
+        return Err(DataError::NegativeEdge { place: reader.place("low"), value: low });
     }
     if low >= high {
-        return Err(DataError::EdgesInverted {
-            file,
-            line,
-            low,
-            high,
-        });
+        return Err(DataError::EdgesInverted { file, line, low, high });
     }
     if at < low || at > high {
-        return Err(DataError::OutsideEdges {
-            place: reader.place(axis.name()),
-            at,
-            low,
-            high,
-        });
+        return Err(DataError::OutsideEdges { place: reader.place(axis.name()), at, low, high });
     }
     Ok(Some((low, high)))
 }

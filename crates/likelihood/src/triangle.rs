@@ -33,9 +33,8 @@ impl LowerTriangle {
     pub(crate) fn factor(matrix: &DMatrix<f64>) -> Option<Self> {
         let size = matrix.nrows();
         let deviations: Vec<f64> = matrix.diagonal().iter().map(|variance| variance.sqrt()).collect();
-        let correlation = DMatrix::from_fn(size, size, |i, j| {
-            matrix[(i, j)] / (deviations[i] * deviations[j])
-        });
+        let correlation =
+            DMatrix::from_fn(size, size, |i, j| matrix[(i, j)] / (deviations[i] * deviations[j]));
         let factor = correlation.cholesky()?;
         let factor = factor.l_dirty();
         let rounding = size as f64 * f64::EPSILON;

@@ -52,14 +52,7 @@ impl MultipoleTable {
             return Err(DataError::BadHubble { file: self.file, h });
         }
         for row in &mut self.rows {
-            let MeasuredRow {
-                axis,
-                at,
-                edges,
-                value,
-                error,
-                ..
-            } = row;
+            let MeasuredRow { axis, at, edges, value, error, .. } = row;
             let length = |x: f64| match axis {
                 Axis::Separation => x * h,
                 Axis::Wavenumber => x / h,

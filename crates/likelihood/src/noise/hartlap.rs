@@ -14,16 +14,13 @@ pub(super) const FAMILY: NoiseFamily = NoiseFamily {
         let rows = inputs.rows as f64;
         let inflation = (mocks - 1.0) / (mocks - rows - 2.0);
         let constant = -0.5 * (rows * (TAU * inflation).ln() + inputs.log_determinant);
-        Ok(Arc::new(Hartlap {
-            shrink: inflation.recip(),
-            constant,
-        }))
+        Ok(Arc::new(Hartlap { shrink: inflation.recip(), constant }))
     },
 };
 
 /// C → C (n_s − 1)/(n_s − n_d − 2), in χ² and in the determinant; n_s > n_d + 2.
 ///
-/// Hartlap, Simon & Schneider 2007, A&A 464, 399, Eq. 17, whose n is n_s − 1 here. It makes the expectation of the
+/// Hartlap, Simon & Schneider 2007, A&A 464, 399, Eq. 17. It makes the expectation of the
 /// inverse right; the scatter of the estimate still widens the true error beyond what the posterior shows.
 #[derive(Debug)]
 struct Hartlap {

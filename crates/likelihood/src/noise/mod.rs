@@ -131,12 +131,7 @@ impl NoiseInputs {
         let mocks = self.mock_count.ok_or(NoiseError::NeedsMockCount { name })?;
         let least = self.rows + margin;
         match mocks < least {
-            true => Err(NoiseError::TooFewMocks {
-                name,
-                mocks,
-                rows: self.rows,
-                least,
-            }),
+            true => Err(NoiseError::TooFewMocks { name, mocks, rows: self.rows, least }),
             false => Ok(mocks),
         }
     }
@@ -167,11 +162,7 @@ impl NoiseChoice {
     pub fn new(name: &str, mock_count: Option<usize>) -> Result<Self, NoiseError> {
         let families = noise_families();
         match families.iter().find(|family| family.name == name) {
-            Some(family) => Ok(Self {
-                family,
-                mock_count,
-                determined: None,
-            }),
+            Some(family) => Ok(Self { family, mock_count, determined: None }),
             None => Err(NoiseError::Unknown {
                 name: name.to_owned(),
                 nearest: nearest(name, families.iter().map(|family| family.name)),
@@ -182,33 +173,17 @@ impl NoiseChoice {
 
     /// Gaussian noise with a known covariance.
     pub fn gaussian() -> Self {
-        Self {
-            family: &noise_families()[0],
-            mock_count: None,
-            determined: None,
-        }
+        Self { family: &noise_families()[0], mock_count: None, determined: None }
     }
 
     /// The same with n_θ, the number of quantities that the data determine.
     pub fn with_determined(self, determined: usize) -> Self {
-        Self {
-            determined: Some(determined),
-            ..self
-        }
+        Self { determined: Some(determined), ..self }
     }
 
     pub(crate) fn build(&self, rows: usize, log_determinant: f64) -> Result<Arc<dyn NoiseModel>, NoiseError> {
-        let Self {
-            family,
-            mock_count,
-            determined,
-        } = *self;
-        family.build(&NoiseInputs {
-            rows,
-            log_determinant,
-            mock_count,
-            determined,
-        })
+        let Self { family, mock_count, determined } = *self;
+        family.build(&NoiseInputs { rows, log_determinant, mock_count, determined })
     }
 }
 

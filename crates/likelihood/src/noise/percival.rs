@@ -13,16 +13,10 @@ pub(super) const FAMILY: NoiseFamily = NoiseFamily {
     needs_mocks: true,
     build: |inputs| {
         let mocks = inputs.mocks("percival", 5)? as f64;
-        let determined = inputs
-            .determined
-            .ok_or(NoiseError::NeedsDetermined { name: "percival" })?;
+        let determined = inputs.determined.ok_or(NoiseError::NeedsDetermined { name: "percival" })?;
         if determined > inputs.rows {
             let rows = inputs.rows;
-            return Err(NoiseError::TooManyDetermined {
-                name: "percival",
-                determined,
-                rows,
-            });
+            return Err(NoiseError::TooManyDetermined { name: "percival", determined, rows });
         }
         let rows = inputs.rows as f64;
         let exponent = exponent(mocks, rows, determined as f64);
@@ -32,11 +26,7 @@ pub(super) const FAMILY: NoiseFamily = NoiseFamily {
                 - 0.5 * rows * (PI * (mocks - 1.0)).ln()
                 - 0.5 * inputs.log_determinant
         });
-        Ok(Arc::new(Percival {
-            mocks,
-            exponent,
-            constant,
-        }))
+        Ok(Arc::new(Percival { mocks, exponent, constant }))
     },
 };
 
@@ -49,7 +39,7 @@ fn exponent(mocks: f64, rows: f64, determined: f64) -> f64 {
 
 /// ln L = const − (p/2) ln[1 + χ²/(n_s−1)]; n_s > n_d + 4, n_θ ≤ n_d.
 ///
-/// Percival, Friedrich, Sellentin & Heavens 2022, MNRAS 510, 3207, Eqs. 54–56. For p > n_d the constant is that of a
+/// Percival, Friedrich, Sellentin & Heavens 2022, MNRAS 510, 3207. For p > n_d the constant is that of a
 /// density, lnΓ(p/2) − lnΓ((p−n_d)/2) − (n_d/2) ln[π(n_s−1)] − ½ ln det C; else no density has this form and the
 /// constant is left out.
 #[derive(Debug)]
