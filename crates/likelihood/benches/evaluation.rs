@@ -17,20 +17,14 @@ const COEFFICIENTS: usize = 10;
 fn problem(rows: usize, together: bool) -> (SurveyLikelihood, DMatrix<f64>, Vec<f64>) {
     let bin = |row: usize| row * BINS / rows;
     let place = |row: usize| (row as f64 + 0.5) * BINS as f64 / rows as f64 - bin(row) as f64;
-    let kernels = DMatrix::from_fn(rows, BINS * COEFFICIENTS, |i, j| {
-        match bin(i) == j / COEFFICIENTS {
-            true => ((j % COEFFICIENTS + 1) as f64 * 1.3 * place(i)).cos() + 0.2 * place(i),
-            false => 0.0,
-        }
+    let kernels = DMatrix::from_fn(rows, BINS * COEFFICIENTS, |i, j| match bin(i) == j / COEFFICIENTS {
+        true => ((j % COEFFICIENTS + 1) as f64 * 1.3 * place(i)).cos() + 0.2 * place(i),
+        false => 0.0,
     });
     let covariance = DMatrix::from_fn(rows, rows, |i, j| {
         let apart = (i as f64 - j as f64).abs() * 8.0 / rows as f64;
         let correlation = if i == j { 1.0 } else { 0.7 * (-apart).exp() };
-        if together || bin(i) == bin(j) {
-            correlation
-        } else {
-            0.0
-        }
+        if together || bin(i) == bin(j) { correlation } else { 0.0 }
     });
     let coefficients: Vec<f64> = (0..BINS * COEFFICIENTS).map(|j| 1.0 + (j as f64).sin()).collect();
     let data = &kernels * DVector::from_column_slice(&coefficients)
