@@ -77,8 +77,7 @@ pub fn clock_contrast(
     check(setting)?;
     let a = 1.0 / (1.0 + redshift);
     let square = background.expansion_squared(a);
-    // Written so that NaN fails.
-    if !(square > 0.0) {
+    if square <= 0.0 || square.is_nan() {
         return Err(CosmologyError::NoExpansion { redshift, value: square, asked: redshift });
     }
     let potential = 1.5 * background.matter_fraction(a) * square * (a / HUBBLE_DISTANCE).powi(2);
@@ -121,7 +120,7 @@ fn check(setting: &ClockSetting) -> Result<(), CosmologyError> {
     if !(damping >= 0.0 && damping.is_finite()) {
         return fail("damping", damping, "at least 0 and finite", "give it in Mpc/h, such as 0.5");
     }
-    if !(reached.0 <= reached.1) {
+    if reached.0.is_nan() || reached.1.is_nan() || reached.0 > reached.1 {
         let way_out = "give the lowest wavenumber that was reached first";
         return fail("wavenumber", reached.0, "at most the highest that was reached", way_out);
     }

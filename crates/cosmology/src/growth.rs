@@ -15,6 +15,9 @@ pub const STARTING_SCALE_FACTOR: f64 = 1e-3;
 /// Tolerance of each step, relative, of D/a. The steps' errors add up to less than 1e-11 of D and f.
 const STEP_TOLERANCE: f64 = 1e-12;
 
+/// Longest step in ln a: of a G that changes within a tenth of it, a longer one could see nothing at all.
+const LONGEST_STEP: f64 = 0.3;
+
 /// Points of the growth index's integral.
 static INDEX_RULE: LazyLock<GaussLegendre> = LazyLock::new(|| gauss_legendre(64));
 
@@ -81,7 +84,8 @@ impl System<f64, Vector3<f64>> for Equation<'_> {
 /// order 7 only. D and f are good to 1e-10.
 ///
 /// # Errors
-/// A scale factor outside [10⁻³, 1]; E² ≤ 0 on the way; G that is not finite or so rough that steps shrink to nothing.
+/// A scale factor outside [10⁻³, 1]; E² ≤ 0 on the way from a = 10⁻³ to today; G that is not finite, or so rough that steps
+/// shrink to nothing, or so negative (−1 from early on) that D falls to 0.
 pub fn growth_history(
     background: &Background,
     gravity: &dyn Fn(f64) -> f64,
@@ -93,12 +97,13 @@ pub fn growth_history(
     let equation = Equation { background, gravity };
     let mut log_a = STARTING_SCALE_FACTOR.ln();
     let mut state = Vector3::new(1.0, 0.0, log_a);
+    let mut step = LONGEST_STEP;
     let mut history = vec![RawGrowth { growth: 0.0, rate: 0.0, rate_slope: 0.0 }; scale_factors.len()];
     for index in order {
         let a = scale_factors[index];
         let target = a.ln();
         if target > log_a {
-            state = advance(&equation, log_a, target, state)?;
+            state = advance(&equation, log_a, target, state, &mut step)?;
             log_a = target;
             state[2] = target;
         }
@@ -117,21 +122,45 @@ pub fn growth_history(
     Ok(history)
 }
 
+/// Integrates from ln a = `from` to `to`, starting with the step `step`, which is left at the longest that was taken.
 fn advance(
     equation: &Equation<'_>,
     from: f64,
     to: f64,
     state: Vector3<f64>,
+    step: &mut f64,
 ) -> Result<Vector3<f64>, CosmologyError> {
     let system = Equation { background: equation.background, gravity: equation.gravity };
-    let mut solver = Dop853::new(system, from, to, to - from, state, STEP_TOLERANCE, STEP_TOLERANCE);
-    solver.set_output(OutputType::Sparse);
+    // The solver's own defaults, but for the first and the longest step.
+    let (safety, damping, shrink, grow, most_steps, stiffness_after) = (0.9, 0.0, 0.333, 6.0, 100_000, 1000);
+    let mut solver = Dop853::from_param(
+        system,
+        from,
+        to,
+        to - from,
+        state,
+        STEP_TOLERANCE,
+        STEP_TOLERANCE,
+        safety,
+        damping,
+        shrink,
+        grow,
+        LONGEST_STEP,
+        step.min(to - from),
+        most_steps,
+        stiffness_after,
+        OutputType::Sparse,
+    );
     let fail = |x: f64, reason: &str| CosmologyError::Growth { scale_factor: x.exp(), reason: reason.into() };
     solver.integrate().map_err(|error| match error {
         IntegrationError::MaxNumStepReached { x, .. } => fail(x, "too many steps"),
         IntegrationError::StepSizeUnderflow { x } => fail(x, "the steps shrank to nothing"),
         IntegrationError::StiffnessDetected { x } => fail(x, "the equation became stiff"),
     })?;
+    if let Some(index) = solver.y_out().iter().position(|state| state[0] <= 0.0) {
+        return Err(fail(solver.x_out()[index], "the amplitude of matter fell to 0"));
+    }
+    *step = solver.x_out().windows(2).map(|pair| pair[1] - pair[0]).fold(0.0, f64::max);
     solver.y_out().last().copied().ok_or_else(|| fail(to, "no step was taken"))
 }
 

@@ -8,7 +8,7 @@
 //! | [`transfer`] | shapes of the linear power spectrum |
 //! | [`power`] | the linear power spectrum normalised to σ8 |
 //! | [`clocks`] | how differently clocks tick a given distance apart |
-//! | [`bessel`], [`legendre`], [`quadrature`] | special functions and quadrature rules |
+//! | [`bessel`], [`legendre()`], [`quadrature`] | special functions and quadrature rules |
 //!
 //! Units throughout: comoving distances in Mpc/h, wavenumbers in h/Mpc, power in (Mpc/h)³, c = 1, `a = 1/(1+z)`,
 //! a prime is d/d ln a. Radiation is neglected (2·10⁻⁴ of a distance at z = 2).

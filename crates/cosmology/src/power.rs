@@ -163,16 +163,16 @@ impl LinearPower {
                 way_out: "give it in h/Mpc",
             });
         }
-        if let Some((low, high)) = self.range() {
-            if let Some(&outside) = k.iter().find(|&k| !(low..=high).contains(k)) {
-                return Err(CosmologyError::OutsideTable {
-                    wavenumber: outside,
-                    low,
-                    high,
-                    needed_low: k.iter().copied().fold(f64::INFINITY, f64::min),
-                    needed_high: k.iter().copied().fold(0.0, f64::max),
-                });
-            }
+        if let Some((low, high)) = self.range()
+            && let Some(&outside) = k.iter().find(|&k| !(low..=high).contains(k))
+        {
+            return Err(CosmologyError::OutsideTable {
+                wavenumber: outside,
+                low,
+                high,
+                needed_low: k.iter().copied().fold(f64::INFINITY, f64::min),
+                needed_high: k.iter().copied().fold(0.0, f64::max),
+            });
         }
         self.shape.tabulate(k, self.spectral_index, self.amplitude, out);
         Ok(())
