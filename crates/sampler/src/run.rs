@@ -4,7 +4,7 @@ use crate::chain::{Chain, MoveAcceptance, Outcome, RejectedEvaluations, StopReas
 use crate::ensemble::{Ensemble, Fatal, Lane, height};
 use crate::error::SamplerError;
 use crate::history::History;
-use crate::moves::Mixture;
+use crate::moves::{Fit, Independence, Mixture, mean_and_covariance, weights};
 use crate::peak::{Peak, PeakSettings, find_peak_with};
 use crate::priors::PriorSet;
 use crate::settings::{Control, DEFAULT_MAXIMUM_EVALUATIONS, EnsembleSettings, Phase, Progress};
@@ -12,6 +12,7 @@ use crate::start::start_ensemble;
 use crate::stopping::{Verdict, first_look, full_check};
 use crate::target::Target;
 use crate::warm_up::{settled, still_settled};
+use nalgebra::DMatrix;
 use rayon::prelude::*;
 use serde::{Deserialize, Serialize};
 use std::time::{Duration, Instant};
@@ -20,13 +21,19 @@ use std::time::{Duration, Instant};
 const ROUND: Duration = Duration::from_millis(40);
 
 /// The first check of the stop rule comes after this many steps.
-const FIRST_CHECK: u64 = 48;
+const FIRST_CHECK: u64 = 24;
 
 /// Checks come at least this factor of steps apart, so that all of them cost no more than a few times the last …
 const LEAST_GROWTH: f64 = 1.15;
 
 /// … and at most this factor, however far off the goal seems.
 const LARGEST_GROWTH: f64 = 1.6;
+
+/// Factor on the covariance that the independence move proposes from.
+const FIT_INFLATION: f64 = 1.1;
+
+/// Largest share of the independence move in the mixture.
+const LARGEST_SHARE: f64 = 0.9;
 
 /// Everything that determines how a run goes on.
 #[derive(Debug, Clone, Serialize, Deserialize)]
@@ -36,6 +43,11 @@ pub(crate) struct RunState {
     peak: Peak,
     ensembles: Vec<Ensemble>,
     history: History,
+    /// What the independence move proposes from: the Laplace approximation at first, then fits to the warm-up, frozen at
+    /// its end.
+    fit: Fit,
+    /// Weights of the moves by name; that of the independence move follows its acceptance during warm-up.
+    weights: Vec<(String, f64)>,
     steps: u64,
     next_check: u64,
     /// Steps dropped as warm-up, once that is known.
@@ -82,10 +94,8 @@ pub fn sample<T: Target>(
         report.elapsed_seconds = clock.elapsed().as_secs_f64();
         callback(&report)
     })?;
-    let widths: Vec<f64> = peak.covariance.diagonal().iter().map(|variance| variance.sqrt()).collect();
-    let mixture = Mixture::new(&widths, &settings.move_weights)?;
-    let mut state = RunState::start(target, priors, settings, peak, &mixture)?;
-    state.run(target, &mixture, report, clock, callback)
+    let mut state = RunState::start(target, priors, settings, peak)?;
+    state.run(target, report, clock, callback)
 }
 
 impl RunState {
@@ -94,10 +104,11 @@ impl RunState {
         priors: &PriorSet,
         settings: &EnsembleSettings,
         peak: Peak,
-        mixture: &Mixture,
     ) -> Result<Self, SamplerError> {
         let walkers = settings.walkers.unwrap_or_else(|| default_walkers(priors.dimension()));
-        let moves = mixture.names().len();
+        let weights = weights(&settings.move_weights)?;
+        let moves = weights.len();
+        let fit = laplace_fit(&peak);
         let ensembles = (0..settings.ensembles)
             .into_par_iter()
             .map(|index| start_ensemble(target, priors, &peak, (settings.seed, index, walkers), moves))
@@ -112,6 +123,8 @@ impl RunState {
             history: History::new(settings.ensembles, walkers, priors.dimension(), maximum_draws),
             peak,
             ensembles,
+            fit,
+            weights,
             steps: 0,
             next_check: FIRST_CHECK,
             warm_up: None,
@@ -186,14 +199,14 @@ impl RunState {
     fn run<T: Target>(
         &mut self,
         target: &T,
-        mixture: &Mixture,
         mut report: Progress,
         clock: Instant,
         callback: &mut dyn FnMut(&Progress) -> Control,
     ) -> Result<Chain, SamplerError> {
         let threads = rayon::current_num_threads();
         let lanes_each = threads.div_ceil(self.ensembles.len());
-        let moves = mixture.names().len();
+        let mut mixture = Mixture::new(&self.fit, &self.weights)?;
+        let moves = self.weights.len();
         let dimension = self.peak.point.len();
         let mut lanes: Vec<Vec<Lane<T::Scratch>>> = (0..self.ensembles.len())
             .map(|_| (0..lanes_each).map(|_| Lane::new(target.scratch(), dimension, moves)).collect())
@@ -207,10 +220,10 @@ impl RunState {
             }
             let count = round.min(self.next_check - self.steps).min(affordable);
             let began = Instant::now();
-            if let Some(fatal) = self.advance(target, mixture, &mut lanes, count) {
+            if let Some(fatal) = self.advance(target, &mixture, &mut lanes, count) {
                 let Fatal { reason, point } = fatal;
                 let partial = (self.history.steps() > 0)
-                    .then(|| Box::new(self.finish(mixture, StopReason::Failure, None, clock)));
+                    .then(|| Box::new(self.finish(StopReason::Failure, None, clock)));
                 return Err(SamplerError::Evaluation { reason, point, partial });
             }
             let pace = began.elapsed().as_secs_f64() / count as f64;
@@ -218,6 +231,7 @@ impl RunState {
             last_check = None;
             if self.steps >= self.next_check {
                 let verdict = self.check(&mut report);
+                mixture = Mixture::new(&self.fit, &self.weights)?;
                 let done = verdict.as_ref().is_some_and(|verdict| verdict.failing.is_empty());
                 last_check = verdict;
                 if done {
@@ -235,30 +249,29 @@ impl RunState {
         if self.history.steps() == 0 {
             return Err(SamplerError::Stopped);
         }
-        Ok(self.finish(mixture, stopped_by, last_check, clock))
+        Ok(self.finish(stopped_by, last_check, clock))
     }
 
     /// Looks for the end of warm-up, then applies the tests; sets the step of the next check. Depends on the chain alone.
     fn check(&mut self, report: &mut Progress) -> Option<Verdict> {
         let mut growth = LARGEST_GROWTH.sqrt();
-        match self.warm_up {
-            None => {
-                if let Some(dropped) = settled(&self.history) {
-                    self.drop_first(dropped);
-                    for ensemble in &mut self.ensembles {
-                        ensemble.counts.moves.iter_mut().for_each(|counts| *counts = (0, 0));
-                    }
-                }
+        if self.warm_up.is_some() {
+            let dropped = still_settled(&self.history);
+            self.drop_first(dropped);
+        } else {
+            let settled = settled(&self.history);
+            self.refit(settled);
+            if settled.is_some() {
+                // The fit has seen these draws; what follows is independent of that given the fit.
+                self.drop_first(self.history.steps());
+                self.warm_up = Some(self.steps);
             }
-            Some(_) => {
-                let dropped = still_settled(&self.history);
-                if dropped > 0 {
-                    self.drop_first(dropped);
-                }
+            for ensemble in &mut self.ensembles {
+                ensemble.counts.moves.iter_mut().for_each(|counts| *counts = (0, 0));
             }
         }
         let mut verdict = None;
-        if self.warm_up.is_some() {
+        if self.warm_up.is_some() && self.history.steps() >= 8 {
             let kept = self.evaluations_kept();
             let mut found = first_look(&self.history, &self.settings, kept);
             // The first look errs by a few per cent, so near the goal the full tests decide.
@@ -276,6 +289,35 @@ impl RunState {
         verdict
     }
 
+    /// During warm-up: fits the independence move to the settled draws, or to the later half if they have not settled, and
+    /// weights it by how it fared since the last check.
+    fn refit(&mut self, settled: Option<usize>) {
+        let Some(place) = self.weights.iter().position(|(name, _)| name == Independence::NAME) else {
+            return;
+        };
+        let counts = self.ensembles.iter().map(|ensemble| ensemble.counts.moves[place]);
+        let (proposed, accepted) = counts.fold((0, 0), |sum, part| (sum.0 + part.0, sum.1 + part.1));
+        let from = settled.unwrap_or(self.history.steps() / 2) * self.walkers;
+        let dimension = self.fit.dimension();
+        let rows =
+            self.history.records.iter().flat_map(|record| record.points.chunks_exact(dimension).skip(from));
+        let (mean, covariance) = mean_and_covariance(dimension, rows);
+        if let Some(fit) = Fit::new(mean.as_slice().to_vec(), covariance * FIT_INFLATION) {
+            self.fit = fit;
+        }
+        if proposed > 0 && self.settings.move_weights.is_empty() {
+            let others: f64 = self
+                .weights
+                .iter()
+                .filter(|(name, _)| name != Independence::NAME)
+                .map(|(_, weight)| weight)
+                .sum();
+            let rate = accepted as f64 / proposed as f64;
+            let share = LARGEST_SHARE * rate / (rate + 0.03);
+            self.weights[place].1 = (others * share / (1.0 - share)).max(0.01 * others);
+        }
+    }
+
     fn drop_first(&mut self, dropped: usize) {
         if dropped > 0 {
             self.warm_up = Some(self.history.kept_steps[dropped - 1]);
@@ -283,13 +325,7 @@ impl RunState {
         }
     }
 
-    fn finish(
-        &mut self,
-        mixture: &Mixture,
-        stopped_by: StopReason,
-        verdict: Option<Verdict>,
-        clock: Instant,
-    ) -> Chain {
+    fn finish(&mut self, stopped_by: StopReason, verdict: Option<Verdict>, clock: Instant) -> Chain {
         let settled = self.warm_up.is_some();
         let wall_seconds = clock.elapsed().as_secs_f64();
         if !settled {
@@ -308,14 +344,14 @@ impl RunState {
                 best.clone_from(&ensemble.best);
             }
         }
-        let acceptance = mixture
-            .names()
+        let acceptance = self
+            .weights
             .iter()
             .enumerate()
-            .map(|(at, name)| {
+            .map(|(at, (name, _))| {
                 let counts = self.ensembles.iter().map(|ensemble| ensemble.counts.moves[at]);
                 let (proposed, accepted) = counts.fold((0, 0), |sum, part| (sum.0 + part.0, sum.1 + part.1));
-                MoveAcceptance { name: (*name).to_owned(), proposed, accepted }
+                MoveAcceptance { name: name.clone(), proposed, accepted }
             })
             .collect();
         let (mut points, mut log_prior, mut log_likelihood) = (vec![], vec![], vec![]);
@@ -352,6 +388,14 @@ impl RunState {
             best,
         }
     }
+}
+
+/// The Laplace approximation as a first fit; without correlations where they make it singular.
+fn laplace_fit(peak: &Peak) -> Fit {
+    let diagonal = DMatrix::from_diagonal(&peak.covariance.diagonal().map(|variance| variance.max(1e-300)));
+    Fit::new(peak.point.clone(), &peak.covariance * FIT_INFLATION)
+        .or_else(|| Fit::new(peak.point.clone(), diagonal))
+        .expect("a diagonal of positive variances has a Cholesky factor")
 }
 
 /// Walkers of an ensemble over `dimension` coordinates: the halves span the space with a few to spare.

@@ -1,7 +1,7 @@
 //! When a run has enough: the tests, and what failed ones still need.
 
 use crate::chain::{FailedTest, Test};
-use crate::diagnostics::{ParameterDiagnostics, diagnose_ensembles, split_walkers_rhat};
+use crate::diagnostics::{ParameterDiagnostics, ScoreTable, diagnose, split_walkers_rhat};
 use crate::history::History;
 use crate::settings::EnsembleSettings;
 use rayon::prelude::*;
@@ -53,9 +53,10 @@ pub(crate) fn first_look(history: &History, settings: &EnsembleSettings, evaluat
 pub(crate) fn full_check(history: &History, settings: &EnsembleSettings, evaluations_kept: f64) -> Verdict {
     let dimension = history_dimension(history);
     let shape = history.shape();
+    let table = ScoreTable::new(shape.even().rows());
     let diagnostics: Vec<ParameterDiagnostics> = (0..dimension)
         .into_par_iter()
-        .map(|parameter| diagnose_ensembles(&history.column(parameter), shape.ensembles, shape.walkers))
+        .map(|parameter| diagnose(&history.column(parameter), shape, &table))
         .collect();
     let figures: Vec<Figures> = diagnostics
         .iter()

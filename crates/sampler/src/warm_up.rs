@@ -7,8 +7,8 @@ use rayon::prelude::*;
 /// Integrated autocorrelation times that must lie behind the end of warm-up.
 const TIMES_BEFORE: f64 = 2.0;
 
-/// Integrated autocorrelation times that must follow it, so that the time itself is known (to about a third).
-const TIMES_AFTER: f64 = 20.0;
+/// Integrated autocorrelation times that must follow it, so that the time itself is known (to about a half).
+const TIMES_AFTER: f64 = 10.0;
 
 /// Standard errors by which the first and the last part of what is kept may differ. With some twenty quantities looked
 /// at, a settled chain fails one look in a thousand, and is then looked at again.
@@ -51,7 +51,7 @@ fn series(history: &History) -> Vec<Vec<Vec<f64>>> {
             let values =
                 if quantity < dimension { history.column(quantity) } else { history.log_posterior() };
             let means = shape.ensemble_means(&values);
-            means.iter().map(<[f64]>::to_vec).collect()
+            means.blocks().map(<[f64]>::to_vec).collect()
         })
         .collect()
 }

@@ -11,8 +11,8 @@
 
 use super::ess::effective_samples;
 use super::quantiles::{quantile_of_sorted, sorted};
-use super::ranks::{Chains, mean, rank_normalise, squares_about};
-use super::rhat::{classic, rank_normalised};
+use super::ranks::{Chains, Order, ScoreTable, Scores, mean, squares_about};
+use super::rhat::{classic, larger};
 use serde::{Deserialize, Serialize};
 
 /// What the draws of one parameter say, and how well.
@@ -58,25 +58,35 @@ impl ParameterDiagnostics {
 /// Diagnostics of one quantity over ensembles of walkers.
 ///
 /// `values` are ordered by ensemble, then step, then walker (as the rows of a [`crate::Chain`]). All NaN where the length
-/// is no multiple of `ensembles · walkers`, where there are fewer than 4 steps, or where a value is not finite.
+/// is no multiple of `ensembles · walkers`, where there are fewer than 4 steps, or where a value is not finite. Of an odd
+/// number of steps, the first is left out of the effective samples and R̂, so that both halves are equal.
 pub fn diagnose_ensembles(values: &[f64], ensembles: usize, walkers: usize) -> ParameterDiagnostics {
     let group = ensembles * walkers;
-    if group == 0 || !values.len().is_multiple_of(group) || values.iter().any(|value| !value.is_finite()) {
+    if group == 0 || !values.len().is_multiple_of(group) {
         return ParameterDiagnostics::UNKNOWN;
     }
     let shape = Shape { ensembles, walkers, steps: values.len() / group };
-    if shape.steps < 4 {
+    diagnose(values, shape, &ScoreTable::new(shape.even().rows()))
+}
+
+/// [`diagnose_ensembles`] with a table of scores that fits [`Shape::even`], to be shared between quantities.
+pub(crate) fn diagnose(values: &[f64], shape: Shape, table: &ScoreTable) -> ParameterDiagnostics {
+    if shape.steps < 4 || values.iter().any(|value| !value.is_finite()) {
         return ParameterDiagnostics::UNKNOWN;
     }
-    let sorted = sorted(values);
+    let even = shape.even();
+    let trimmed = shape.last_steps(values, even.steps);
+    let order = Order::new(&trimmed);
+    let sorted = if even.steps == shape.steps { order.sorted() } else { sorted(values) };
+    let scores = Scores::new(&order, table);
     let at = |p: f64| quantile_of_sorted(&sorted, p);
     let centre = mean(values);
     let variance = squares_about(values, centre) / (values.len() as f64 - 1.0);
-    let ess_mean = shape.effective_samples(values);
+    let ess_mean = even.effective_samples(&trimmed);
     let tail = |p: f64| {
         let level = at(p);
-        let indicator: Vec<f64> = values.iter().map(|value| f64::from(u8::from(*value <= level))).collect();
-        shape.effective_samples(&indicator)
+        let indicator: Vec<f64> = trimmed.iter().map(|value| f64::from(u8::from(*value <= level))).collect();
+        even.effective_samples(&indicator)
     };
     ParameterDiagnostics {
         mean: centre,
@@ -84,10 +94,10 @@ pub fn diagnose_ensembles(values: &[f64], ensembles: usize, walkers: usize) -> P
         median: at(0.5),
         interval68: (at(0.16), at(0.84)),
         interval95: (at(0.025), at(0.975)),
-        ess_bulk: shape.effective_samples(&rank_normalise(values)),
+        ess_bulk: even.effective_samples(&scores.bulk),
         ess_tail: tail(0.05).min(tail(0.95)),
         ess_mean,
-        rhat: shape.rhat(values),
+        rhat: larger(even.rhat(&scores.bulk), even.rhat(&scores.folded)),
         mcse: (variance / ess_mean).sqrt(),
     }
 }
@@ -101,20 +111,32 @@ pub(crate) struct Shape {
 }
 
 impl Shape {
+    /// Number of rows.
+    pub(crate) fn rows(self) -> usize {
+        self.ensembles * self.walkers * self.steps
+    }
+
+    /// The same with an even number of steps, one fewer if need be.
+    pub(crate) fn even(self) -> Self {
+        Self { steps: self.steps / 2 * 2, ..self }
+    }
+
+    /// The last `steps` steps of every ensemble.
+    fn last_steps(self, values: &[f64], steps: usize) -> Vec<f64> {
+        let skipped = (self.steps - steps) * self.walkers;
+        let ensembles = values.chunks_exact(self.steps * self.walkers);
+        ensembles.flat_map(|ensemble| &ensemble[skipped..]).copied().collect()
+    }
+
     /// Every walker as a chain.
-    pub(crate) fn walker_chains(self, values: &[f64]) -> Chains {
-        let mut chains = Vec::with_capacity(values.len());
-        for ensemble in values.chunks_exact(self.steps * self.walkers) {
-            for walker in 0..self.walkers {
-                chains.extend(ensemble.iter().skip(walker).step_by(self.walkers));
-            }
-        }
-        Chains { values: chains, length: self.steps }
+    fn walker_chains(self, values: &[f64]) -> Chains {
+        Chains { values: values.to_vec(), length: self.steps, width: self.walkers }
     }
 
     /// The mean over each ensemble, step by step, as a chain.
     pub(crate) fn ensemble_means(self, values: &[f64]) -> Chains {
-        Chains { values: values.chunks_exact(self.walkers).map(mean).collect(), length: self.steps }
+        let values = values.chunks_exact(self.walkers).map(mean).collect();
+        Chains { values, length: self.steps, width: 1 }
     }
 
     /// Effective samples of the mean of `values`: the smaller of both routes.
@@ -139,11 +161,9 @@ impl Shape {
     }
 
     /// The larger of R̂ of walkers and R̂ of ensembles.
-    pub(crate) fn rhat(self, values: &[f64]) -> f64 {
-        let walkers = rank_normalised(&self.walker_chains(values).split());
-        let whole = Chains { values: values.to_vec(), length: self.steps * self.walkers };
-        let ensembles = rank_normalised(&whole.split());
-        if walkers.is_nan() || ensembles.is_nan() { f64::NAN } else { walkers.max(ensembles) }
+    fn rhat(self, values: &[f64]) -> f64 {
+        let whole = Chains { values: values.to_vec(), length: self.steps * self.walkers, width: 1 };
+        larger(classic(&self.walker_chains(values).split()), classic(&whole.split()))
     }
 }
 

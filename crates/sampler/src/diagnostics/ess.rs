@@ -1,8 +1,7 @@
 //! Effective sample sizes and the Monte Carlo error of a mean.
 
-use super::autocorrelation::autocovariance;
 use super::quantiles::{quantile_of_sorted, sorted};
-use super::ranks::{Chains, mean, rank_normalise, squares_about};
+use super::ranks::{Chains, Order, ScoreTable, mean, squares_about};
 
 /// Effective samples of the rank-normalised draws: how well the bulk is known (Vehtari et al. 2021, §4).
 ///
@@ -11,7 +10,8 @@ use super::ranks::{Chains, mean, rank_normalise, squares_about};
 pub fn ess_bulk<C: AsRef<[f64]>>(chains: &[C]) -> f64 {
     valid(chains).map_or(f64::NAN, |gathered| {
         let split = gathered.split();
-        effective_samples(&split.with(rank_normalise(&split.values)))
+        let scores = Order::new(&split.values).scores(&ScoreTable::new(split.values.len()));
+        effective_samples(&split.with(scores))
     })
 }
 
@@ -70,11 +70,9 @@ pub(crate) fn effective_samples(chains: &Chains) -> f64 {
         return total;
     }
     let draws = length as f64;
-    let means: Vec<f64> = chains.iter().map(mean).collect();
-    let covariance = |lag: usize| -> f64 {
-        chains.iter().zip(&means).map(|(chain, centre)| autocovariance(chain, *centre, lag)).sum::<f64>()
-            / count as f64
-    };
+    let means = chains.means();
+    let centred = chains.centred(&means);
+    let covariance = |lag: usize| centred.autocovariance(lag);
     let within = covariance(0) * draws / (draws - 1.0);
     let mut variance = within * (draws - 1.0) / draws;
     if count > 1 {

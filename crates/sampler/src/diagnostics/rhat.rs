@@ -1,7 +1,6 @@
 //! Potential scale reduction R̂.
 
-use super::quantiles::median;
-use super::ranks::{Chains, mean, rank_normalise, squares_about};
+use super::ranks::{Chains, Order, ScoreTable, Scores, mean, squares_about};
 
 /// Rank-normalised split R̂: the larger of that of the rank-normalised draws (location) and that of their rank-normalised
 /// distances from the median (scale) (Vehtari et al. 2021, eqs. 4 and §3).
@@ -24,25 +23,22 @@ pub fn split_rhat<C: AsRef<[f64]>>(chains: &[C]) -> f64 {
 }
 
 /// The larger of bulk and folded R̂ of chains that are split already.
-pub(crate) fn rank_normalised(split: &Chains) -> f64 {
-    let bulk = classic(&split.with(rank_normalise(&split.values)));
-    let centre = median(&split.values);
-    let folded: Vec<f64> = split.values.iter().map(|value| (value - centre).abs()).collect();
-    let tail = classic(&split.with(rank_normalise(&folded)));
-    // f64::max would hide a NaN.
-    if bulk.is_nan() || tail.is_nan() { f64::NAN } else { bulk.max(tail) }
+fn rank_normalised(split: &Chains) -> f64 {
+    let table = ScoreTable::new(split.values.len());
+    let scores = Scores::new(&Order::new(&split.values), &table);
+    larger(classic(&split.with(scores.bulk)), classic(&split.with(scores.folded)))
+}
+
+/// The larger of two; NaN if one is, which `f64::max` would hide.
+pub(crate) fn larger(a: f64, b: f64) -> f64 {
+    if a.is_nan() || b.is_nan() { f64::NAN } else { a.max(b) }
 }
 
 /// √((B/W + N − 1)/N), B = N · variance of the chain means, W = mean of the chain variances (Gelman & Rubin 1992).
 pub(crate) fn classic(chains: &Chains) -> f64 {
     let length = chains.length as f64;
-    let means: Vec<f64> = chains.iter().map(mean).collect();
-    let within = chains
-        .iter()
-        .zip(&means)
-        .map(|(chain, centre)| squares_about(chain, *centre) / (length - 1.0))
-        .sum::<f64>()
-        / means.len() as f64;
+    let means = chains.means();
+    let within = chains.centred(&means).autocovariance(0) * length / (length - 1.0);
     let between = length * squares_about(&means, mean(&means)) / (means.len() as f64 - 1.0);
     ((between / within + length - 1.0) / length).sqrt()
 }

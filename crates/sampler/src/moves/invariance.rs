@@ -3,11 +3,12 @@
 //! Walkers that start as independent draws of the target stay just that, whatever the number of steps; so the test is exact:
 //! after a few steps every coordinate must still follow its distribution function. An error in a Hastings factor shifts it.
 
-use super::{Mixture, move_families};
+use super::{Fit, Mixture, move_families, weights};
 use crate::chain::BestPoint;
 use crate::ensemble::{Ensemble, Lane, streams};
 use crate::priors::{Gamma, Normal, Prior};
 use crate::target::{EvaluationFailure, Target};
+use nalgebra::DMatrix;
 
 /// x from a gamma density (shape 3), y from a normal about x²/4 with a fifth of x as standard deviation: skew, curved,
 /// bounded, of changing width.
@@ -60,7 +61,13 @@ fn departure(dimension: usize, weights: &[(String, f64)]) -> (f64, f64) {
     const WALKERS: usize = 8;
     const STEPS: usize = 5;
     let target = Curved::new(dimension);
-    let mixture = Mixture::new(&vec![1.5; dimension], weights).unwrap();
+    // Deliberately off in place, width and direction.
+    let fit = Fit::new(
+        vec![2.5; dimension],
+        DMatrix::from_fn(dimension, dimension, |i, j| 4.0 * 0.5f64.powi((i != j).into())),
+    )
+    .unwrap();
+    let mixture = Mixture::new(&fit, weights).unwrap();
     let moves = mixture.names().len();
     let mut heights = vec![vec![]; dimension];
     let mut counts = vec![(0, 0); moves];
@@ -109,7 +116,7 @@ fn every_move_leaves_the_target_invariant() {
             assert!(departure < 2.0, "{} in {dimension} dimensions: {departure}", family.name);
             assert!(acceptance > 0.1, "{} in {dimension} dimensions hardly moves: {acceptance}", family.name);
         }
-        let (departure, _) = departure(dimension, &[]);
+        let (departure, _) = departure(dimension, &weights(&[]).unwrap());
         assert!(departure < 2.0, "mixture in {dimension} dimensions: {departure}");
     }
 }

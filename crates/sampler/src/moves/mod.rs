@@ -5,12 +5,15 @@
 //! To add a move: one file with one type that implements [`Move`], and one line in [`move_families`].
 
 mod differential_evolution;
+mod independence;
 #[cfg(test)]
 mod invariance;
 mod snooker;
 mod stretch;
 
 pub use differential_evolution::DifferentialEvolution;
+pub(crate) use independence::mean_and_covariance;
+pub use independence::{Fit, Independence};
 pub use snooker::Snooker;
 pub use stretch::Stretch;
 
@@ -94,36 +97,43 @@ pub struct MoveFamily {
     pub summary: &'static str,
     /// Weight in the default mixture.
     pub default_weight: f64,
-    build: fn(&[f64]) -> Box<dyn Move>,
+    build: fn(&Fit) -> Box<dyn Move>,
 }
 
 impl MoveFamily {
-    /// The move for points whose coordinates have these typical widths, all above 0 (as many as coordinates).
-    pub fn build(&self, widths: &[f64]) -> Box<dyn Move> {
-        (self.build)(widths)
+    /// The move for a target that looks about like `fit`. Of the moves, only the independence move leans on it; a poor fit
+    /// makes that one slow, and none of them wrong.
+    pub fn build(&self, fit: &Fit) -> Box<dyn Move> {
+        (self.build)(fit)
     }
 }
 
-/// Every move that needs nothing but the ensemble.
+/// Every move.
 pub fn move_families() -> &'static [MoveFamily] {
     const FAMILIES: &[MoveFamily] = &[
         MoveFamily {
             name: Stretch::NAME,
             summary: "along the line to another walker (Goodman & Weare 2010)",
             default_weight: 0.2,
-            build: |widths| Box::new(Stretch::new(widths.len())),
+            build: |fit| Box::new(Stretch::new(fit.dimension())),
         },
         MoveFamily {
             name: DifferentialEvolution::NAME,
             summary: "by the difference of two other walkers (ter Braak 2006)",
             default_weight: 0.7,
-            build: |widths| Box::new(DifferentialEvolution::new(widths.len())),
+            build: |fit| Box::new(DifferentialEvolution::new(fit.dimension())),
         },
         MoveFamily {
             name: Snooker::NAME,
             summary: "along the line to another walker, by the projected difference of two (ter Braak & Vrugt 2008)",
             default_weight: 0.1,
-            build: |widths| Box::new(Snooker::new(widths)),
+            build: |fit| Box::new(Snooker::new(&fit.widths())),
+        },
+        MoveFamily {
+            name: Independence::NAME,
+            summary: "anywhere, from a Student t fitted during warm-up (Hastings 1970)",
+            default_weight: 9.0,
+            build: |fit| Box::new(Independence::new(fit.clone())),
         },
     ];
     FAMILIES
@@ -137,26 +147,14 @@ pub struct Mixture {
 }
 
 impl Mixture {
-    /// The mixture of the given weights by registry name, or of the defaults if there are none, for points whose
-    /// coordinates have these typical widths.
-    ///
-    /// # Errors
-    /// [`SamplerError::Setting`] for an unknown name, a weight that is negative or not finite, or a sum of zero.
-    pub fn new(widths: &[f64], weights: &[(String, f64)]) -> Result<Self, SamplerError> {
-        let chosen: Vec<(&MoveFamily, f64)> = if weights.is_empty() {
-            move_families().iter().map(|family| (family, family.default_weight)).collect()
-        } else {
-            weights.iter().map(|(name, weight)| named(name, *weight)).collect::<Result<_, _>>()?
-        };
-        let total: f64 = chosen.iter().map(|(_, weight)| weight).sum();
-        if !(total > 0.0) {
-            return Err(weight_error("above 0 in sum", total.to_string()));
-        }
-        let mut sum = 0.0;
+    /// The mixture of moves with these weights by registry name (as [`weights`] makes them) for a target like `fit`.
+    pub fn new(fit: &Fit, weights: &[(String, f64)]) -> Result<Self, SamplerError> {
+        let total: f64 = weights.iter().map(|(_, weight)| weight).sum();
         let mut made = Self { moves: vec![], cumulative: vec![] };
-        for (family, weight) in chosen.into_iter().filter(|(_, weight)| *weight > 0.0) {
+        let mut sum = 0.0;
+        for (name, weight) in weights {
             sum += weight / total;
-            made.moves.push(family.build(widths));
+            made.moves.push(named(name)?.build(fit));
             made.cumulative.push(sum);
         }
         Ok(made)
@@ -179,8 +177,32 @@ impl Mixture {
     }
 }
 
-fn named(name: &str, weight: f64) -> Result<(&'static MoveFamily, f64), SamplerError> {
-    let family = move_families().iter().find(|family| family.name == name).ok_or_else(|| {
+/// The weights to use: the given ones without those of zero, or the defaults if none are given.
+///
+/// # Errors
+/// [`SamplerError::Setting`] for an unknown name, a weight that is negative or not finite, or a sum of zero; and for a
+/// mixture of the independence move alone, which could not correct a poor fit.
+pub fn weights(given: &[(String, f64)]) -> Result<Vec<(String, f64)>, SamplerError> {
+    let all: Vec<(String, f64)> = if given.is_empty() {
+        move_families().iter().map(|family| (family.name.to_owned(), family.default_weight)).collect()
+    } else {
+        given.to_vec()
+    };
+    for (name, weight) in &all {
+        named(name)?;
+        if !(*weight >= 0.0 && weight.is_finite()) {
+            return Err(weight_error("finite and not negative", weight.to_string()));
+        }
+    }
+    let used: Vec<(String, f64)> = all.into_iter().filter(|(_, weight)| *weight > 0.0).collect();
+    if used.iter().all(|(name, _)| name == Independence::NAME) {
+        return Err(weight_error("above 0 for a move other than `independence`", "0".to_owned()));
+    }
+    Ok(used)
+}
+
+fn named(name: &str) -> Result<&'static MoveFamily, SamplerError> {
+    move_families().iter().find(|family| family.name == name).ok_or_else(|| {
         let known: Vec<&str> = move_families().iter().map(|family| family.name).collect();
         SamplerError::Setting {
             setting: "move_weights",
@@ -188,12 +210,7 @@ fn named(name: &str, weight: f64) -> Result<(&'static MoveFamily, f64), SamplerE
             value: format!("`{name}`"),
             way_out: "correct the name, or leave the weights out for the defaults",
         }
-    })?;
-    if weight >= 0.0 && weight.is_finite() {
-        Ok((family, weight))
-    } else {
-        Err(weight_error("finite and not negative", weight.to_string()))
-    }
+    })
 }
 
 fn weight_error(rule: &str, value: String) -> SamplerError {

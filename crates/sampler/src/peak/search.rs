@@ -212,7 +212,7 @@ fn climb<'a, T: Target>(
     start: &[f64],
 ) -> (Vec<f64>, Evaluator<'a, T>) {
     const MEMORY: usize = 12;
-    const ITERATIONS: u64 = 200;
+    const ITERATIONS: u64 = 25;
     let unbounded = coordinates.to_unbounded(start);
     let dimension = coordinates.dimension();
     let mut point = vec![0.0; dimension];
@@ -230,7 +230,7 @@ fn climb<'a, T: Target>(
     };
     let solver = LBFGS::new(MoreThuenteLineSearch::new(), MEMORY)
         .with_tolerance_grad(1e-3)
-        .and_then(|solver| solver.with_tolerance_cost(1e-6));
+        .and_then(|solver| solver.with_tolerance_cost(1e-2));
     if let Ok(solver) = solver {
         // An error of the solver (a line search that found nothing) still leaves the best point seen.
         let _ = Executor::new(&descent, solver)

@@ -1,0 +1,182 @@
+//! The independence move: proposals from a fixed Student t fitted beforehand.
+
+use super::{Move, Others, Random};
+use nalgebra::{Cholesky, DMatrix, DVector};
+use rand::RngExt;
+use rand_distr::{Distribution, StandardNormal};
+use serde::{Deserialize, Serialize};
+
+/// A location and a scale matrix, ready to draw from and to measure distances with.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Fit {
+    location: Vec<f64>,
+    /// Lower Cholesky factor, row after row, triangle packed.
+    lower: Vec<f64>,
+    /// Its inverse, packed the same way.
+    inverse: Vec<f64>,
+}
+
+impl Fit {
+    /// From a location and a covariance; `None` where the covariance is not positive definite or not finite.
+    pub fn new(location: Vec<f64>, covariance: DMatrix<f64>) -> Option<Self> {
+        let dimension = location.len();
+        let finite = covariance.iter().chain(&location).all(|entry| entry.is_finite());
+        if !finite || covariance.nrows() != dimension {
+            return None;
+        }
+        // Cholesky of the correlations: scales that differ by many orders of magnitude do not lose digits.
+        let widths = covariance.diagonal().map(f64::sqrt);
+        if !widths.iter().all(|width| *width > 0.0) {
+            return None;
+        }
+        let correlation =
+            DMatrix::from_fn(dimension, dimension, |i, j| covariance[(i, j)] / (widths[i] * widths[j]));
+        let lower = DMatrix::from_diagonal(&widths) * Cholesky::new(correlation)?.l();
+        let inverse = lower.solve_lower_triangular(&DMatrix::identity(dimension, dimension))?;
+        let pack = |matrix: &DMatrix<f64>| -> Vec<f64> {
+            (0..dimension)
+                .flat_map(|row| (0..=row).map(move |column| (row, column)))
+                .map(|at| matrix[at])
+                .collect()
+        };
+        Some(Self { location, lower: pack(&lower), inverse: pack(&inverse) })
+    }
+
+    /// Number of coordinates.
+    pub fn dimension(&self) -> usize {
+        self.location.len()
+    }
+
+    /// Standard deviations of the coordinates.
+    pub fn widths(&self) -> Vec<f64> {
+        let row = |row: usize| &self.lower[row * (row + 1) / 2..(row + 1) * (row + 2) / 2];
+        (0..self.dimension())
+            .map(|at| row(at).iter().map(|entry| entry * entry).sum::<f64>().sqrt())
+            .collect()
+    }
+
+    /// Location.
+    pub fn location(&self) -> &[f64] {
+        &self.location
+    }
+
+    /// Covariance.
+    pub fn covariance(&self) -> DMatrix<f64> {
+        let dimension = self.dimension();
+        let mut lower = DMatrix::zeros(dimension, dimension);
+        let mut entries = self.lower.iter();
+        for row in 0..dimension {
+            for (column, entry) in (0..=row).zip(entries.by_ref()) {
+                lower[(row, column)] = *entry;
+            }
+        }
+        &lower * lower.transpose()
+    }
+
+    /// (x − location)ᵀ covariance⁻¹ (x − location); allocates nothing.
+    fn distance_squared(&self, point: &[f64]) -> f64 {
+        let (mut sum, mut from) = (0.0, 0);
+        for row in 0..point.len() {
+            let weights = &self.inverse[from..=from + row];
+            let shifts = point.iter().zip(&self.location);
+            let whitened: f64 = weights.iter().zip(shifts).map(|(weight, (x, m))| weight * (x - m)).sum();
+            sum += whitened * whitened;
+            from += row + 1;
+        }
+        sum
+    }
+
+    /// Replaces independent normals by location + `scale` · L · normals, in place.
+    fn colour(&self, scale: f64, normals: &mut [f64]) {
+        // From the last row up: row i needs the normals up to i, and is the last one to need number i.
+        let mut to = self.lower.len();
+        for row in (0..normals.len()).rev() {
+            let weights = &self.lower[to - row - 1..to];
+            let sum: f64 = weights.iter().zip(&*normals).map(|(weight, normal)| weight * normal).sum();
+            normals[row] = self.location[row] + scale * sum;
+            to -= row + 1;
+        }
+    }
+}
+
+/// Mean and covariance of weighted rows of `dimension` coordinates (each row of the same weight).
+pub(crate) fn mean_and_covariance<'a>(
+    dimension: usize,
+    rows: impl Iterator<Item = &'a [f64]> + Clone,
+) -> (DVector<f64>, DMatrix<f64>) {
+    let (mut mean, mut count) = (DVector::zeros(dimension), 0.0);
+    for row in rows.clone() {
+        count += 1.0;
+        for (sum, x) in mean.iter_mut().zip(row) {
+            *sum += x;
+        }
+    }
+    mean /= count;
+    let mut covariance = DMatrix::zeros(dimension, dimension);
+    for row in rows {
+        for i in 0..dimension {
+            let shift = row[i] - mean[i];
+            for j in 0..=i {
+                covariance[(i, j)] += shift * (row[j] - mean[j]);
+            }
+        }
+    }
+    covariance.fill_upper_triangle_with_lower_triangle();
+    covariance /= count;
+    (mean, covariance)
+}
+
+/// Proposes x′ from a multivariate Student t of twelve degrees of freedom about a fixed fit, wherever the walker is; factor
+/// q(x)/q(x′) (Hastings 1970, Biometrika 57, 97, §2.5; Tierney 1994, Ann. Stat. 22, 1701, §2.3.3).
+///
+/// The tails of the t keep the ratio target/proposal bounded for any target with normal tails.
+#[derive(Debug, Clone)]
+pub struct Independence {
+    fit: Fit,
+    power: f64,
+}
+
+impl Independence {
+    /// Registry name.
+    pub const NAME: &'static str = "independence";
+
+    /// Half the degrees of freedom.
+    const HALF_FREEDOM: i32 = 6;
+
+    /// The move with proposals about `fit`.
+    pub fn new(fit: Fit) -> Self {
+        let power = 0.5 * (2.0 * f64::from(Self::HALF_FREEDOM) + fit.dimension() as f64);
+        Self { fit, power }
+    }
+
+    /// Log density of the proposals, without its constant, at a squared distance.
+    fn log_density(&self, distance_squared: f64) -> f64 {
+        -self.power * (distance_squared / (2.0 * f64::from(Self::HALF_FREEDOM))).ln_1p()
+    }
+}
+
+impl Move for Independence {
+    fn name(&self) -> &'static str {
+        Self::NAME
+    }
+
+    fn propose(
+        &self,
+        current: &[f64],
+        _others: Others<'_>,
+        random: &mut Random,
+        proposal: &mut [f64],
+    ) -> f64 {
+        let mut squares = 0.0;
+        for entry in proposal.iter_mut() {
+            let normal: f64 = StandardNormal.sample(random);
+            *entry = normal;
+            squares += normal * normal;
+        }
+        // χ² of 2k degrees of freedom is −2 ln of a product of k uniform numbers in (0, 1].
+        let product: f64 = (0..Self::HALF_FREEDOM).map(|_| 1.0 - random.random::<f64>()).product();
+        let scale_squared = f64::from(Self::HALF_FREEDOM) / -product.ln();
+        self.fit.colour(scale_squared.sqrt(), proposal);
+        self.log_density(self.fit.distance_squared(current)) - self.log_density(scale_squared * squares)
+    }
+}
