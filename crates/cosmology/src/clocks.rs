@@ -45,7 +45,7 @@ const WIGGLES_UNTIL: f64 = 0.4;
 /// Where the integral starts, h/Mpc: there the integrand goes like k², and 10⁻¹⁵ of c² lies below.
 const LOWEST: f64 = 1e-7;
 
-/// Where it ends, h/Mpc: with no damping at all, less than 10⁻¹⁰ of c² lies above.
+/// Where it ends, h/Mpc: e^(−k²·damping²) is below 10⁻³⁵ there for a damping of 0.45 Mpc/h or more.
 const HIGHEST: f64 = 20.0;
 
 /// Points of each panel.
@@ -55,17 +55,19 @@ const POINTS: usize = 8;
 ///
 /// c(d,z)² = 2 ∫k²dk/2π² [(3/2) Ωm(a) H² T(k)/k²]² D(k)² P(k) exp(−k² damping²) [1 − j₀(kd)].
 ///
-/// `distortion` is T(k) at the setting's redshift: how many times stronger the time distortion is than in general relativity;
-/// `growth` is D(k,a)/D_GR(1). Both may jump only at the ends of the `reached` range. With a table of the power the integral
-/// runs over the table's own range, and what lies outside is missing from c.
+/// `distortion` is T(k) at the setting's redshift: how many times stronger the time distortion is than in general
+/// relativity; `growth` is D(k,a)/D_GR(1). Both may jump only at the ends of the `reached` range. With a table of the
+/// power the integral runs over the table's own range, and what lies outside is missing from c.
 ///
-/// Gauss-Legendre of 8 points on panels as narrow as half a period of j₀(kd), as the acoustic wiggles ask for, and as a factor of
-/// 1.8 in k; good to 10⁻⁹ for smooth T and D, d from 0.1 to 500 Mpc/h. 1 − j₀ comes from its series where it would cancel.
-/// The rms of Ψ alone would diverge at low k; of the difference it doesn't, since 1 − j₀ falls like k².
+/// Gauss-Legendre of 8 points on panels as narrow as half a period of j₀(kd), as the acoustic wiggles ask for, and as
+/// a factor of 1.8 in k. Against a rule thirty times as fine it is good to 10⁻⁹ for smooth T and D, d from 0.1 to
+/// 2000 Mpc/h and a damping of at least 0.45 Mpc/h; without damping what lies above 20 h/Mpc is missing, 10⁻⁹ of c
+/// for 50 Mpc/h and 10⁻⁶ for 1 Mpc/h. 1 − j₀ comes from its series where it would cancel. The rms of Ψ alone would
+/// diverge at low k; of the difference it doesn't, since 1 − j₀ falls like k².
 ///
 /// # Errors
-/// A redshift below 0, a distance not above 0, a damping below 0, a range that is upside down; E² ≤ 0 at the redshift; T or D
-/// that is not finite.
+/// A redshift below 0, a distance not above 0, a damping below 0, a range that is upside down; E² ≤ 0 at the
+/// redshift; T or D that is not finite.
 pub fn clock_contrast(
     background: &Background,
     power: &LinearPower,

@@ -79,13 +79,13 @@ impl System<f64, Vector3<f64>> for Equation<'_> {
 /// f′ comes from the equation, f′ = (3/2) Ωm G − f² − (2 + d ln E/d ln a) f, not from a difference.
 ///
 /// The unknown is g = D/a, which stays of order one and is constant as long as matter dominates, so that the relative
-/// tolerance of the Runge-Kutta method (Dormand & Prince, order 8(5,3), crate `ode_solvers`) means the same at all times.
-/// The integration runs once through the sorted scale factors, stopping at each: the interpolation between steps is of
-/// order 7 only. D and f are good to 1e-10.
+/// tolerance of the Runge-Kutta method (Dormand & Prince, order 8(5,3), crate `ode_solvers`) means the same at all
+/// times. The integration runs once through the sorted scale factors, stopping at each: the interpolation between
+/// steps is of order 7 only. D and f are good to 1e-10.
 ///
 /// # Errors
-/// A scale factor outside [10⁻³, 1]; E² ≤ 0 on the way from a = 10⁻³ to today; G that is not finite, or so rough that steps
-/// shrink to nothing, or so negative (−1 from early on) that D falls to 0.
+/// A scale factor outside [10⁻³, 1]; E² ≤ 0 on the way from a = 10⁻³ to today; G that is not finite, or so rough that
+/// steps shrink to nothing, or so negative (−1 from early on) that D falls to 0.
 pub fn growth_history(
     background: &Background,
     gravity: &dyn Fn(f64) -> f64,
@@ -185,8 +185,8 @@ fn check_scale_factors(background: &Background, scale_factors: &[f64]) -> Result
     Ok(())
 }
 
-/// As [`growth_history`], with D divided by today's in general relativity (G = 1) from the same start: what multiplies a
-/// field whose σ8 is today's in general relativity.
+/// As [`growth_history`], with D divided by today's in general relativity (G = 1) from the same start: what
+/// multiplies a field whose σ8 is today's in general relativity.
 pub fn growth_states(
     background: &Background,
     gravity: &dyn Fn(f64) -> f64,

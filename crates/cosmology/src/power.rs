@@ -62,7 +62,8 @@ impl Shape {
     }
 }
 
-/// Wavenumbers (h/Mpc) and weights with σ² = Σ weight P(k) = ∫k²dk/2π² P W², for the shapes that have no range of their own.
+/// Wavenumbers (h/Mpc) and weights with σ² = Σ weight P(k) = ∫k²dk/2π² P W², for the shapes that have no range of
+/// their own.
 ///
 /// Where panels end, and why:
 /// * 10⁻⁶ to 0.01, even in ln k: smooth; below, k⁴ P/k leaves less than 10⁻¹⁶ of σ²;
@@ -150,7 +151,8 @@ impl LinearPower {
     /// P at each of `k`, into `out`.
     ///
     /// # Errors
-    /// `out` of another length; a wavenumber that is not above 0 or lies outside a table (the error names the range needed).
+    /// `out` of another length; a wavenumber that is not above 0 or lies outside a table (the error names the range
+    /// needed).
     pub fn tabulate(&self, k: &[f64], out: &mut [f64]) -> Result<(), CosmologyError> {
         if k.len() != out.len() {
             return Err(CosmologyError::Length { what: "powers", given: out.len(), wanted: k.len() });
@@ -210,8 +212,8 @@ fn check_sigma8(sigma8: f64) -> Result<(), CosmologyError> {
     })
 }
 
-/// σ² of a table over its own range: between two entries ln P is a cubic, so panels end at the entries, and are cut further
-/// where W² oscillates within one.
+/// σ² of a table over its own range: between two entries ln P is a cubic, so panels end at the entries, and are cut
+/// further where W² oscillates within one.
 fn table_variance(table: &PowerTable) -> f64 {
     let mut edges = vec![table.range().0];
     for pair in table.log_wavenumbers().windows(2) {

@@ -42,8 +42,8 @@ fn worked_values() {
     near(contrast.seconds_per_year(), 404.3, 0.05, "seconds a year");
 }
 
-/// Source: SciPy 1.17.1's adaptive quadrature on pieces, relative tolerance 1e-11 (tests/reference/README.md). Growth there is the
-/// closed form's, which differs by less than 1e-9.
+/// Source: SciPy 1.17.1's adaptive quadrature on pieces, relative tolerance 1e-11 (tests/reference/README.md). Growth
+/// there is the closed form's, which differs by less than 1e-9.
 #[test]
 fn against_adaptive_quadrature() {
     let (background, power) = universe();
@@ -76,7 +76,8 @@ fn scales_as_it_should() {
     close(near_by(1e-3) / near_by(1e-4), 10.0, 1e-6, "distance");
 }
 
-/// T and D that depend on the wavenumber stand inside the integral: a T that is 1 in a range and 0 elsewhere leaves the share.
+/// T and D that depend on the wavenumber stand inside the integral: a T that is 1 in a range and 0 elsewhere leaves
+/// the share.
 #[test]
 fn functions_of_wavenumber() {
     let (background, power) = universe();

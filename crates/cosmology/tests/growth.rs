@@ -19,11 +19,11 @@ fn flat(omega_m: f64) -> Background {
 
 /// Source: Heath 1977 in the hypergeometric form, by SciPy 1.17.1 (tests/reference/README.md).
 ///
-/// The closed form is the growing mode with D → a. Ours starts at a = 1e-3 with D = D′ = a, which is a mixture: with x = (ΩΛ/Ωm) a³
-/// the growing mode has D/a = 1 − 2x/11 and (D/a)′ = −6x/11 there, the decaying one a slope of −5/2, so D = D′ = a
-/// is (1 + 0.4x) of the growing mode less 0.22x of the decaying one, which by a = 0.05 has died out by 5e-5. With x = 2.2e-9 that is
-/// 9e-10 in D and less than 1e-13 in f, so D is compared after multiplying by 1 + 0.4x, and what is left is the tolerance of
-/// the integration: 1e-11 asked, ten times better than promised.
+/// The closed form is the growing mode with D → a. Ours starts at a = 1e-3 with D = D′ = a, which is a mixture: with
+/// x = (ΩΛ/Ωm) a³ the growing mode has D/a = 1 − 2x/11 and (D/a)′ = −6x/11 there, the decaying one a slope of −5/2,
+/// so D = D′ = a is (1 + 0.4x) of the growing mode less 0.22x of the decaying one, which by a = 0.05 has died out by
+/// 5e-5. With x = 2.2e-9 that is 9e-10 in D and less than 1e-13 in f, so D is compared after multiplying by 1 + 0.4x,
+/// and what is left is the tolerance of the integration: 1e-11 asked, ten times better than promised.
 #[test]
 fn heath_closed_form() {
     for row in rows(include_str!("reference/growth_closed_form.csv")) {
@@ -35,9 +35,9 @@ fn heath_closed_form() {
     }
 }
 
-/// Source: SciPy 1.17.1, solve_ivp in D and D′ from the same start (tests/reference/README.md), for curvature and w0-wa, with
-/// G = 1 + τ Ωde(a)/Ωde(1). Both integrations are good to about 1e-11; 1e-10 is promised. f′ is a difference of terms of
-/// order one, and can be small: absolute.
+/// Source: SciPy 1.17.1, solve_ivp in D and D′ from the same start (tests/reference/README.md), for curvature and
+/// w0-wa, with G = 1 + τ Ωde(a)/Ωde(1). Both integrations are good to about 1e-11; 1e-10 is promised. f′ is a
+/// difference of terms of order one, and can be small: absolute.
 #[test]
 fn independent_integration() {
     for row in rows(include_str!("reference/growth_integrated.csv")) {
@@ -75,9 +75,10 @@ fn matter_alone_with_constant_gravity() {
     }
 }
 
-/// Linder 2005 (Phys. Rev. D 72, 043529) states (quoted from memory) that γ = 0.55 gives the growth of a flat universe with a
-/// cosmological constant to 0.05 %, and γ = 0.55 + 0.05 [1 + w(z=1)] that of w0-wa models with w > −1 to about 0.2 %. Growth there is
-/// counted from matter domination, here from a = 0.01 on. (At Ωm = 0.22 it is 0.0502 %.)
+/// Linder 2005 (Phys. Rev. D 72, 043529) states (quoted from memory) that γ = 0.55 gives the growth of a flat
+/// universe with a cosmological constant to 0.05 %, and γ = 0.55 + 0.05 [1 + w(z=1)] that of w0-wa models with w > −1
+/// to about 0.2 %. Growth there is counted from matter domination, here from a = 0.01 on. (At Ωm = 0.22 it is 0.0502
+/// %.)
 #[test]
 fn linder_growth_index() {
     // Growth since a = 0.01, by index over by equation.
@@ -125,8 +126,8 @@ fn order_of_scale_factors_does_not_matter() {
     assert_eq!(growth_history(&background, &|_| 1.0, &[]).unwrap(), vec![]);
 }
 
-/// A step in G that is 0.01 wide in a: the solver has to find it, and the answer must not depend on where the integration is
-/// stopped before.
+/// A step in G that is 0.01 wide in a: the solver has to find it, and the answer must not depend on where the
+/// integration is stopped before.
 #[test]
 fn a_sharp_step_in_gravity() {
     let background = flat(0.3);
@@ -159,8 +160,8 @@ fn errors_name_the_scale_factor() {
 proptest! {
     #![proptest_config(ProptestConfig { cases: 64, failure_persistence: None, ..ProptestConfig::default() })]
 
-    /// f = d ln D/d ln a and f′ = df/d ln a, by central differences of step 1e-3: off by h²/6 times the third derivative (below
-    /// 10), so by less than 2e-6, and by the integration's 1e-11/h.
+    /// f = d ln D/d ln a and f′ = df/d ln a, by central differences of step 1e-3: off by h²/6 times the third
+    /// derivative (below 10), so by less than 2e-6, and by the integration's 1e-11/h.
     #[test]
     fn rates_are_derivatives(
         omega_m in 0.15..0.6f64, omega_k in -0.1..0.2f64, w0 in -1.2..-0.7f64, wa in -0.4..0.3f64, tau in -0.5..0.5f64,

@@ -49,10 +49,9 @@ fn gradshteyn_ryzhik_6_623() {
     }
 }
 
-/// Gradshteyn & Ryzhik, 6.621.1: ∫ e^(−αx) J_ν(βx) x^(μ−1) dx =
-/// (β/2α)^ν Γ(ν+μ)/(α^μ Γ(ν+1)) ₂F₁((ν+μ)/2, (ν+μ+1)/2; ν+1; −β²/α²), with μ = n + 3/2, ν = l + 1/2, so that ν + μ = l + n + 2 and
-/// ∫ e^(−αx) x^(n+1) jₗ(βx)/… : √(2β/π) ∫ e^(−αx) x^(n+1) jₗ(βx) dx is the left side. The series converges for β < α. n is the power of k
-/// that the terms of a multipole carry: 0, 1 and 2 more than P.
+/// Gradshteyn & Ryzhik, 6.621.1: ∫ e^(−αx) J_ν(βx) x^(μ−1) dx = (β/2α)^ν Γ(ν+μ)/(α^μ Γ(ν+1)) ₂F₁((ν+μ)/2, (ν+μ+1)/2;
+/// ν+1; −β²/α²). With ν = l + 1/2, μ = n + 3/2 and J = √(2βx/π) jₗ(βx) the left side is
+/// √(2β/π) ∫ e^(−αx) x^(n+1) jₗ(βx) dx, and ν + μ = l + n + 2. The series converges for β < α.
 #[test]
 fn gradshteyn_ryzhik_6_621() {
     for order in 0..=4usize {

@@ -13,9 +13,9 @@ use oddwell_cosmology::transfer::{EisensteinHu, EisensteinHuSmooth};
 use oddwell_cosmology::{CosmologyError, LinearPower, PowerShape, PowerTable, composite, spherical_bessel};
 use proptest::prelude::*;
 
-/// Source: Eisenstein & Hu 1998, written out again with 30 digits in mpmath 1.4.1 (tests/reference/README.md). In double
-/// precision the error is a few 1e-16 times the conditioning: q^1.08 by logarithm 1e-15, and where the baryons' sine is large against
-/// T, ks·1e-16 with ks up to 6000.
+/// Source: Eisenstein & Hu 1998, written out again with 30 digits in mpmath 1.4.1 (tests/reference/README.md). In
+/// double precision the error is a few 1e-16 times the conditioning: q^1.08 by logarithm 1e-15, and where the
+/// baryons' sine is large against T, ks·1e-16 with ks up to 6000.
 #[test]
 fn eisenstein_hu_with_many_digits() {
     for row in rows(include_str!("reference/transfer.csv")) {
@@ -31,8 +31,8 @@ fn eisenstein_hu_with_many_digits() {
 }
 
 /// Eisenstein & Hu 1998 say of their equation 26, s ≈ 44.5 ln(9.83/Ω0h²)/√(1 + 10(Ωb h²)^¾) Mpc, that it matches the
-/// sound horizon of equation 6 to about 2 % for Ωb h² above 0.0125 (quoted from memory; at Ω0h² = 0.35 it is 2.4 %, so the check stops
-/// before): two formulas of the paper, each in a file of its own here, hold each other.
+/// sound horizon of equation 6 to about 2 % for Ωb h² above 0.0125 (quoted from memory; at Ω0h² = 0.35 it is 2.4 %,
+/// so the check stops before): two formulas of the paper, each in a file of its own here, hold each other.
 #[test]
 fn sound_horizons_agree_as_the_paper_says() {
     for matter in [0.06, 0.1, 0.14, 0.2, 0.25] {
@@ -58,8 +58,8 @@ fn limits_of_the_transfer_function() {
     }
 }
 
-/// Source: SciPy 1.17.1's adaptive quadrature of σ8 with relative tolerance 1e-11 on pieces, from 1e-6 to 60 h/Mpc, beyond which
-/// 3e-10 of σ² is left (tests/reference/README.md). 1e-9 is what the normalisation promises.
+/// Source: SciPy 1.17.1's adaptive quadrature of σ8 with relative tolerance 1e-11 on pieces, from 1e-6 to 60 h/Mpc,
+/// beyond which 3e-10 of σ² is left (tests/reference/README.md). 1e-9 is what the normalisation promises.
 #[test]
 fn normalisation_to_sigma8() {
     let table = include_str!("reference/power.csv");
@@ -77,8 +77,8 @@ fn frozen_table() -> Arc<PowerTable> {
     Arc::new(PowerTable::new(k, p).unwrap())
 }
 
-/// Source: SciPy 1.17.1, CubicSpline in logarithms (not-a-knot) and adaptive quadrature over the table's own range. The splines
-/// are the same function: rounding only, 60 equations with a condition number below 1e3.
+/// Source: SciPy 1.17.1, CubicSpline in logarithms (not-a-knot) and adaptive quadrature over the table's own range.
+/// The splines are the same function: rounding only, 60 equations with a condition number below 1e3.
 #[test]
 fn table_against_scipy() {
     let table = frozen_table();
@@ -105,8 +105,9 @@ fn table_of_a_cubic_is_exact() {
     }
 }
 
-/// First and second derivative are continuous at the entries. On each side the spline is a cubic, so four-point one-sided
-/// differences are exact but for rounding: 1e-14/h and 1e-14/h² with h = 0.03. A straight-line interpolation would miss by 0.1.
+/// First and second derivative are continuous at the entries. On each side the spline is a cubic, so four-point
+/// one-sided differences are exact but for rounding: 1e-14/h and 1e-14/h² with h = 0.03. A straight-line
+/// interpolation would miss by 0.1.
 #[test]
 fn table_is_smooth_at_its_entries() {
     let table = frozen_table();

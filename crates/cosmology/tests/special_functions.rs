@@ -10,8 +10,9 @@ use oddwell_cosmology::quadrature::{even, geometric};
 use oddwell_cosmology::{composite, gauss_legendre, legendre, spherical_bessel, spherical_bessel_all};
 use proptest::prelude::*;
 
-/// Source: mpmath 1.4.1 with 40 digits (tests/reference/README.md). 1e-13 relative is promised below x = 3; above, 1e-13 away
-/// from zeros and 1e-15/x near one: the sum of both is what recurrences from sin and cos with errors of 1e-16 can do.
+/// Source: mpmath 1.4.1 with 40 digits (tests/reference/README.md). 1e-13 relative is promised below x = 3; above,
+/// 1e-13 away from zeros and 1e-15/x near one: the sum of both is what recurrences from sin and cos with errors of
+/// 1e-16 can do.
 #[test]
 fn bessel_against_many_digits() {
     for row in rows(include_str!("reference/bessel.csv")) {
@@ -26,7 +27,8 @@ fn bessel_against_many_digits() {
     }
 }
 
-/// Source: Abramowitz & Stegun 1964, table 10.1, digits quoted from memory; the frozen values above are the strict check.
+/// Source: Abramowitz & Stegun 1964, table 10.1, digits quoted from memory; the frozen values above are the strict
+/// check.
 #[test]
 fn bessel_against_abramowitz_and_stegun() {
     for (order, x, printed, digits) in [
@@ -53,8 +55,8 @@ fn bessel_at_zero_and_beyond_the_orders() {
 proptest! {
     #![proptest_config(ProptestConfig { failure_persistence: None, ..ProptestConfig::default() })]
 
-    /// DLMF 10.51.1: j_(l−1) + j_(l+1) = (2l+1) jₗ/x. On each side of the change of method at 3 the terms are good to 1e-14 of
-    /// the largest.
+    /// DLMF 10.51.1: j_(l−1) + j_(l+1) = (2l+1) jₗ/x. On each side of the change of method at 3 the terms are good to
+    /// 1e-14 of the largest.
     #[test]
     fn bessel_recurrence(x in 0.01..60.0f64) {
         let j = spherical_bessel_all(x);
@@ -64,8 +66,8 @@ proptest! {
         }
     }
 
-    /// DLMF 10.60.12: Σ (2l+1) jₗ² = 1; the five orders here miss what the next ones hold, below (2·5+1) j₅² and its followers: at x ≤ 1
-    /// under 11·(1/10395)²·1.1 = 1.2e-7.
+    /// DLMF 10.60.12: Σ (2l+1) jₗ² = 1; the five orders here miss what the next ones hold, below (2·5+1) j₅² and its
+    /// followers: at x ≤ 1 under 11·(1/10395)²·1.1 = 1.2e-7.
     #[test]
     fn bessel_sum_rule(x in 0.0..1.0f64) {
         let sum: f64 = spherical_bessel_all(x).iter().enumerate().map(|(l, j)| (2 * l + 1) as f64 * j * j).sum();

@@ -107,9 +107,10 @@ impl EisensteinHu {
 
     /// The same for N wavenumbers whose logarithms are known.
     ///
-    /// This runs for every wavenumber at every evaluation in which the background moves. So powers are exponentials of
-    /// multiples of ln k, fractions are brought to common denominators, and the steps go one at a time through N values: a
-    /// call to a logarithm or sine spills every register, which between the steps of one value costs as much as the calls.
+    /// This runs for every wavenumber at every evaluation in which the background moves. So powers are exponentials
+    /// of multiples of ln k, fractions are brought to common denominators, and the steps go one at a time through N
+    /// values: a call to a logarithm or sine spills every register, which between the steps of one value costs as
+    /// much as the calls.
     pub(crate) fn transfers<const N: usize>(
         &self,
         wavenumber: [f64; N],

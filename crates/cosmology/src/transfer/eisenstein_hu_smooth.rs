@@ -5,8 +5,8 @@ use std::f64::consts::E;
 use super::{CMB_TEMPERATURE, check_densities};
 use crate::errors::CosmologyError;
 
-/// Eisenstein & Hu 1998 (Astrophys. J. 496, 605), equations 26 and 28 to 31: baryons suppress power below the sound horizon,
-/// but do not oscillate. Wavenumbers go in as h/Mpc.
+/// Eisenstein & Hu 1998 (Astrophys. J. 496, 605), equations 26 and 28 to 31: baryons suppress power below the sound
+/// horizon, but do not oscillate. Wavenumbers go in as h/Mpc.
 #[derive(Clone, Copy, Debug)]
 pub struct EisensteinHuSmooth {
     h: f64,

@@ -5,12 +5,12 @@ use crate::errors::CosmologyError;
 /// Fewest entries of a table: a cubic through four points.
 const LEAST: usize = 4;
 
-/// Wavenumbers (h/Mpc) and linear power at z = 0 ((Mpc/h)³, of any amplitude), interpolated by a cubic spline of ln P in
-/// ln k with continuous first and second derivatives.
+/// Wavenumbers (h/Mpc) and linear power at z = 0 ((Mpc/h)³, of any amplitude), interpolated by a cubic spline of ln P
+/// in ln k with continuous first and second derivatives.
 ///
-/// The third derivative is continuous at the second and the last but one wavenumber (the "not-a-knot" end conditions), so
-/// that nothing is assumed of the ends' curvature: a table of a cubic in ln k gives that cubic back. There is no
-/// extrapolation.
+/// The third derivative is continuous at the second and the last but one wavenumber (the "not-a-knot" end
+/// conditions), so that nothing is assumed of the ends' curvature: a table of a cubic in ln k gives that cubic back.
+/// There is no extrapolation.
 #[derive(Clone, Debug, PartialEq)]
 pub struct PowerTable {
     log_k: Vec<f64>,
@@ -25,8 +25,8 @@ impl PowerTable {
     /// Checks the table and prepares the spline.
     ///
     /// # Errors
-    /// Fewer than 4 entries or columns of different length; a wavenumber that is not above 0, not finite or not above the one before;
-    /// a power that is not above 0 or not finite.
+    /// Fewer than 4 entries or columns of different length; a wavenumber that is not above 0, not finite or not above
+    /// the one before; a power that is not above 0 or not finite.
     pub fn new(wavenumber: Vec<f64>, power: Vec<f64>) -> Result<Self, CosmologyError> {
         if wavenumber.len() != power.len() || wavenumber.len() < LEAST {
             return Err(CosmologyError::TableSize {
@@ -91,9 +91,10 @@ impl PowerTable {
 
 /// Second derivatives of the cubic spline through (x, y) with not-a-knot ends.
 ///
-/// The inner equations are hᵢ₋₁ mᵢ₋₁ + 2(hᵢ₋₁ + hᵢ) mᵢ + hᵢ mᵢ₊₁ = 6 (slopeᵢ − slopeᵢ₋₁). Continuity of the third derivative
-/// gives m₀ = m₁ + (m₁ − m₂) h₀/h₁ and the like at the other end; put in, the system is tridiagonal and, unlike with the end
-/// equations kept as rows of their own, needs no pivoting. (de Boor 1978, A Practical Guide to Splines, chapter IV.)
+/// The inner equations are hᵢ₋₁ mᵢ₋₁ + 2(hᵢ₋₁ + hᵢ) mᵢ + hᵢ mᵢ₊₁ = 6 (slopeᵢ − slopeᵢ₋₁). Continuity of the third
+/// derivative gives m₀ = m₁ + (m₁ − m₂) h₀/h₁ and the like at the other end; put in, the system is tridiagonal and,
+/// unlike with the end equations kept as rows of their own, needs no pivoting. (de Boor 1978, A Practical Guide to
+/// Splines, chapter IV.)
 fn spline_curvature(x: &[f64], y: &[f64]) -> Vec<f64> {
     let n = x.len();
     let h: Vec<f64> = x.windows(2).map(|pair| pair[1] - pair[0]).collect();
