@@ -22,6 +22,20 @@ pub enum StudyError {
     /// The study file, or a `--set`, breaks one rule or several.
     #[error("{}", lines(.0))]
     Problems(Vec<Problem>),
+    /// The folder for a new study has something in it.
+    #[error("{}: exists already and is not an empty folder; a new study needs a folder of its own", path.display())]
+    NotEmpty {
+        /// The folder.
+        path: PathBuf,
+    },
+    /// A new study cannot be written.
+    #[error("{}: a new study cannot be written there: {reason}; choose a folder that you may write to", path.display())]
+    Unwritable {
+        /// The folder.
+        path: PathBuf,
+        /// What the system says.
+        reason: String,
+    },
     /// The model has a quantity that the study does not name, or the other way round: a fault of the program.
     #[error(
         "`{name}` is a quantity of the {has} but not of the {lacks}; this is a fault of oddwell, please report it"

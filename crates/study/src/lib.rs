@@ -1,6 +1,6 @@
 //! From a study file to a plan that can be run.
 //!
-//! 1. [`StudyFile`]: the file as typed, every value with its place ([`file`]).
+//! 1. [`StudyFile`]: the file as typed, every value with its place ([`mod@file`]).
 //! 2. [`Study`]: names resolved, rules checked, every hypothesis linked ([`resolve`]).
 //! 3. [`ParameterMap`]: from the free parameters of a hypothesis to the flat vector that a model reads.
 //!
@@ -22,6 +22,7 @@ pub mod assemble;
 pub mod file;
 pub mod record;
 pub mod resolve;
+pub mod template;
 
 pub use describe::{DescribedQuantity, Kind, describe};
 pub use error::{Location, Problem, StudyError};

@@ -203,3 +203,27 @@ fn all<T>(
 fn stem(name: &str) -> String {
     Path::new(name).file_stem().map_or_else(|| "study".to_owned(), |stem| stem.to_string_lossy().into_owned())
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn the_template_explains_every_key_that_is_read() {
+        let text = crate::template::study_text();
+        let source = Source::of_file("study.toml", text.as_str());
+        let reader = Reader::new(&source);
+        let document = Document::parse(source.text()).unwrap();
+        Parts::read(Section::new(&reader, document.as_table(), None, "study", "the study file"), &source);
+        let asked = reader.asked.take();
+        assert!(asked.len() > 50, "{asked:?}");
+        for (section, key) in asked.into_iter().filter(|(section, _)| *section != "columns") {
+            let shown = text.contains(&format!("{key} = "))
+                || text.contains(&format!("[{key}]"))
+                || text.contains(&format!(".{key}]"))
+                || (section == "keep"
+                    && text.lines().any(|line| line.starts_with("# An entry") && line.contains(&key)));
+            assert!(shown, "`{key}` of {section}");
+        }
+    }
+}

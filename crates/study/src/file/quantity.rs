@@ -175,10 +175,7 @@ impl Section<'_> {
         let Err(cause) = spec.build() else {
             return Some(Quantity::Prior(spec));
         };
-        let of_window = matches!(
-            cause,
-            PriorError::InvertedBounds { family: "within", .. } | PriorError::EmptyWindow { .. }
-        );
+        let of_window = matches!(cause, PriorError::InvertedWindow { .. } | PriorError::EmptyWindow { .. });
         self.fault_at(if of_window { "within" } else { key }, Fault::Prior { name: owned(), cause });
         None
     }

@@ -15,11 +15,19 @@ use crate::nearest::Nearest;
 pub(crate) struct Reader<'a> {
     pub(crate) source: &'a Source,
     problems: RefCell<Vec<Problem>>,
+    /// Every key that a section asked for: what the template has to explain.
+    #[cfg(test)]
+    pub(crate) asked: RefCell<std::collections::BTreeSet<(&'static str, String)>>,
 }
 
 impl<'a> Reader<'a> {
     pub(crate) fn new(source: &'a Source) -> Self {
-        Self { source, problems: RefCell::new(Vec::new()) }
+        Self {
+            source,
+            problems: RefCell::default(),
+            #[cfg(test)]
+            asked: RefCell::default(),
+        }
     }
 
     /// Records a broken rule at a range of bytes; without one, at the file as a whole.
@@ -95,6 +103,8 @@ impl<'a> Section<'a> {
 
     /// Makes a key known and finds it.
     pub(crate) fn find(&self, key: &str) -> Option<(&'a Key, &'a Item)> {
+        #[cfg(test)]
+        self.reader.asked.borrow_mut().insert((self.kind, key.to_owned()));
         let mut known = self.known.borrow_mut();
         if !known.iter().any(|name| name == key) {
             known.push(key.to_owned());
