@@ -207,15 +207,31 @@ fn stem(name: &str) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use unsupported::UNSUPPORTED;
+
+    /// Every (section, key) that is read.
+    fn asked(text: &str) -> std::collections::BTreeSet<(&'static str, String)> {
+        let source = Source::of_file("study.toml", text);
+        let reader = Reader::new(&source);
+        let document = Document::parse(source.text()).unwrap();
+        Parts::read(Section::new(&reader, document.as_table(), None, "study", "the study file"), &source);
+        reader.asked.take()
+    }
+
+    /// What is supported may not stay in the table, nor may a value of a key that is not.
+    #[test]
+    fn the_table_of_unsupported_keys_agrees_with_what_is_read() {
+        let asked = asked(&crate::template::study_text());
+        for entry in UNSUPPORTED {
+            let read = asked.contains(&(entry.section, entry.key.to_owned()));
+            assert_eq!(read, entry.value.is_some(), "`{}` of {}", entry.key, entry.section);
+        }
+    }
 
     #[test]
     fn the_template_explains_every_key_that_is_read() {
         let text = crate::template::study_text();
-        let source = Source::of_file("study.toml", text.as_str());
-        let reader = Reader::new(&source);
-        let document = Document::parse(source.text()).unwrap();
-        Parts::read(Section::new(&reader, document.as_table(), None, "study", "the study file"), &source);
-        let asked = reader.asked.take();
+        let asked = asked(&text);
         assert!(asked.len() > 50, "{asked:?}");
         for (section, key) in asked.into_iter().filter(|(section, _)| *section != "columns") {
             let shown = text.contains(&format!("{key} = "))
