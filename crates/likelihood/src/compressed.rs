@@ -24,7 +24,8 @@ use crate::survey::{LikelihoodError, SurveyLikelihood};
 /// are scaled to unit length and pivoted; R is cut where what is left of every column is below rounding, so that
 /// dependent kernels and more coefficients than rows cost nothing and need no care. Columns of zeros drop out.
 ///
-/// Accuracy: as the plain χ², to a few n_d·2⁻⁵² of (|y| + Σ|c_j||A_j|)·√χ² or so; the tests hold 10⁻¹¹ of it.
+/// Accuracy: χ² is the square of a length that rounding moves by about 10⁻¹³ (|y| + Σ|c_j||A_j|), in the plain form as
+/// in this one. So both agree to 10⁻¹¹ of χ², unless a prediction is a small difference of large parts.
 #[derive(Clone, Debug)]
 pub struct CompressedLikelihood {
     blocks: Vec<Block>,

@@ -237,7 +237,8 @@ impl Covariance {
         Self { matrix, origin: self.origin.clone(), labels: self.labels.clone() }
     }
 
-    /// Whether it is positive definite beyond rounding: by Cholesky on the correlations, each pivot² above n·2⁻⁵².
+    /// Whether it is positive definite beyond rounding: by Cholesky on the correlations, whose smallest
+    /// eigenvalue must exceed n·2⁻⁵² of the largest.
     ///
     /// # Errors
     /// [`CovarianceError::NotDefinite`] with the smallest eigenvalue of the correlations and the rows that make up

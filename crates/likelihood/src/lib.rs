@@ -9,6 +9,7 @@
 //! This crate knows no physics, no priors and no sampling: a prediction is a vector, or kernels and coefficients.
 
 mod blocks;
+mod cholesky;
 mod compressed;
 mod covariance;
 mod covariance_file;
@@ -16,6 +17,7 @@ mod error;
 mod fisher;
 mod goodness;
 mod header;
+mod information;
 mod keep;
 mod noise;
 mod records;
@@ -35,6 +37,9 @@ pub use error::{DataError, Place};
 pub use fisher::{FisherError, effective_parameters, expected_standard_deviations};
 pub use goodness::chi_squared_p_value;
 pub use header::IgnoredColumn;
+pub use information::{
+    allowed_shift, inverse_information, posterior_covariance, share_of_effective_parameters,
+};
 pub use keep::{Keep, Kept, keep_rows};
 pub use noise::{NoiseChoice, NoiseError, NoiseFamily, NoiseInputs, NoiseModel, noise_families};
 pub use rows::{Axis, PAIRS};

@@ -1,5 +1,7 @@
 //! The compressed likelihood is the plain one.
 
+#![allow(clippy::unwrap_used, reason = "in a helper of a test as in a test")]
+
 mod common;
 
 use common::{covariance, generator, normal_matrix, normal_vector};
@@ -180,6 +182,26 @@ fn a_strong_signal_costs_no_digits() {
     let (projected, normal) = (kernels.tr_mul(&data), kernels.tr_mul(&kernels));
     let textbook = data.norm_squared() - 2.0 * truth.dot(&projected) + truth.dot(&(normal * &truth));
     assert!((textbook - plain).abs() > 1e-5, "textbook {textbook}, plain {plain}");
+}
+
+/// Kernels that differ by 10⁻⁹ of their length are two, not one: cutting R there would move χ² by what their difference
+/// times a large coefficient makes. Kernels that differ by rounding are one.
+#[test]
+fn nearly_dependent_kernels_are_kept_and_dependent_ones_cut() {
+    let mut random = generator(12);
+    let (first, other) = (normal_vector(20, &mut random), normal_vector(20, &mut random));
+    let data = normal_vector(20, &mut random);
+    let survey = SurveyLikelihood::new(data, DMatrix::identity(20, 20), &NoiseChoice::gaussian()).unwrap();
+    for (difference, rank) in [(1e-9, 2), (0.0, 1)] {
+        let kernels = DMatrix::from_columns(&[first.clone(), &first / 3.0 + &other * difference]);
+        let compressed = CompressedLikelihood::new(&survey, &kernels).unwrap();
+        assert_eq!(compressed.rank(), rank);
+        let coefficients = DVector::from_vec(vec![-1e9, 3e9]);
+        let plain = survey.chi_squared((&kernels * &coefficients).as_slice(), &mut Vec::new());
+        let found = compressed.chi_squared(coefficients.as_slice());
+        // The prediction is the difference of two of 10⁹, so known to 10⁻⁶ at best; it is 3 times `other`, or nothing.
+        assert!((found - plain).abs() < 1e-5 * plain, "{difference}: plain {plain}, compressed {found}");
+    }
 }
 
 #[test]

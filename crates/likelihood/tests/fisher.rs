@@ -1,5 +1,7 @@
 //! Effective parameters and expected errors where priors are flat or the data are silent.
 
+#![allow(clippy::unwrap_used, reason = "in a helper of a test as in a test")]
+
 mod common;
 
 use common::{assert_relative, generator, normal_matrix};

@@ -1,5 +1,7 @@
 //! Linear least squares through the likelihood, against certified values of NIST's Statistical Reference Datasets.
 
+#![allow(clippy::unwrap_used, reason = "in a helper of a test as in a test")]
+
 mod common;
 
 use common::lines;

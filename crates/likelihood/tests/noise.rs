@@ -1,5 +1,7 @@
 //! Noise models as densities, and p-values as probabilities.
 
+#![allow(clippy::unwrap_used, reason = "in a helper of a test as in a test")]
+
 mod common;
 
 use common::{generator, normal_matrix, normal_vector};

@@ -1,5 +1,7 @@
 //! Against SciPy, NumPy and mpmath, frozen in `reference/` (its README says how).
 
+#![allow(clippy::unwrap_used, reason = "in a helper of a test as in a test")]
+
 mod common;
 
 use common::{assert_relative, cases, lines, numbers};

@@ -1,5 +1,7 @@
 //! Tables that are sound: what is read from them, and which rows are kept.
 
+#![allow(clippy::unwrap_used, reason = "in a helper of a test as in a test")]
+
 use std::collections::BTreeMap;
 
 use oddwell_likelihood::{
