@@ -1,1 +1,3 @@
-//! Checks across crates.
+//! Checks across crates, and the program that makes the demo data.
+
+pub mod demo;

@@ -1,6 +1,6 @@
 //! The prediction beside the measurements.
 
-use crate::assemble::{Problem, read_measurements};
+use crate::assemble::{Posterior, read_measurements};
 use crate::resolve::{Hypothesis, Study};
 use crate::run_error::RunError;
 use oddwell_likelihood::Axis;
@@ -36,8 +36,8 @@ pub struct PredictedRow {
 /// [`RunError`] where the data can't be read or the model has no prediction there.
 pub fn predict(study: &Study, hypothesis: &Hypothesis) -> Result<Vec<PredictedRow>, RunError> {
     let measurements = read_measurements(study)?;
-    let problem = Problem::new(study, hypothesis, &measurements)?;
-    let prediction = problem.predict(&hypothesis.start(), &mut problem.scratch())?;
+    let posterior = Posterior::new(study, hypothesis, &measurements)?;
+    let prediction = posterior.predict(&hypothesis.start(), &mut posterior.scratch())?;
     let mut predicted = prediction.into_iter();
     let mut rows = Vec::with_capacity(measurements.len());
     for survey in &measurements.surveys {

@@ -8,8 +8,8 @@ use crate::resolve::Study;
 use crate::run_error::RunError;
 use crate::warnings::Warning;
 use oddwell_likelihood::{
-    Axis, Covariance, CovarianceRows, Keep, LengthUnit, MultipoleTable, NoiseChoice, SurveyLikelihood, keep_rows,
-    read_covariance_csv, read_covariance_rows, read_multipoles,
+    Axis, Covariance, CovarianceRows, Keep, LengthUnit, MultipoleTable, NoiseChoice, SurveyLikelihood,
+    keep_rows, read_covariance_csv, read_covariance_rows, read_multipoles,
 };
 use oddwell_model::{Pair, Row, Space};
 use std::collections::BTreeMap;

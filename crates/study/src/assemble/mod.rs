@@ -2,7 +2,8 @@
 
 mod measurements;
 mod power_table;
-mod problem;
+mod posterior;
 
 pub use measurements::{Measurements, SurveyMeasurements, read_measurements};
-pub use problem::{Problem, ProblemScratch};
+pub(crate) use posterior::model_setup;
+pub use posterior::{Posterior, PosteriorScratch};

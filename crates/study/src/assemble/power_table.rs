@@ -24,7 +24,9 @@ pub(super) fn read_power_table(path: &Path) -> Result<PowerTable, RunError> {
     };
     let header = match reader.headers() {
         Ok(header) => header.clone(),
-        Err(error) => return fail(String::new(), "must be text", error.to_string(), "save it as CSV in UTF-8"),
+        Err(error) => {
+            return fail(String::new(), "must be text", error.to_string(), "save it as CSV in UTF-8");
+        }
     };
     let mut columns = [0; 2];
     for (name, column) in ["wavenumber", "power"].iter().zip(&mut columns) {
@@ -33,7 +35,12 @@ pub(super) fn read_power_table(path: &Path) -> Result<PowerTable, RunError> {
             None => {
                 let found = header.iter().collect::<Vec<_>>().join(",");
                 let rule = "must have the columns `wavenumber` (h/Mpc) and `power` ((Mpc/h)³)";
-                return fail(", line 1".into(), rule, format!("`{found}`"), "name the columns so in the header");
+                return fail(
+                    ", line 1".into(),
+                    rule,
+                    format!("`{found}`"),
+                    "name the columns so in the header",
+                );
             }
         }
     }
@@ -41,7 +48,9 @@ pub(super) fn read_power_table(path: &Path) -> Result<PowerTable, RunError> {
     for record in reader.records() {
         let record = match record {
             Ok(record) => record,
-            Err(error) => return fail(String::new(), "must be a table", error.to_string(), "correct that line"),
+            Err(error) => {
+                return fail(String::new(), "must be a table", error.to_string(), "correct that line");
+            }
         };
         let at = record.position().map_or_else(String::new, |place| format!(", line {}", place.line()));
         for (column, numbers) in columns.iter().zip([&mut wavenumbers, &mut powers]) {
@@ -52,7 +61,6 @@ pub(super) fn read_power_table(path: &Path) -> Result<PowerTable, RunError> {
             }
         }
     }
-    PowerTable::new(wavenumbers, powers).or_else(|error| {
-        fail(String::new(), "must be a spectrum", error.to_string(), "correct the table")
-    })
+    PowerTable::new(wavenumbers, powers)
+        .or_else(|error| fail(String::new(), "must be a spectrum", error.to_string(), "correct the table"))
 }

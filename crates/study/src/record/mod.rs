@@ -7,6 +7,6 @@ mod summary;
 
 pub use manifest::{InputFile, Manifest};
 pub use summary::{
-    BestFit, BinGoodness, GeneralRelativity, Mimic, ParameterSummary, SamplerSummary, Summary, SurveyGoodness,
-    WarningRecord,
+    BestFit, BinGoodness, GeneralRelativity, Mimic, Ordered, ParameterSummary, SamplerSummary, Summary,
+    SurveyGoodness, WarningRecord,
 };

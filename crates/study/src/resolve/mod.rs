@@ -104,6 +104,11 @@ impl Study {
         StudyError::unless_none(problems, Some(Self { file, hypotheses, default, overrides }))
     }
 
+    /// What the command line changed.
+    pub fn overrides(&self) -> &[Override] {
+        &self.overrides
+    }
+
     /// The hypothesis that `fit` takes without being told: the first whose departure the file infers, else the first.
     pub fn default_hypothesis(&self) -> &Hypothesis {
         &self.hypotheses[self.default]

@@ -17,7 +17,7 @@ use std::sync::Arc;
 /// Where no quantity that changes a k-shape is inferred, the data are compressed exactly and an evaluation costs the
 /// same for any number of measured rows.
 #[derive(Debug)]
-pub struct Problem {
+pub struct Posterior {
     /// The hypothesis, resolved.
     pub hypothesis: Hypothesis,
     /// The model of all kept rows.
@@ -33,7 +33,7 @@ pub struct Problem {
 
 /// Working memory of one thread.
 #[derive(Debug)]
-pub struct ProblemScratch {
+pub struct PosteriorScratch {
     values: Vec<f64>,
     coefficients: Vec<f64>,
     prediction: Vec<f64>,
@@ -42,7 +42,11 @@ pub struct ProblemScratch {
 }
 
 /// The model of `rows` under a hypothesis.
-pub(crate) fn model_setup(study: &Study, hypothesis: &Hypothesis, rows: Vec<Row>) -> Result<ModelSetup, RunError> {
+pub(crate) fn model_setup(
+    study: &Study,
+    hypothesis: &Hypothesis,
+    rows: Vec<Row>,
+) -> Result<ModelSetup, RunError> {
     let file = &study.file;
     let mut bins = Vec::new();
     for survey in &file.surveys {
@@ -86,40 +90,47 @@ fn smallest_damping(hypothesis: &Hypothesis) -> Result<f64, RunError> {
     }
 }
 
-impl Problem {
+impl Posterior {
     /// Builds the model, checks that it can be evaluated at the prior's centre, and compresses the data where that is
     /// exact.
     ///
     /// # Errors
     /// [`RunError`] where the model has no prediction at the prior's centre, or the priors can't be built.
-    pub fn new(study: &Study, hypothesis: &Hypothesis, measurements: &Measurements) -> Result<Problem, RunError> {
+    pub fn new(
+        study: &Study,
+        hypothesis: &Hypothesis,
+        measurements: &Measurements,
+    ) -> Result<Posterior, RunError> {
         let model = Model::new(model_setup(study, hypothesis, measurements.rows.clone())?)?;
         let map = ParameterMap::new(hypothesis, model.layout().names())?;
         let priors = hypothesis.priors()?;
         let surveys = measurements.surveys.iter().map(|survey| survey.likelihood.clone()).collect();
-        let mut problem =
-            Problem { hypothesis: hypothesis.clone(), model, map, priors, data: SurveySet::new(surveys), compressed: None };
+        let mut posterior = Posterior {
+            hypothesis: hypothesis.clone(),
+            model,
+            map,
+            priors,
+            data: SurveySet::new(surveys),
+            compressed: None,
+        };
         let start = hypothesis.start();
-        let mut scratch = problem.scratch();
-        let prediction = problem.predict(&start, &mut scratch)?;
+        let mut scratch = posterior.scratch();
+        let prediction = posterior.predict(&start, &mut scratch)?;
         debug_assert_eq!(prediction.len(), measurements.len());
-        if problem.has_fixed_kernels() {
-            let kernels = problem.model.kernels(&scratch.values, &mut scratch.workspace)?;
-            let compressed = problem.data.compress(&kernels.matrix);
-            problem.compressed = Some(compressed.map_err(|source| RunError::Likelihood {
-                survey: "all".into(),
-                source,
-            })?);
+        if posterior.has_fixed_kernels() {
+            let kernels = posterior.model.kernels(&scratch.values, &mut scratch.workspace)?;
+            let compressed = posterior.data.compress(&kernels.matrix);
+            posterior.compressed =
+                Some(compressed.map_err(|source| RunError::Likelihood { survey: "all".into(), source })?);
         }
-        Ok(problem)
+        Ok(posterior)
     }
 
     /// Whether the kernels stay as they are while the parameters move.
     #[must_use]
     pub fn has_fixed_kernels(&self) -> bool {
         let layout = self.model.layout();
-        self.model.has_kernels()
-            && self.map.terms().iter().all(|term| !layout.changes_kernels(term.slot))
+        self.model.has_kernels() && self.map.terms().iter().all(|term| !layout.changes_kernels(term.slot))
     }
 
     /// The model's quantities at a point.
@@ -134,7 +145,7 @@ impl Problem {
     ///
     /// # Errors
     /// [`ModelError`] where there is none.
-    pub fn predict(&self, point: &[f64], scratch: &mut ProblemScratch) -> Result<Vec<f64>, ModelError> {
+    pub fn predict(&self, point: &[f64], scratch: &mut PosteriorScratch) -> Result<Vec<f64>, ModelError> {
         self.map.fill(point, &mut scratch.values);
         self.predict_values(&scratch.values.clone(), scratch)
     }
@@ -143,7 +154,11 @@ impl Problem {
     ///
     /// # Errors
     /// [`ModelError`] where there is none.
-    pub fn predict_values(&self, values: &[f64], scratch: &mut ProblemScratch) -> Result<Vec<f64>, ModelError> {
+    pub fn predict_values(
+        &self,
+        values: &[f64],
+        scratch: &mut PosteriorScratch,
+    ) -> Result<Vec<f64>, ModelError> {
         let mut prediction = vec![0.0; self.data.rows()];
         self.model.predict(values, &mut scratch.workspace, &mut prediction)?;
         Ok(prediction)
@@ -153,30 +168,34 @@ impl Problem {
     ///
     /// # Errors
     /// [`ModelError`] where the model has no prediction.
-    pub fn plain_log_likelihood(&self, point: &[f64], scratch: &mut ProblemScratch) -> Result<f64, ModelError> {
+    pub fn plain_log_likelihood(
+        &self,
+        point: &[f64],
+        scratch: &mut PosteriorScratch,
+    ) -> Result<f64, ModelError> {
         self.map.fill(point, &mut scratch.values);
         self.model.predict(&scratch.values, &mut scratch.workspace, &mut scratch.prediction)?;
         Ok(self.data.log_likelihood(&scratch.prediction, &mut scratch.residuals))
     }
 
-    fn any_log_likelihood(&self, point: &[f64], scratch: &mut ProblemScratch) -> Result<f64, ModelError> {
+    fn any_log_likelihood(&self, point: &[f64], scratch: &mut PosteriorScratch) -> Result<f64, ModelError> {
         let Some(compressed) = &self.compressed else { return self.plain_log_likelihood(point, scratch) };
         self.map.fill(point, &mut scratch.values);
-        let ProblemScratch { values, coefficients, workspace, .. } = scratch;
+        let PosteriorScratch { values, coefficients, workspace, .. } = scratch;
         self.model.coefficients(values, workspace, coefficients)?;
         Ok(compressed.log_likelihood(coefficients))
     }
 }
 
-impl Target for Problem {
-    type Scratch = ProblemScratch;
+impl Target for Posterior {
+    type Scratch = PosteriorScratch;
 
     fn dimension(&self) -> usize {
         self.map.dimension()
     }
 
-    fn scratch(&self) -> ProblemScratch {
-        ProblemScratch {
+    fn scratch(&self) -> PosteriorScratch {
+        PosteriorScratch {
             values: vec![0.0; self.map.slots()],
             coefficients: vec![0.0; self.model.coefficient_count()],
             prediction: vec![0.0; self.data.rows()],
@@ -189,7 +208,7 @@ impl Target for Problem {
         self.priors.log_density(point)
     }
 
-    fn log_likelihood(&self, point: &[f64], scratch: &mut ProblemScratch) -> Result<f64, EvaluationFailure> {
+    fn log_likelihood(&self, point: &[f64], scratch: &mut PosteriorScratch) -> Result<f64, EvaluationFailure> {
         self.any_log_likelihood(point, scratch).map_err(|error| {
             let reason = error.to_string();
             if error.is_recoverable() {

@@ -1,0 +1,121 @@
+//! Run directories: complete or not there at all.
+
+use crate::record::{Manifest, Summary};
+use crate::run_error::RunError;
+use oddwell_sampler::Chain;
+use serde::Serialize;
+use std::fs::{self, File};
+use std::io::{self, BufWriter, Write};
+use std::path::{Path, PathBuf};
+
+/// A run directory to be. Until it is written, its files stand in a hidden folder beside it, which vanishes with this
+/// value.
+#[derive(Debug)]
+pub struct RunDirectory {
+    target: PathBuf,
+    staging: PathBuf,
+    replace: bool,
+}
+
+impl RunDirectory {
+    /// Makes the hidden folder, so that a run whose results can't be written ends before it begins.
+    ///
+    /// # Errors
+    /// [`RunError::Exists`] where `target` exists and may not be replaced; [`RunError::Unwritable`] where the folder
+    /// can't be made.
+    pub fn claim(target: &Path, replace: bool) -> Result<RunDirectory, RunError> {
+        if target.symlink_metadata().is_ok() && !replace {
+            return Err(RunError::Exists { path: target.to_owned() });
+        }
+        let parent = match target.parent() {
+            Some(parent) if !parent.as_os_str().is_empty() => parent.to_owned(),
+            _ => PathBuf::from("."),
+        };
+        fs::create_dir_all(&parent).map_err(RunError::unwritable(target))?;
+        let name = target.file_name().unwrap_or_default().to_string_lossy();
+        let staging = parent.join(format!(".{name}.unfinished-{}", std::process::id()));
+        fs::create_dir(&staging).map_err(RunError::unwritable(target))?;
+        Ok(RunDirectory { target: target.to_owned(), staging, replace })
+    }
+
+    /// Writes `chain.csv`, `summary.json` and `manifest.json`, then puts the directory in its place.
+    ///
+    /// # Errors
+    /// [`RunError::Unwritable`]; then nothing stays behind, and a directory that was to be replaced stands as it was.
+    pub fn write(
+        &self,
+        names: &[String],
+        chain: &Chain,
+        summary: &Summary,
+        manifest: &Manifest,
+    ) -> Result<(), RunError> {
+        let unwritable = || RunError::unwritable(&self.target);
+        write_file(&self.staging.join("chain.csv"), |out| write_chain(out, names, chain)).map_err(unwritable())?;
+        write_file(&self.staging.join("summary.json"), |out| write_json(out, summary)).map_err(unwritable())?;
+        write_file(&self.staging.join("manifest.json"), |out| write_json(out, manifest)).map_err(unwritable())?;
+        self.put_in_place().map_err(unwritable())
+    }
+
+    fn put_in_place(&self) -> io::Result<()> {
+        if !(self.replace && self.target.symlink_metadata().is_ok()) {
+            return fs::rename(&self.staging, &self.target);
+        }
+        let old = self.staging.with_extension("replaced");
+        fs::rename(&self.target, &old)?;
+        if let Err(error) = fs::rename(&self.staging, &self.target) {
+            fs::rename(&old, &self.target)?;
+            return Err(error);
+        }
+        if old.is_dir() { fs::remove_dir_all(&old) } else { fs::remove_file(&old) }
+    }
+}
+
+impl Drop for RunDirectory {
+    fn drop(&mut self) {
+        // Gone already after a success; nothing half-written stays behind after a failure.
+        let _ = fs::remove_dir_all(&self.staging);
+    }
+}
+
+/// Reads a run's `summary.json`.
+///
+/// # Errors
+/// [`RunError::UnreadableRun`].
+pub fn read_summary(directory: &Path) -> Result<Summary, RunError> {
+    let path = directory.join("summary.json");
+    let unreadable = |reason: String| RunError::UnreadableRun { path: path.clone(), reason };
+    let text = fs::read_to_string(&path).map_err(|error| unreadable(error.to_string()))?;
+    serde_json::from_str(&text).map_err(|error| unreadable(error.to_string()))
+}
+
+fn write_file(path: &Path, write: impl FnOnce(&mut BufWriter<File>) -> io::Result<()>) -> io::Result<()> {
+    let mut out = BufWriter::with_capacity(1 << 16, File::create_new(path)?);
+    write(&mut out)?;
+    out.flush()?;
+    out.get_ref().sync_all()
+}
+
+fn write_json(out: &mut impl Write, value: &impl Serialize) -> io::Result<()> {
+    serde_json::to_writer_pretty(&mut *out, value)?;
+    out.write_all(b"\n")
+}
+
+/// One line a draw: ensemble, walker, step, log prior, log likelihood, then the parameters in the study's order. Numbers
+/// are the shortest that read back as the same 64-bit value.
+fn write_chain(out: &mut impl Write, names: &[String], chain: &Chain) -> io::Result<()> {
+    out.write_all(b"ensemble,walker,step,log_prior,log_likelihood")?;
+    for name in names {
+        write!(out, ",{name}")?;
+    }
+    out.write_all(b"\n")?;
+    let mut number = ryu::Buffer::new();
+    for draw in chain.draws() {
+        write!(out, "{},{},{}", draw.ensemble, draw.walker, draw.step)?;
+        for &value in [draw.log_prior, draw.log_likelihood].iter().chain(draw.point) {
+            out.write_all(b",")?;
+            out.write_all(number.format(value).as_bytes())?;
+        }
+        out.write_all(b"\n")?;
+    }
+    Ok(())
+}
