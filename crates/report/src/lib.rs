@@ -1,1 +1,16 @@
-//! oddwell report
+//! Results in, text out: what a person reads of a study, a prediction or a fit.
+//!
+//! This crate never reads or writes files and computes no result; it only chooses words and digits.
+
+mod closing;
+mod numbers;
+mod prediction;
+mod show;
+mod style;
+mod text;
+
+pub use closing::closing_summary;
+pub use numbers::{count, duration, signed, significant, whole};
+pub use prediction::{prediction_csv, prediction_json};
+pub use show::{show_json, show_table};
+pub use style::Style;
