@@ -107,9 +107,56 @@ impl History {
         values
     }
 
+    /// Points and log posteriors of all draws but those of the first `dropped` steps.
+    pub(crate) fn draws(&self, dropped: usize) -> Draws<'_> {
+        Draws {
+            history: self,
+            next: 0,
+            from: dropped * self.walkers,
+            each: (self.steps() - dropped) * self.walkers,
+        }
+    }
+
     /// Log posterior, ordered by ensemble, step, walker.
     pub(crate) fn log_posterior(&self) -> Vec<f64> {
         let rows = self.records.iter().flat_map(|record| record.log_prior.iter().zip(&record.log_likelihood));
         rows.map(|(prior, likelihood)| prior + likelihood).collect()
     }
 }
+
+/// Iterator over draws with their log posteriors.
+#[derive(Debug, Clone)]
+pub(crate) struct Draws<'a> {
+    history: &'a History,
+    next: usize,
+    from: usize,
+    each: usize,
+}
+
+impl<'a> Iterator for Draws<'a> {
+    type Item = (&'a [f64], f64);
+
+    fn next(&mut self) -> Option<Self::Item> {
+        self.nth(0)
+    }
+
+    fn nth(&mut self, skipped: usize) -> Option<Self::Item> {
+        self.next += skipped;
+        if self.next >= self.each * self.history.records.len() {
+            return None;
+        }
+        let record = &self.history.records[self.next / self.each];
+        let row = self.from + self.next % self.each;
+        self.next += 1;
+        let dimension = self.history.dimension;
+        let point = &record.points[row * dimension..(row + 1) * dimension];
+        Some((point, record.log_prior[row] + record.log_likelihood[row]))
+    }
+
+    fn size_hint(&self) -> (usize, Option<usize>) {
+        let left = (self.each * self.history.records.len()).saturating_sub(self.next);
+        (left, Some(left))
+    }
+}
+
+impl ExactSizeIterator for Draws<'_> {}

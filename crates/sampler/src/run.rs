@@ -4,7 +4,7 @@ use crate::chain::{Chain, MoveAcceptance, Outcome, RejectedEvaluations, StopReas
 use crate::ensemble::{Ensemble, Fatal, Lane, height};
 use crate::error::SamplerError;
 use crate::history::History;
-use crate::moves::{Fit, Independence, Mixture, mean_and_covariance, weights};
+use crate::moves::{Fit, Independence, Mixture, Quality, quality, weights};
 use crate::peak::{Peak, PeakSettings, find_peak_with};
 use crate::priors::PriorSet;
 use crate::settings::{Control, DEFAULT_MAXIMUM_EVALUATIONS, EnsembleSettings, Phase, Progress};
@@ -29,11 +29,20 @@ const LEAST_GROWTH: f64 = 1.15;
 /// … and at most this factor, however far off the goal seems.
 const LARGEST_GROWTH: f64 = 1.6;
 
-/// Factor on the covariance that the independence move proposes from.
-const FIT_INFLATION: f64 = 1.1;
-
-/// Largest share of the independence move in the mixture.
-const LARGEST_SHARE: f64 = 0.9;
+/// The share of independent proposals in the mixture that their quality deserves.
+///
+/// A walker stuck where proposals are too rare waits for the other moves, whose memory is about 4·dimension steps of their
+/// own. If it hardly ever stays longer than that, independent proposals may do nearly everything; if it does, half of the
+/// steps cost either kind of move at most a factor of two; if hardly any proposal is accepted, they only cost evaluations.
+fn deserved_share(quality: Quality, dimension: usize) -> f64 {
+    if quality.acceptance < 0.02 {
+        0.05
+    } else if quality.longest_stay > 4.0 * dimension as f64 {
+        0.5
+    } else {
+        0.9
+    }
+}
 
 /// Everything that determines how a run goes on.
 #[derive(Debug, Clone, Serialize, Deserialize)]
@@ -255,19 +264,21 @@ impl RunState {
     /// Looks for the end of warm-up, then applies the tests; sets the step of the next check. Depends on the chain alone.
     fn check(&mut self, report: &mut Progress) -> Option<Verdict> {
         let mut growth = LARGEST_GROWTH.sqrt();
-        if self.warm_up.is_some() {
-            let dropped = still_settled(&self.history);
-            self.drop_first(dropped);
-        } else {
-            let settled = settled(&self.history);
-            self.refit(settled);
-            if settled.is_some() {
-                // The fit has seen these draws; what follows is independent of that given the fit.
-                self.drop_first(self.history.steps());
-                self.warm_up = Some(self.steps);
+        match self.warm_up {
+            Some(_) if self.proposals_went_wrong() => {
+                self.refit(0);
+                self.forget_all();
             }
-            for ensemble in &mut self.ensembles {
-                ensemble.counts.moves.iter_mut().for_each(|counts| *counts = (0, 0));
+            Some(_) => {
+                let dropped = still_settled(&self.history);
+                self.drop_first(dropped);
+            }
+            None => {
+                let settled = settled(&self.history);
+                self.refit(settled.unwrap_or(self.history.steps() / 2));
+                if settled.is_some() {
+                    self.forget_all();
+                }
             }
         }
         let mut verdict = None;
@@ -289,32 +300,50 @@ impl RunState {
         verdict
     }
 
-    /// During warm-up: fits the independence move to the settled draws, or to the later half if they have not settled, and
-    /// weights it by how it fared since the last check.
-    fn refit(&mut self, settled: Option<usize>) {
+    /// Fits the independence move to the draws after the first `dropped` steps, and gives it the share that its quality
+    /// there deserves, unless the settings fix the weights.
+    fn refit(&mut self, dropped: usize) {
         let Some(place) = self.weights.iter().position(|(name, _)| name == Independence::NAME) else {
             return;
         };
-        let counts = self.ensembles.iter().map(|ensemble| ensemble.counts.moves[place]);
-        let (proposed, accepted) = counts.fold((0, 0), |sum, part| (sum.0 + part.0, sum.1 + part.1));
-        let from = settled.unwrap_or(self.history.steps() / 2) * self.walkers;
-        let dimension = self.fit.dimension();
-        let rows =
-            self.history.records.iter().flat_map(|record| record.points.chunks_exact(dimension).skip(from));
-        let (mean, covariance) = mean_and_covariance(dimension, rows);
-        if let Some(fit) = Fit::new(mean.as_slice().to_vec(), covariance * FIT_INFLATION) {
+        if let Some(fit) =
+            Fit::to_draws(self.fit.dimension(), self.history.draws(dropped).map(|(point, _)| point))
+        {
             self.fit = fit;
         }
-        if proposed > 0 && self.settings.move_weights.is_empty() {
+        if self.settings.move_weights.is_empty() {
             let others: f64 = self
                 .weights
                 .iter()
-                .filter(|(name, _)| name != Independence::NAME)
-                .map(|(_, weight)| weight)
+                .enumerate()
+                .filter(|(at, _)| *at != place)
+                .map(|(_, (_, weight))| weight)
                 .sum();
-            let rate = accepted as f64 / proposed as f64;
-            let share = LARGEST_SHARE * rate / (rate + 0.03);
-            self.weights[place].1 = (others * share / (1.0 - share)).max(0.01 * others);
+            let share = deserved_share(quality(&self.fit, self.history.draws(dropped)), self.fit.dimension());
+            self.weights[place].1 = others * share / (1.0 - share);
+        }
+    }
+
+    /// Whether the frozen proposals deserve a smaller share than they have, now that the chain has seen more: then the
+    /// weights that they imply vary too much, and walkers get stuck where proposals are too rare.
+    fn proposals_went_wrong(&self) -> bool {
+        let Some(place) = self.weights.iter().position(|(name, _)| name == Independence::NAME) else {
+            return false;
+        };
+        if !self.settings.move_weights.is_empty() || self.history.steps() == 0 {
+            return false;
+        }
+        let total: f64 = self.weights.iter().map(|(_, weight)| weight).sum();
+        let share = self.weights[place].1 / total;
+        deserved_share(quality(&self.fit, self.history.draws(0)), self.fit.dimension()) < share - 1e-9
+    }
+
+    /// Ends warm-up here: what follows is independent of the draws that the proposals were fitted to, given the fit.
+    fn forget_all(&mut self) {
+        self.history.drop_first(self.history.steps());
+        self.warm_up = Some(self.steps);
+        for ensemble in &mut self.ensembles {
+            ensemble.counts.moves.iter_mut().for_each(|counts| *counts = (0, 0));
         }
     }
 
@@ -393,7 +422,7 @@ impl RunState {
 /// The Laplace approximation as a first fit; without correlations where they make it singular.
 fn laplace_fit(peak: &Peak) -> Fit {
     let diagonal = DMatrix::from_diagonal(&peak.covariance.diagonal().map(|variance| variance.max(1e-300)));
-    Fit::new(peak.point.clone(), &peak.covariance * FIT_INFLATION)
+    Fit::new(peak.point.clone(), peak.covariance.clone())
         .or_else(|| Fit::new(peak.point.clone(), diagonal))
         .expect("a diagonal of positive variances has a Cholesky factor")
 }

@@ -42,7 +42,7 @@ pub(crate) fn first_look(history: &History, settings: &EnsembleSettings, evaluat
         .into_par_iter()
         .map(|parameter| {
             let values = history.column(parameter);
-            let effective = shape.ensemble_route(&values);
+            let (effective, _) = shape.ensemble_route(&values);
             Figures { rhat: split_walkers_rhat(shape, &values), bulk: effective, tail: effective }
         })
         .collect();

@@ -1,10 +1,16 @@
 //! Diagnostics of ensembles of walkers.
 //!
 //! Walkers of one ensemble propose from each other's positions, so they are not independent chains. Two routes see
-//! different parts of the autocorrelation, and the more pessimistic one counts:
+//! different parts of the autocorrelation:
 //! * every walker a chain: the correlation of a walker with its own past;
 //! * the mean over an ensemble, step by step, as one series: the correlation of walkers with each other's past as well
-//!   (Goodman & Weare 2010, §3), from few and long series, hence noisier.
+//!   (Goodman & Weare 2010, §3), from few series, hence noisier.
+//!
+//! The first counts, unless the second is lower by more than twice its own error; then that upper end counts. Measured
+//! (`benches/honesty.rs`): over 20 to 60 repeated runs on Gaussians in 3, 10 and 20 dimensions, the scatter of posterior
+//! means was 1.01, 1.06 and 1.07 times the error by walkers and 0.97, 1.08 and 1.07 times that by ensembles (± 0.05, 0.035,
+//! 0.035) with the default mixture, and 0.99 and 0.97 (± 0.035) with stretch moves or differential evolution alone: so
+//! walkers as chains are honest there, and the second route guards against targets where they are not.
 //!
 //! R̂ likewise is the larger of that of all walkers and that of whole ensembles, each one chain: the latter alone sees
 //! ensembles that have settled in different places (cf. Margossian et al. 2024, Bayesian Analysis 20, for chains in groups).
@@ -139,25 +145,25 @@ impl Shape {
         Chains { values, length: self.steps, width: 1 }
     }
 
-    /// Effective samples of the mean of `values`: the smaller of both routes.
+    /// Effective samples of the mean of `values`: by walkers, or by ensembles where these are fewer beyond their own error.
     pub(crate) fn effective_samples(self, values: &[f64]) -> f64 {
-        self.walker_route(values).min(self.ensemble_route(values))
+        let (by_ensembles, error) = self.ensemble_route(values);
+        effective_samples(&self.walker_chains(values).split()).min(by_ensembles * (1.0 + 2.0 * error))
     }
 
-    /// Every walker a chain.
-    pub(crate) fn walker_route(self, values: &[f64]) -> f64 {
-        effective_samples(&self.walker_chains(values).split())
-    }
-
-    /// Variance of one draw over the Monte Carlo variance of the mean of the ensembles' mean series.
-    pub(crate) fn ensemble_route(self, values: &[f64]) -> f64 {
+    /// By ensembles: variance of one draw over the Monte Carlo variance of the mean of the ensembles' mean series; and the
+    /// relative error of that, √(2(2M + 1)/n) for a window M of five autocorrelation times (Sokal 1997, §3).
+    pub(crate) fn ensemble_route(self, values: &[f64]) -> (f64, f64) {
         let variance = squares_about(values, mean(values)) / values.len() as f64;
         let means = self.ensemble_means(values);
-        let of_means = squares_about(&means.values, mean(&means.values)) / means.values.len() as f64;
+        let count = means.values.len() as f64;
+        let of_means = squares_about(&means.values, mean(&means.values)) / count;
         if !(of_means > 0.0) {
-            return values.len() as f64;
+            return (values.len() as f64, 0.0);
         }
-        effective_samples(&means.split()) * variance / of_means
+        let effective = effective_samples(&means.split());
+        let window = 5.0 * (count / effective).max(1.0);
+        (effective * variance / of_means, (2.0 * (2.0 * window + 1.0) / count).sqrt())
     }
 
     /// The larger of R̂ of walkers and R̂ of ensembles.

@@ -14,7 +14,14 @@ pub struct Fit {
     lower: Vec<f64>,
     /// Its inverse, packed the same way.
     inverse: Vec<f64>,
+    half_freedom: u32,
 }
+
+/// Half the degrees of freedom of a fit to nothing known: tails that are safe for normal ones.
+const HALF_FREEDOM: u32 = 6;
+
+/// Bounds of half the degrees of freedom of a fit to draws.
+const HALF_FREEDOM_RANGE: (f64, f64) = (2.0, 15.0);
 
 impl Fit {
     /// From a location and a covariance; `None` where the covariance is not positive definite or not finite.
@@ -39,7 +46,33 @@ impl Fit {
                 .map(|at| matrix[at])
                 .collect()
         };
-        Some(Self { location, lower: pack(&lower), inverse: pack(&inverse) })
+        Some(Self { location, lower: pack(&lower), inverse: pack(&inverse), half_freedom: HALF_FREEDOM })
+    }
+
+    /// From draws, rows of `dimension` coordinates: their mean and covariance, and degrees of freedom from Mardia's (1970)
+    /// kurtosis κ = mean of squared Mahalanobis distances squared over n(n + 2), which is (ν − 2)/(ν − 4) for a Student t;
+    /// ν even, between 4 and 30. `None` where the covariance is not positive definite.
+    pub(crate) fn to_draws<'a>(
+        dimension: usize,
+        rows: impl Iterator<Item = &'a [f64]> + Clone,
+    ) -> Option<Self> {
+        let (mean, covariance) = mean_and_covariance(dimension, rows.clone());
+        let mut fit = Self::new(mean.as_slice().to_vec(), covariance)?;
+        let (mut sum, mut count) = (0.0, 0.0);
+        for row in rows {
+            let distance = fit.distance_squared(row);
+            sum += distance * distance;
+            count += 1.0;
+        }
+        let expected = dimension as f64 * (dimension as f64 + 2.0);
+        let excess = (sum / count / expected - 1.0).max(1e-6);
+        fit.half_freedom = (2.0 + excess.recip()).clamp(HALF_FREEDOM_RANGE.0, HALF_FREEDOM_RANGE.1) as u32;
+        Some(fit)
+    }
+
+    /// Half the degrees of freedom of the Student t.
+    pub fn half_freedom(&self) -> u32 {
+        self.half_freedom
     }
 
     /// Number of coordinates.
@@ -86,6 +119,12 @@ impl Fit {
         sum
     }
 
+    /// Log density of the Student t at a point, without its constant.
+    pub(crate) fn log_proposal(&self, point: &[f64]) -> f64 {
+        let freedom = 2.0 * f64::from(self.half_freedom);
+        -0.5 * (freedom + point.len() as f64) * (self.distance_squared(point) / freedom).ln_1p()
+    }
+
     /// Replaces independent normals by location + `scale` · L · normals, in place.
     fn colour(&self, scale: f64, normals: &mut [f64]) {
         // From the last row up: row i needs the normals up to i, and is the last one to need number i.
@@ -99,8 +138,8 @@ impl Fit {
     }
 }
 
-/// Mean and covariance of weighted rows of `dimension` coordinates (each row of the same weight).
-pub(crate) fn mean_and_covariance<'a>(
+/// Mean and covariance of rows of `dimension` coordinates.
+fn mean_and_covariance<'a>(
     dimension: usize,
     rows: impl Iterator<Item = &'a [f64]> + Clone,
 ) -> (DVector<f64>, DMatrix<f64>) {
@@ -126,13 +165,15 @@ pub(crate) fn mean_and_covariance<'a>(
     (mean, covariance)
 }
 
-/// Proposes x′ from a multivariate Student t of twelve degrees of freedom about a fixed fit, wherever the walker is; factor
-/// q(x)/q(x′) (Hastings 1970, Biometrika 57, 97, §2.5; Tierney 1994, Ann. Stat. 22, 1701, §2.3.3).
+/// Proposes x′ from a multivariate Student t about a fixed fit, wherever the walker is; factor q(x)/q(x′) (Hastings 1970,
+/// Biometrika 57, 97, §2.5; Tierney 1994, Ann. Stat. 22, 1701, §2.3.3).
 ///
-/// The tails of the t keep the ratio target/proposal bounded for any target with normal tails.
+/// The tails of the t keep the ratio target/proposal bounded for any target with normal tails; heavier ones, and shapes
+/// that the fit misses, are what the other moves of a mixture are for.
 #[derive(Debug, Clone)]
 pub struct Independence {
     fit: Fit,
+    freedom: f64,
     power: f64,
 }
 
@@ -140,18 +181,16 @@ impl Independence {
     /// Registry name.
     pub const NAME: &'static str = "independence";
 
-    /// Half the degrees of freedom.
-    const HALF_FREEDOM: i32 = 6;
-
     /// The move with proposals about `fit`.
     pub fn new(fit: Fit) -> Self {
-        let power = 0.5 * (2.0 * f64::from(Self::HALF_FREEDOM) + fit.dimension() as f64);
-        Self { fit, power }
+        let freedom = 2.0 * f64::from(fit.half_freedom);
+        let power = 0.5 * (freedom + fit.dimension() as f64);
+        Self { fit, freedom, power }
     }
 
     /// Log density of the proposals, without its constant, at a squared distance.
     fn log_density(&self, distance_squared: f64) -> f64 {
-        -self.power * (distance_squared / (2.0 * f64::from(Self::HALF_FREEDOM))).ln_1p()
+        -self.power * (distance_squared / self.freedom).ln_1p()
     }
 }
 
@@ -173,10 +212,10 @@ impl Move for Independence {
             *entry = normal;
             squares += normal * normal;
         }
-        // χ² of 2k degrees of freedom is −2 ln of a product of k uniform numbers in (0, 1].
-        let product: f64 = (0..Self::HALF_FREEDOM).map(|_| 1.0 - random.random::<f64>()).product();
-        let scale_squared = f64::from(Self::HALF_FREEDOM) / -product.ln();
+        // χ² of 2k degrees of freedom is −2 ln of a product of k uniform numbers in (0, 1]; k ≤ 15 keeps it normal.
+        let product: f64 = (0..self.fit.half_freedom).map(|_| 1.0 - random.random::<f64>()).product();
+        let scale_squared = self.freedom / (-2.0 * product.ln());
         self.fit.colour(scale_squared.sqrt(), proposal);
-        self.log_density(self.fit.distance_squared(current)) - self.log_density(scale_squared * squares)
+        self.fit.log_proposal(current) - self.log_density(scale_squared * squares)
     }
 }

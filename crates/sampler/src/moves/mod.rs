@@ -8,12 +8,13 @@ mod differential_evolution;
 mod independence;
 #[cfg(test)]
 mod invariance;
+mod quality;
 mod snooker;
 mod stretch;
 
 pub use differential_evolution::DifferentialEvolution;
-pub(crate) use independence::mean_and_covariance;
 pub use independence::{Fit, Independence};
+pub(crate) use quality::{Quality, quality};
 pub use snooker::Snooker;
 pub use stretch::Stretch;
 
@@ -114,19 +115,19 @@ pub fn move_families() -> &'static [MoveFamily] {
         MoveFamily {
             name: Stretch::NAME,
             summary: "along the line to another walker (Goodman & Weare 2010)",
-            default_weight: 0.2,
+            default_weight: 0.25,
             build: |fit| Box::new(Stretch::new(fit.dimension())),
         },
         MoveFamily {
             name: DifferentialEvolution::NAME,
             summary: "by the difference of two other walkers (ter Braak 2006)",
-            default_weight: 0.7,
+            default_weight: 0.6,
             build: |fit| Box::new(DifferentialEvolution::new(fit.dimension())),
         },
         MoveFamily {
             name: Snooker::NAME,
             summary: "along the line to another walker, by the projected difference of two (ter Braak & Vrugt 2008)",
-            default_weight: 0.1,
+            default_weight: 0.15,
             build: |fit| Box::new(Snooker::new(&fit.widths())),
         },
         MoveFamily {

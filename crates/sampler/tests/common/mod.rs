@@ -74,3 +74,10 @@ impl Gaussian {
         -0.5 * squares
     }
 }
+
+/// Log density of Rosenbrock's function: x normal of mean 1 and variance 10, y normal about x² with variance 0.1. Then
+/// ⟨y⟩ = 11 and Var y = 0.1 + 4·10 + 2·10² = 240.1.
+pub fn rosenbrock(point: &[f64]) -> f64 {
+    let (x, y) = (point[0], point[1]);
+    -((x - 1.0) * (x - 1.0) / 20.0) - 5.0 * (y - x * x) * (y - x * x)
+}
