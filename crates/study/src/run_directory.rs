@@ -50,9 +50,12 @@ impl RunDirectory {
         manifest: &Manifest,
     ) -> Result<(), RunError> {
         let unwritable = || RunError::unwritable(&self.target);
-        write_file(&self.staging.join("chain.csv"), |out| write_chain(out, names, chain)).map_err(unwritable())?;
-        write_file(&self.staging.join("summary.json"), |out| write_json(out, summary)).map_err(unwritable())?;
-        write_file(&self.staging.join("manifest.json"), |out| write_json(out, manifest)).map_err(unwritable())?;
+        write_file(&self.staging.join("chain.csv"), |out| write_chain(out, names, chain))
+            .map_err(unwritable())?;
+        write_file(&self.staging.join("summary.json"), |out| write_json(out, summary))
+            .map_err(unwritable())?;
+        write_file(&self.staging.join("manifest.json"), |out| write_json(out, manifest))
+            .map_err(unwritable())?;
         self.put_in_place().map_err(unwritable())
     }
 

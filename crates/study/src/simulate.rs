@@ -61,7 +61,8 @@ pub fn simulate(
         let mut table = String::from("bin,multipole,separation,low,high,value\n");
         let mut blocks = Vec::new();
         for section in &survey.bins {
-            let covariance = gaussian_covariance(&model, &values, &mut Workspace::new(), bin, &design.bins[bin])?;
+            let covariance =
+                gaussian_covariance(&model, &values, &mut Workspace::new(), bin, &design.bins[bin])?;
             let factor = covariance.clone().cholesky().map(|cholesky| cholesky.unpack());
             let draws = DVector::from_fn(covariance.nrows(), |_, _| StandardNormal.sample(&mut random));
             let noise = factor.map_or_else(|| draws.clone() * 0.0, |factor| factor * &draws);

@@ -20,8 +20,10 @@ pub(crate) fn unaveraged_shells(
     if rows.iter().all(|row| row.edges.is_some()) {
         return Ok(Vec::new());
     }
-    let averaged: Vec<Row> =
-        rows.iter().map(|row| Row { edges: row.edges.or_else(|| guessed_edges(row, rows)), ..*row }).collect();
+    let averaged: Vec<Row> = rows
+        .iter()
+        .map(|row| Row { edges: row.edges.or_else(|| guessed_edges(row, rows)), ..*row })
+        .collect();
     let model = Model::new(ModelSetup { rows: averaged, ..posterior.model.setup().clone() })?;
     let mut of_shells = vec![0.0; rows.len()];
     model.predict(values, &mut Workspace::new(), &mut of_shells)?;
@@ -53,7 +55,8 @@ fn same_multipole(one: &Row, other: &Row) -> bool {
 
 /// Half the distance to the nearest row of the same multipole, to both sides; none for a row that stands alone.
 fn guessed_edges(row: &Row, rows: &[Row]) -> Option<(f64, f64)> {
-    let distances = rows.iter().filter(|other| same_multipole(row, other)).map(|other| (other.at - row.at).abs());
+    let distances =
+        rows.iter().filter(|other| same_multipole(row, other)).map(|other| (other.at - row.at).abs());
     let nearest = distances.filter(|&distance| distance > 0.0).fold(f64::INFINITY, f64::min);
     let half = 0.5 * nearest;
     nearest.is_finite().then_some(((row.at - half).max(0.0), row.at + half))

@@ -29,7 +29,10 @@ pub fn offset_in_tau(
     let mut rows: Vec<Row> = Vec::new();
     for bin in 0..setup.bins.len() {
         let dipoles = measurements.rows.iter().filter(|row| {
-            row.bin == bin && row.multipole == 1 && row.space == Space::Separation && row.pair == Pair::FirstSecond
+            row.bin == bin
+                && row.multipole == 1
+                && row.space == Space::Separation
+                && row.pair == Pair::FirstSecond
         });
         rows.extend(dipoles.min_by(|one, other| one.at.total_cmp(&other.at)));
     }

@@ -2,6 +2,8 @@
 //!
 //! Lines and columns are those of the base study in `common` after the change.
 
+#![allow(clippy::unwrap_used, clippy::panic, reason = "a test stops at the first surprise")]
+
 mod common;
 
 use common::{BASE, changed, resolve};

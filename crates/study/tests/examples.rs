@@ -1,5 +1,7 @@
 //! Studies that must be read: the documented example, the studies with closed-form answers, every way to write a quantity.
 
+#![allow(clippy::unwrap_used, clippy::panic, reason = "a test stops at the first surprise")]
+
 use oddwell_cosmology::PowerShape;
 use oddwell_model::{BinSetup, Effects, Model, ModelSetup, Pair, Row, Space};
 use oddwell_study::{ParameterMap, Quantity, State, Study, StudyError, StudyFile, Warning};

@@ -1,5 +1,7 @@
 //! What a study means: defaults, ties, systematics, joint priors, departures, overrides.
 
+#![allow(clippy::unwrap_used, clippy::panic, reason = "a test stops at the first surprise")]
+
 mod common;
 
 use common::{BASE, changed, resolve};

@@ -1,5 +1,7 @@
 //! The study that `oddwell new` writes.
 
+#![allow(clippy::unwrap_used, clippy::panic, reason = "a test stops at the first surprise")]
+
 use oddwell_study::{Study, StudyFile, template};
 
 fn study(text: &str) -> Study {

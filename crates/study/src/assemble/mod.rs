@@ -1,8 +1,8 @@
 //! From a resolved study to something that can be evaluated: measurements read, model built, posterior ready.
 
 mod measurements;
-mod power_table;
 mod posterior;
+mod power_table;
 
 pub use measurements::{Measurements, SurveyMeasurements, read_measurements};
 pub(crate) use posterior::model_setup;

@@ -208,7 +208,11 @@ impl Target for Posterior {
         self.priors.log_density(point)
     }
 
-    fn log_likelihood(&self, point: &[f64], scratch: &mut PosteriorScratch) -> Result<f64, EvaluationFailure> {
+    fn log_likelihood(
+        &self,
+        point: &[f64],
+        scratch: &mut PosteriorScratch,
+    ) -> Result<f64, EvaluationFailure> {
         self.any_log_likelihood(point, scratch).map_err(|error| {
             let reason = error.to_string();
             if error.is_recoverable() {

@@ -30,11 +30,17 @@ pub(super) struct Analysis {
 }
 
 impl Analysis {
-    pub(super) fn new(posterior: &Posterior, chain: &Chain, scratch: &mut PosteriorScratch) -> Result<Analysis, RunError> {
+    pub(super) fn new(
+        posterior: &Posterior,
+        chain: &Chain,
+        scratch: &mut PosteriorScratch,
+    ) -> Result<Analysis, RunError> {
         let visited = &chain.best;
         let (mut best, mut log_prior, mut log_likelihood) =
             (visited.point.clone(), visited.log_prior, visited.log_likelihood);
-        if let Some(peak) = chain.peak.as_ref().filter(|peak| peak.log_posterior >= log_prior + log_likelihood) {
+        if let Some(peak) =
+            chain.peak.as_ref().filter(|peak| peak.log_posterior >= log_prior + log_likelihood)
+        {
             best.clone_from(&peak.point);
             (log_prior, log_likelihood) = (peak.log_prior, peak.log_likelihood);
         }
@@ -48,7 +54,16 @@ impl Analysis {
         let prior = prior_precision(posterior, &best);
         let covariance = inverse_information(&(&fisher + &prior));
         let prior_covariance = prior_covariance(posterior);
-        Ok(Analysis { best, log_prior, log_likelihood, prediction, jacobian, fisher, covariance, prior_covariance })
+        Ok(Analysis {
+            best,
+            log_prior,
+            log_likelihood,
+            prediction,
+            jacobian,
+            fisher,
+            covariance,
+            prior_covariance,
+        })
     }
 
     /// The Fisher information of some rows of a survey (positions within it; `first` is its first row), by their own
@@ -77,8 +92,10 @@ fn information(
     let data = survey.data().select_rows(rows);
     let covariance = survey.covariance().select(rows);
     // A block of a definite covariance is definite.
-    SurveyLikelihood::from_covariance(data, covariance, &NoiseChoice::gaussian())
-        .map_or_else(|_| DMatrix::zeros(part.ncols(), part.ncols()), |block| block.fisher_information(&part) * weight)
+    SurveyLikelihood::from_covariance(data, covariance, &NoiseChoice::gaussian()).map_or_else(
+        |_| DMatrix::zeros(part.ncols(), part.ncols()),
+        |block| block.fisher_information(&part) * weight,
+    )
 }
 
 fn jacobian(

@@ -119,7 +119,7 @@ impl RunError {
     /// Whether it only says that the caller stopped the run before there was anything to write.
     #[must_use]
     pub fn is_interruption(&self) -> bool {
-        matches!(self, RunError::Sampler(SamplerError::Stopped { .. }))
+        matches!(self, RunError::Sampler(SamplerError::Stopped))
     }
 }
 

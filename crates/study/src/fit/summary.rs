@@ -67,7 +67,12 @@ pub(super) fn summarise(
             })
             .collect(),
         parameters,
-        departure_parameters: posterior.hypothesis.watched().iter().map(|&index| names[index].clone()).collect(),
+        departure_parameters: posterior
+            .hypothesis
+            .watched()
+            .iter()
+            .map(|&index| names[index].clone())
+            .collect(),
         best: goodness::goodness(posterior, measurements, &analysis)?,
         general_relativity,
         mimics,
@@ -90,7 +95,11 @@ fn sampler_summary(chain: &Chain, seed: u64) -> SamplerSummary {
         wall_seconds: chain.wall_seconds,
         evaluations_per_second: chain.evaluations as f64 / chain.wall_seconds.max(1e-9),
         acceptance: (proposed > 0).then(|| accepted as f64 / proposed as f64),
-        acceptance_by_move: chain.acceptance.iter().map(|of_move| (of_move.name.clone(), of_move.rate())).collect(),
+        acceptance_by_move: chain
+            .acceptance
+            .iter()
+            .map(|of_move| (of_move.name.clone(), of_move.rate()))
+            .collect(),
         threads: chain.threads,
         seed,
     }

@@ -55,7 +55,8 @@ pub(super) fn suspicions(
 
 fn not_converged(posterior: &Posterior, chain: &Chain) -> Warning {
     let names = posterior.map.names();
-    let Some(FailedTest { parameter, test, value, wanted, more_evaluations }) = chain.outcome.failing.first() else {
+    let Some(FailedTest { parameter, test, value, wanted, more_evaluations }) = chain.outcome.failing.first()
+    else {
         let (parameter, failed) = ("all".to_owned(), "the end of warm-up could not be told".to_owned());
         return Warning::NotConverged { parameter, failed, longer: None };
     };
@@ -167,7 +168,11 @@ fn unshared(posterior: &Posterior, analysis: &Analysis) -> Vec<Warning> {
         if let (Some(independent), Some(shared)) = both {
             warnings.push(Warning::UnsharedError {
                 quantity: quantity.to_owned(),
-                parameters: groups.iter().flat_map(|(_, members)| members).map(|&i| names[i].clone()).collect(),
+                parameters: groups
+                    .iter()
+                    .flat_map(|(_, members)| members)
+                    .map(|&i| names[i].clone())
+                    .collect(),
                 departure: names[departure].clone(),
                 independent,
                 shared,
