@@ -1,0 +1,158 @@
+//! `oddwell fit STUDY`
+
+use std::path::PathBuf;
+
+use oddwell_report::closing_summary;
+use oddwell_sampler::Control;
+use oddwell_study::{FitOptions, Fitted, Hypothesis, RunError, Study, default_directory, fit};
+use serde_json::Value;
+
+use super::{choice, read_study};
+use crate::ending::{Failure, Status};
+use crate::interrupt::Interrupt;
+use crate::options::{ALL, FitArguments};
+use crate::output::Output;
+use crate::progress::ProgressLine;
+
+pub(super) fn run(arguments: &FitArguments, output: &Output) -> Result<Status, Failure> {
+    let study = read_study(&arguments.study)?;
+    let threads = threads(arguments)?;
+    let asked = arguments.study.hypothesis.as_deref();
+    let plan = plan(&study, arguments, output)?;
+    if asked.is_none() {
+        for (hypothesis, _) in &plan {
+            output.notice(&choice("fitting", &study, hypothesis));
+        }
+    }
+    // Better now than after the first of them has run.
+    let taken = plan.iter().find(|(_, out)| !arguments.replace && out.symlink_metadata().is_ok());
+    if let Some((_, path)) = taken {
+        return Err(RunError::Exists { path: path.clone() }.into());
+    }
+    let planned = plan.len();
+    let interrupt = Interrupt::listen(*output);
+    let mut finished: Vec<Fitted> = Vec::new();
+    for (hypothesis, out) in plan {
+        if asked == Some(ALL) {
+            output.notice(&format!("fitting `{}`", hypothesis.name));
+        }
+        let options = FitOptions {
+            out,
+            replace: arguments.replace,
+            seed: arguments.seed,
+            maximum_evaluations: arguments.maximum_evaluations,
+            command: std::env::args_os().map(|word| word.to_string_lossy().into_owned()).collect(),
+            threads,
+        };
+        let fitted = watched_fit(&study, hypothesis, &options, output, &interrupt)?;
+        if !output.json && !output.quiet {
+            say_result(&fitted, output, finished.is_empty())?;
+        }
+        let stop = fitted.interrupted || interrupt.came();
+        finished.push(fitted);
+        if stop {
+            break;
+        }
+    }
+    if output.json {
+        output.json_result(&as_json(&finished, asked == Some(ALL))?)?;
+    }
+    Ok(status(&finished, output, finished.len() < planned))
+}
+
+/// Which hypotheses go where, in turn.
+fn plan<'a>(
+    study: &'a Study,
+    arguments: &FitArguments,
+    output: &Output,
+) -> Result<Vec<(&'a Hypothesis, PathBuf)>, Failure> {
+    if arguments.study.hypothesis.as_deref() != Some(ALL) {
+        let hypothesis = study.hypothesis(arguments.study.hypothesis.as_deref())?;
+        let out = arguments.out.clone().unwrap_or_else(|| default_directory(study, hypothesis));
+        return Ok(vec![(hypothesis, out)]);
+    }
+    let mut plan = Vec::new();
+    for hypothesis in &study.hypotheses {
+        if hypothesis.free.is_empty() {
+            output.notice(&format!("skipping `{}`: it has nothing to infer", hypothesis.name));
+            continue;
+        }
+        let out = match &arguments.out {
+            Some(folder) => folder.join(&hypothesis.name),
+            None => default_directory(study, hypothesis),
+        };
+        plan.push((hypothesis, out));
+    }
+    if plan.is_empty() {
+        let hypothesis = ALL.to_owned();
+        return Err(RunError::NothingInferred { hypothesis }.into());
+    }
+    Ok(plan)
+}
+
+/// Sizes the pool in which chains run side by side, and says how many threads there are.
+fn threads(arguments: &FitArguments) -> Result<usize, Failure> {
+    if let Some(threads) = arguments.threads {
+        rayon::ThreadPoolBuilder::new()
+            .num_threads(usize::from(threads))
+            .build_global()
+            .map_err(|error| Failure::command_line(format!("--threads {threads}: {error}; give fewer")))?;
+    }
+    Ok(rayon::current_num_threads())
+}
+
+fn watched_fit(
+    study: &Study,
+    hypothesis: &Hypothesis,
+    options: &FitOptions,
+    output: &Output,
+    interrupt: &Interrupt,
+) -> Result<Fitted, Failure> {
+    let watched: Vec<&str> =
+        hypothesis.watched().into_iter().map(|index| hypothesis.free[index].name.as_str()).collect();
+    let mut line = ProgressLine::new(output.shows_progress(), &watched);
+    Ok(fit(study, hypothesis, options, &mut |progress, names| {
+        line.show(progress, names);
+        if interrupt.came() { Control::Stop } else { Control::Continue }
+    })?)
+}
+
+fn say_result(fitted: &Fitted, output: &Output, first: bool) -> Result<(), Failure> {
+    let gap = if first { "" } else { "\n\n" };
+    let summary = closing_summary(&fitted.summary, output.style);
+    Ok(output.result(&format!("{gap}{summary}\nwritten to {}\n", fitted.directory.display()))?)
+}
+
+/// The contents of `summary.json`; a list of them for all hypotheses.
+fn as_json(finished: &[Fitted], list: bool) -> Result<Value, Failure> {
+    let values: Result<Vec<Value>, _> =
+        finished.iter().map(|fitted| serde_json::to_value(&fitted.summary)).collect();
+    let mut values = values.map_err(Failure::input)?;
+    Ok(match values.pop() {
+        Some(only) if !list => only,
+        last => {
+            values.extend(last);
+            Value::Array(values)
+        }
+    })
+}
+
+/// Says what did not converge, and returns the status.
+fn status(finished: &[Fitted], output: &Output, cut_short: bool) -> Status {
+    let mut status = Status::Done;
+    for fitted in finished.iter().filter(|fitted| !fitted.summary.converged) {
+        status = Status::NotConverged;
+        let place = fitted.directory.display();
+        let reason = fitted
+            .summary
+            .warnings
+            .iter()
+            .find(|warning| warning.code == "not-converged")
+            .map_or("not converged", |warning| &warning.text);
+        output.not_converged(&format!(
+            "`{}`: {reason}; results so far are in {place}",
+            fitted.summary.hypothesis
+        ));
+    }
+    if cut_short || finished.iter().any(|fitted| fitted.interrupted) { Status::Interrupted } else { status }
+}

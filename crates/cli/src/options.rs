@@ -1,0 +1,231 @@
+//! The command line.
+
+use std::ffi::OsString;
+use std::path::PathBuf;
+
+use clap::{Args, ColorChoice, CommandFactory, FromArgMatches, Parser, Subcommand, ValueEnum};
+
+use crate::ending::Status;
+use crate::output::Output;
+
+/// What `--hypothesis` calls every hypothesis of the study.
+pub(crate) const ALL: &str = "all";
+
+/// From the odd multipoles that were measured in galaxy surveys to a posterior on a departure from general relativity.
+///
+/// Odd multipoles of the cross-correlation of two samples of galaxies know how gravity bends time. A study is a text file
+/// (TOML) that names the measurements, the samples with what is known of them, and hypotheses; `oddwell` turns it into
+/// predictions and posteriors.
+#[derive(Debug, Parser)]
+#[command(
+    name = "oddwell",
+    version,
+    max_term_width = 100,
+    subcommand_required = true,
+    arg_required_else_help = true
+)]
+#[command(after_help = "A start: `oddwell new first`, then `oddwell fit first/study.toml`.")]
+#[command(after_long_help = "\
+A start:
+  oddwell new first
+  oddwell show first/study.toml
+  oddwell fit first/study.toml
+
+Exit status:
+  0    done
+  1    the input is wrong: study, data, or a folder that cannot be written (a bug, too, and then it says so)
+  2    the command line is wrong
+  3    done, but not converged: results are written and marked so
+  130  ended by Ctrl-C or SIGTERM; what a fit has sampled is written and marked as not converged
+
+What it can and cannot say:
+  All predictions are linear theory, which ends near 20 Mpc/h. A departure that light alone feels is the same, at every
+  separation, as an error of the evolution biases: the priors on those decide how well it can be known, and `fit` says
+  by how much they would have to be off.")]
+pub(crate) struct Options {
+    #[command(flatten)]
+    pub(crate) global: Global,
+    #[command(subcommand)]
+    pub(crate) command: Command,
+}
+
+/// Options of every command.
+#[derive(Args, Debug)]
+pub(crate) struct Global {
+    /// Say nothing but results and errors; `fit` then only writes its run directory
+    #[arg(long, global = true)]
+    pub(crate) quiet: bool,
+    /// Print results as JSON on standard output; errors too, as {"error": …}
+    #[arg(long, global = true)]
+    pub(crate) json: bool,
+    /// When to use colour
+    #[arg(long, global = true, value_enum, value_name = "WHEN", default_value_t = Colour::Auto)]
+    pub(crate) color: Colour,
+}
+
+/// When to use colour.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub(crate) enum Colour {
+    /// On a terminal, unless NO_COLOR is set
+    Auto,
+    /// Also in files and pipes
+    Always,
+    /// Not at all
+    Never,
+}
+
+/// The commands.
+#[derive(Debug, Subcommand)]
+pub(crate) enum Command {
+    /// Write a small working study with invented data, every key explained
+    #[command(after_help = "Example: oddwell new first")]
+    New(NewArguments),
+    /// Show what a study comes down to: every quantity, held or inferred, and where it was given
+    ///
+    /// Prints a line a quantity: its name (which `--set`, `same_as` and results use), whether it is held, inferred or
+    /// tied to another, the line of the study file it came from, and its value or prior.
+    #[command(after_help = "Example: oddwell show study.toml --hypothesis constant")]
+    Show(StudyArguments),
+    /// Predict every measured number, as CSV
+    ///
+    /// Prints a line a measured row: survey,bin,pair,multipole,separation,measured,error,predicted. Lengths are in Mpc/h.
+    ///
+    /// Inferred quantities stand at the centre of their priors: this is not the best fit. `--set` puts them elsewhere.
+    #[command(
+        after_help = "Example: oddwell predict study.toml --set departure.tau=3 --set larkfield.near.offset=10"
+    )]
+    Predict(StudyArguments),
+    /// Fit a hypothesis: a posterior of everything inferred, in a run directory
+    ///
+    /// Samples until the departure has as many effective samples as `[sampling]` asks for and every parameter passes, then
+    /// writes chain.csv, summary.json and manifest.json, and prints what came out, what else would look the same, and
+    /// what to look at before believing it.
+    ///
+    /// A posterior says where the departure lies if the hypothesis holds. It is not an evidence, and an interval that
+    /// leaves out zero is no detection. The same study, seed and version give the same chain with any number of threads.
+    #[command(after_help = "\
+Example: oddwell fit study.toml --hypothesis constant --out runs/first --seed 7
+
+Without --hypothesis, the first hypothesis with an inferred departure is fitted, and it says which.
+Ctrl-C stops early and keeps what was sampled, marked as not converged; a second one ends at once.")]
+    Fit(FitArguments),
+}
+
+/// Options of `new`.
+#[derive(Args, Debug)]
+pub(crate) struct NewArguments {
+    /// The folder to make; it must not exist, or be empty
+    #[arg(value_name = "DIR")]
+    pub(crate) directory: PathBuf,
+}
+
+/// Which study, which hypothesis, and what to change in it.
+#[derive(Args, Debug)]
+pub(crate) struct StudyArguments {
+    /// The study file
+    #[arg(value_name = "STUDY")]
+    pub(crate) study: PathBuf,
+    /// The hypothesis, by its name in the study; `fit` also takes `all`, for each in turn
+    #[arg(long, value_name = "NAME")]
+    pub(crate) hypothesis: Option<String>,
+    /// Give a quantity another value or prior, as in departure.tau=3 or 'larkfield.near.offset={ normal = [0, 5] }'
+    #[arg(long, value_name = "NAME=VALUE")]
+    pub(crate) set: Vec<String>,
+}
+
+const OUT_HELP: &str = "The run directory to make [default: runs/<title>-<hypothesis>]; with `--hypothesis all`, a folder \
+                        in which each has its own";
+
+/// Options of `fit`.
+#[derive(Args, Debug)]
+pub(crate) struct FitArguments {
+    #[command(flatten)]
+    pub(crate) study: StudyArguments,
+    /// The run directory to make
+    #[arg(long, value_name = "DIR", help = OUT_HELP)]
+    pub(crate) out: Option<PathBuf>,
+    /// Replace the run directory if it exists, once the new run is complete
+    #[arg(long)]
+    pub(crate) replace: bool,
+    /// Seed of every random number, in place of the study's
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u64).range(..=i64::MAX as u64))]
+    pub(crate) seed: Option<u64>,
+    /// Threads to sample with [default: one a core]
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=1024))]
+    pub(crate) threads: Option<u16>,
+    /// Give up after so many likelihood evaluations, converged or not
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u64).range(1..=i64::MAX as u64))]
+    pub(crate) maximum_evaluations: Option<u64>,
+}
+
+/// Reads the command line. A request for help or version is answered, a mistake explained; then there is only a status.
+pub(crate) fn read(words: impl IntoIterator<Item = OsString>) -> Result<Options, Status> {
+    let words: Vec<OsString> = words.into_iter().collect();
+    let colour = match asked_colour(&words) {
+        Some("always") => ColorChoice::Always,
+        Some("never") => ColorChoice::Never,
+        _ => ColorChoice::Auto,
+    };
+    let read = Options::command()
+        .color(colour)
+        .try_get_matches_from(&words)
+        .and_then(|matches| Options::from_arg_matches(&matches));
+    read.map_err(|error| {
+        // To standard output for help, which may be closed early; else to standard error.
+        let _ = error.print();
+        if !error.use_stderr() {
+            return Status::Done;
+        }
+        if words.iter().any(|word| word == "--json") {
+            let first = error.to_string().lines().next().unwrap_or_default().to_owned();
+            let text = first.strip_prefix("error: ").unwrap_or(&first).to_owned();
+            let _ = Output::json_error(&text);
+        }
+        Status::CommandLineWrong
+    })
+}
+
+/// The value of `--color`, needed before anything else is understood.
+fn asked_colour(words: &[OsString]) -> Option<&str> {
+    let at = words.iter().position(|word| word.to_str().is_some_and(|word| word.starts_with("--color")))?;
+    match words[at].to_str()?.strip_prefix("--color")? {
+        "" => words.get(at + 1)?.to_str(),
+        value => value.strip_prefix('='),
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn words(line: &str) -> Vec<OsString> {
+        line.split_whitespace().map(OsString::from).collect()
+    }
+
+    #[test]
+    fn the_options_are_consistent() {
+        Options::command().debug_assert();
+    }
+
+    #[test]
+    fn a_fit_with_everything() {
+        let line = "oddwell fit study.toml --hypothesis all --out here --seed 7 --threads 2 --replace --set a.b=1 \
+                    --set c=2 --maximum-evaluations 1000 --quiet --json --color never";
+        let options = read(words(line)).expect("valid");
+        assert!(options.global.quiet && options.global.json && options.global.color == Colour::Never);
+        let Command::Fit(fit) = options.command else { unreachable!("`fit` is `fit`") };
+        assert_eq!(fit.study.study, PathBuf::from("study.toml"));
+        assert_eq!(fit.study.hypothesis.as_deref(), Some(ALL));
+        assert_eq!(fit.study.set, ["a.b=1", "c=2"]);
+        assert_eq!((fit.seed, fit.threads, fit.maximum_evaluations), (Some(7), Some(2), Some(1000)));
+        assert_eq!((fit.out, fit.replace), (Some(PathBuf::from("here")), true));
+    }
+
+    #[test]
+    fn colour_is_found_wherever_it_stands() {
+        assert_eq!(asked_colour(&words("oddwell --color=always fit")), Some("always"));
+        assert_eq!(asked_colour(&words("oddwell fit --color never")), Some("never"));
+        assert_eq!(asked_colour(&words("oddwell fit --colorful")), None);
+        assert_eq!(asked_colour(&words("oddwell fit --color")), None);
+    }
+}
