@@ -53,13 +53,14 @@ pub(crate) struct Options {
 #[derive(Args, Debug)]
 pub(crate) struct Global {
     /// Say nothing but results and errors; `fit` then only writes its run directory
-    #[arg(long, global = true)]
+    #[arg(long, global = true, help_heading = EVERYWHERE)]
     pub(crate) quiet: bool,
     /// Print results as JSON on standard output; errors too, as {"error": …}
-    #[arg(long, global = true)]
+    #[arg(long, global = true, help_heading = EVERYWHERE)]
     pub(crate) json: bool,
     /// When to use colour
     #[arg(long, global = true, value_enum, value_name = "WHEN", default_value_t = Colour::Auto)]
+    #[arg(help_heading = EVERYWHERE)]
     pub(crate) color: Colour,
 }
 
@@ -106,8 +107,8 @@ pub(crate) enum Command {
     #[command(after_help = "\
 Example: oddwell fit study.toml --hypothesis constant --out runs/first --seed 7
 
-Without --hypothesis, the first hypothesis with an inferred departure is fitted, and it says which.
 Ctrl-C stops early and keeps what was sampled, marked as not converged; a second one ends at once.")]
+    #[command(mut_arg("hypothesis", |argument| argument.help(WHICH_TO_FIT)))]
     Fit(FitArguments),
 }
 
@@ -125,13 +126,18 @@ pub(crate) struct StudyArguments {
     /// The study file
     #[arg(value_name = "STUDY")]
     pub(crate) study: PathBuf,
-    /// The hypothesis, by its name in the study; `fit` also takes `all`, for each in turn
+    /// The hypothesis, by its name in the study; if not given, the first with an inferred departure
     #[arg(long, value_name = "NAME")]
     pub(crate) hypothesis: Option<String>,
     /// Give a quantity another value or prior, as in departure.tau=3 or 'larkfield.near.offset={ normal = [0, 5] }'
     #[arg(long, value_name = "NAME=VALUE")]
     pub(crate) set: Vec<String>,
 }
+
+const EVERYWHERE: &str = "Everywhere";
+
+const WHICH_TO_FIT: &str = "The hypothesis, by its name in the study, or `all` of them in turn; if not given, the first with \
+                            an inferred departure, and it says which";
 
 const OUT_HELP: &str = "The run directory to make [default: runs/<title>-<hypothesis>]; with `--hypothesis all`, a folder \
                         in which each has its own";
