@@ -2,7 +2,7 @@
 
 use indicatif::{ProgressBar, ProgressDrawTarget, ProgressStyle};
 use oddwell_report::{count, duration, whole};
-use oddwell_sampler::{MAXIMUM_RHAT, Phase, Progress};
+use oddwell_study::{MAXIMUM_RHAT, Phase, Progress};
 
 /// A line on the terminal, or nothing.
 pub(crate) struct ProgressLine {

@@ -37,6 +37,7 @@ pub use file::{Located, Origin, Override, Place, PriorSpec, Quantity, StudyFile}
 pub use fit::{FitOptions, Fitted, default_directory, fit};
 pub use nearest::Nearest;
 pub use new_study::write_new_study;
+pub use oddwell_sampler::{Control, MAXIMUM_RHAT, Phase, Progress};
 pub use parameter_map::{ParameterMap, Term};
 pub use predict::{PredictedRow, predict};
 pub use resolve::{AffineForm, FreeParameter, FreePrior, Hypothesis, ResolvedQuantity, State, Study};

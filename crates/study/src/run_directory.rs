@@ -21,11 +21,16 @@ impl RunDirectory {
     /// Makes the hidden folder, so that a run whose results can't be written ends before it begins.
     ///
     /// # Errors
-    /// [`RunError::Exists`] where `target` exists and may not be replaced; [`RunError::Unwritable`] where the folder
+    /// [`RunError::Exists`] where `target` exists and may not be replaced; [`RunError::NotARun`] where it is no run directory; [`RunError::Unwritable`] where the folder
     /// can't be made.
     pub fn claim(target: &Path, replace: bool) -> Result<RunDirectory, RunError> {
-        if target.symlink_metadata().is_ok() && !replace {
-            return Err(RunError::Exists { path: target.to_owned() });
+        if target.symlink_metadata().is_ok() {
+            if !replace {
+                return Err(RunError::Exists { path: target.to_owned() });
+            }
+            if !is_run(target) {
+                return Err(RunError::NotARun { path: target.to_owned() });
+            }
         }
         let parent = match target.parent() {
             Some(parent) if !parent.as_os_str().is_empty() => parent.to_owned(),
@@ -33,6 +38,7 @@ impl RunDirectory {
         };
         fs::create_dir_all(&parent).map_err(RunError::unwritable(target))?;
         let name = target.file_name().unwrap_or_default().to_string_lossy();
+        sweep(&parent, &format!(".{name}.unfinished-"));
         let staging = parent.join(format!(".{name}.unfinished-{}", std::process::id()));
         fs::create_dir(&staging).map_err(RunError::unwritable(target))?;
         Ok(RunDirectory { target: target.to_owned(), staging, replace })
@@ -77,6 +83,26 @@ impl Drop for RunDirectory {
     fn drop(&mut self) {
         // Gone already after a success; nothing half-written stays behind after a failure.
         let _ = fs::remove_dir_all(&self.staging);
+    }
+}
+
+/// Whether `--replace` may take it away: an empty folder, or one that this program has written.
+fn is_run(path: &Path) -> bool {
+    let empty = fs::read_dir(path).is_ok_and(|mut entries| entries.next().is_none());
+    empty || ["summary.json", "manifest.json"].iter().all(|file| path.join(file).is_file())
+}
+
+/// Removes what a run that was killed left behind: hidden folders whose process is gone (where that can be told).
+fn sweep(parent: &Path, prefix: &str) {
+    let processes = Path::new("/proc");
+    let Ok(entries) = fs::read_dir(parent) else { return };
+    for entry in entries.flatten() {
+        let name = entry.file_name();
+        let process = name.to_str().and_then(|name| name.strip_prefix(prefix)?.parse::<u32>().ok());
+        let gone = |id: u32| processes.join("self").exists() && !processes.join(id.to_string()).exists();
+        if process.is_some_and(gone) {
+            let _ = fs::remove_dir_all(entry.path());
+        }
     }
 }
 

@@ -104,10 +104,40 @@ pub enum RunError {
         /// What to do.
         way_out: &'static str,
     },
+    /// A table of the matter power spectrum does not reach as far as the prediction needs.
+    #[error("{file}: {source}")]
+    PowerRange {
+        /// The table.
+        file: String,
+        /// Which wavenumbers it covers, and which are needed.
+        source: CosmologyError,
+    },
+    /// A window matrix, or the table that names its columns, is wrong.
+    #[error("{file}{at}: {rule}, found {value}; {way_out}")]
+    Window {
+        /// The file.
+        file: String,
+        /// `, line N`, with more where it is known, or nothing.
+        at: String,
+        /// The rule it breaks.
+        rule: String,
+        /// What was found.
+        value: String,
+        /// What to do.
+        way_out: String,
+    },
     /// The run directory exists.
     #[error("{}: exists already, and a run is never overwritten; give `--replace`, or another folder with `--out`", .path.display())]
     Exists {
         /// The directory.
+        path: PathBuf,
+    },
+    /// What stands where the run directory is to be is no run directory.
+    #[error(
+        "{}: is not a run directory (it has no summary.json and manifest.json), so `--replace` leaves it alone; give another folder with `--out`", .path.display()
+    )]
+    NotARun {
+        /// The path.
         path: PathBuf,
     },
     /// A file or folder can't be written.

@@ -33,14 +33,12 @@ pub enum Warning {
         /// Its standard deviation were the error one and the same in all of them.
         shared: f64,
     },
-    /// At the smallest separation of a bin the redshift offset outweighs the departure.
+    /// At the smallest separation of some bins the redshift offset outweighs the departure.
     SmallSeparation {
-        /// `SURVEY.BIN`.
-        bin: String,
-        /// Smallest separation kept, Mpc/h.
-        separation: f64,
-        /// What 1 km/s of offset is worth there, in τ.
-        worth: f64,
+        /// `SURVEY.BIN`, the smallest separation kept in Mpc/h, and what 1 km/s of offset is worth there, in τ.
+        bins: Vec<(String, f64, f64)>,
+        /// Those of them whose offset is held.
+        held: Vec<String>,
     },
     /// A departure that only light feels is quoted on the assumption that matter grows as in general relativity.
     GrowthAssumed {
@@ -105,7 +103,7 @@ impl Warning {
             | Self::Untested { parameter, .. }
             | Self::NotConverged { parameter, .. } => parameter,
             Self::UnsharedError { departure, .. } => departure,
-            Self::SmallSeparation { bin, .. } => bin,
+            Self::SmallSeparation { bins, .. } => bins.first().map_or("", |(bin, ..)| bin),
             Self::GrowthAssumed { hypothesis } => hypothesis,
             Self::UnaveragedShell { survey, .. } => survey,
             Self::IgnoredColumn { file, .. } => file,
@@ -125,9 +123,22 @@ impl Warning {
                 "{} have equal priors on {quantity} with independent errors, which gives `{departure}` a standard deviation of {independent:.3}; were it one error in all of them it would be {shared:.3}: if they share a source, say so with a [[systematic]]",
                 parameters.join(", ")
             ),
-            Self::SmallSeparation { bin, separation, worth } => format!(
-                "in `{bin}` 1 km/s of redshift offset is worth {worth:.2} in tau at the smallest separation, {separation} Mpc/h; give `offset` a prior, or drop the smallest separations with `keep`"
-            ),
+            Self::SmallSeparation { bins, held } => {
+                let bins: Vec<String> = bins
+                    .iter()
+                    .map(|(bin, separation, worth)| format!("{worth:.2} at {separation} Mpc/h in `{bin}`"))
+                    .collect();
+                let way_out = if held.is_empty() {
+                    "the priors on `offset` carry that into the error; see whether the departure moves without the smallest separations (`keep`)".to_owned()
+                } else {
+                    let held: Vec<String> = held.iter().map(|bin| format!("`{bin}.offset`")).collect();
+                    format!("give a prior to {}, or drop the smallest separations with `keep`", held.join(", "))
+                };
+                format!(
+                    "1 km/s of redshift offset is worth much in tau at the smallest separations: {}; {way_out}",
+                    bins.join(", ")
+                )
+            }
             Self::GrowthAssumed { hypothesis } => format!(
                 "`{hypothesis}` is felt by light alone: it takes matter to grow as in general relativity; free `growth_index`, or give `growth_rate`, to see how much hangs on that"
             ),
@@ -136,10 +147,10 @@ impl Warning {
             ),
             Self::NotConverged { parameter, failed, longer } => {
                 let longer = longer.map_or_else(
-                    || "run it longer".to_owned(),
-                    |longer| format!("run it about {longer:.1} times as long"),
+                    || "run it longer, with a larger `--maximum-evaluations`".to_owned(),
+                    |longer| format!("run it about {longer:.1} times as long (`--maximum-evaluations`)"),
                 );
-                format!("not converged: `{parameter}` has {failed}; {longer} (`--resume`)")
+                format!("not converged: `{parameter}` has {failed}; {longer}")
             }
             Self::UnaveragedShell { survey, difference } => format!(
                 "the rows of `{survey}` have no `low` and `high`: averaging over shells as wide as their spacing would change the prediction by up to {:.1} % of the multipole's largest value; add the two columns",

@@ -3,7 +3,7 @@
 use std::path::PathBuf;
 
 use oddwell_report::closing_summary;
-use oddwell_sampler::Control;
+use oddwell_study::Control;
 use oddwell_study::{FitOptions, Fitted, Hypothesis, RunError, Study, default_directory, fit};
 use serde_json::Value;
 

@@ -87,7 +87,11 @@ pub fn fit(
         seed: options.seed.unwrap_or(sampling.seed.value),
         effective_samples: sampling.effective_samples.value as f64,
         watched: hypothesis.watched(),
-        maximum_evaluations: options.maximum_evaluations,
+        ensembles: sampling.ensembles.value as usize,
+        walkers: sampling.walkers.as_ref().map(|walkers| walkers.value as usize),
+        maximum_evaluations: options
+            .maximum_evaluations
+            .or_else(|| sampling.maximum_evaluations.as_ref().map(|maximum| maximum.value)),
         ..EnsembleSettings::default()
     };
     let names = posterior.map.names().to_vec();

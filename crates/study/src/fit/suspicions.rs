@@ -10,7 +10,7 @@ use crate::worth::offset_in_tau;
 use nalgebra::DMatrix;
 use oddwell_likelihood::posterior_covariance;
 use oddwell_model::FeltBy;
-use oddwell_sampler::{Chain, FailedTest, Prior};
+use oddwell_sampler::{Chain, FailedTest, Prior, Test};
 
 /// A posterior density at a prior's edge above a tenth of a normal's peak is a pile-up: 0.1 × 0.399/sd.
 const EDGE_DENSITY: f64 = 0.04;
@@ -39,14 +39,8 @@ pub(super) fn suspicions(
     warnings.extend(moved(posterior, chain));
     warnings.extend(unshared(posterior, analysis));
     let values = posterior.values(&analysis.best);
-    for worth in offset_in_tau(posterior, measurements, &values)? {
-        if worth.tau_per_kilometre > OFFSET_WORTH {
-            warnings.push(Warning::SmallSeparation {
-                bin: worth.bin,
-                separation: worth.separation,
-                worth: worth.tau_per_kilometre,
-            });
-        }
+    if !posterior.hypothesis.watched().is_empty() {
+        warnings.extend(small_separations(posterior, measurements, &values)?);
     }
     warnings.extend(growth_assumed(posterior));
     warnings.extend(unaveraged_shells(posterior, measurements, &values, scratch)?);
@@ -62,7 +56,10 @@ fn not_converged(posterior: &Posterior, chain: &Chain) -> Warning {
     };
     Warning::NotConverged {
         parameter: names[*parameter].clone(),
-        failed: format!("{test} {value:.4} of {wanted}"),
+        failed: match test {
+            Test::Rhat => format!("R̂ = {value:.4}, which must be below {wanted}"),
+            _ => format!("{value:.0} of {wanted:.0} {test}"),
+        },
         longer: more_evaluations.map(|more| 1.0 + more / chain.evaluations as f64),
     }
 }
@@ -185,6 +182,25 @@ fn unshared(posterior: &Posterior, analysis: &Analysis) -> Vec<Warning> {
 /// Whether a systematic moves the quantity: then its error is already partly shared.
 fn has_shared_error(posterior: &Posterior, quantity: usize) -> bool {
     !posterior.hypothesis.quantities[quantity].moves.is_empty()
+}
+
+fn small_separations(
+    posterior: &Posterior,
+    measurements: &Measurements,
+    values: &[f64],
+) -> Result<Option<Warning>, RunError> {
+    let mut bins = Vec::new();
+    let mut held = Vec::new();
+    for worth in offset_in_tau(posterior, measurements, values)? {
+        if worth.tau_per_kilometre > OFFSET_WORTH {
+            let offset = posterior.model.layout().index(&format!("{}.offset", worth.bin));
+            if offset.is_some_and(|slot| posterior.map.is_held(slot)) {
+                held.push(worth.bin.clone());
+            }
+            bins.push((worth.bin, worth.separation, worth.tau_per_kilometre));
+        }
+    }
+    Ok((!bins.is_empty()).then_some(Warning::SmallSeparation { bins, held }))
 }
 
 fn growth_assumed(posterior: &Posterior) -> Option<Warning> {
