@@ -3,71 +3,93 @@
 use std::collections::BTreeMap;
 use std::path::Path;
 
-use nalgebra::DMatrix;
-
+use crate::arrays::{ArrayFormat, NumberArray, array_formats, file_bytes, format_of, parse_array};
 use crate::covariance::Covariance;
-use crate::error::{DataError, shown};
+use crate::error::DataError;
 use crate::header::Header;
-use crate::records::{Records, finite_number};
+use crate::records::Records;
 use crate::rows::{RowIndex, RowKey, RowReader};
 use crate::table::{MeasuredRow, MultipoleTable};
 
 const MATRIX: &str = "a square matrix, one line a row";
 const ROWS: &str = "a header such as bin,multipole,separation and a line for each row of the covariance";
 
-/// Reads a square CSV file without a header as the covariance of `rows` rows; lines that begin with `#` are notes.
+/// Reads a square table of numbers as the covariance of `rows` rows, in the format that the file's ending names: a CSV
+/// file without a header, a NumPy array or a FITS image ([`array_formats`](crate::array_formats)).
 ///
 /// `rows` is the number of rows of the table, or of `covariance_rows` where it is given.
 ///
 /// # Errors
-/// No such file; text in a number or a number that is not finite (line and column named); lines of unequal length;
-/// not `rows` × `rows`; not symmetric; a variance ≤ 0.
+/// No such file; an ending that no format has; a file that is not of its format, is cut short, holds integers or more
+/// than two dimensions; text in a number (line and column named); not `rows` × `rows`; a number that is not finite; not
+/// symmetric; a variance ≤ 0.
+pub fn read_covariance(path: impl AsRef<Path>, rows: usize) -> Result<Covariance, DataError> {
+    let path = path.as_ref();
+    covariance_from(format_of(path)?, &path.display().to_string(), &file_bytes(path)?, rows)
+}
+
+/// As [`read_covariance`], for a CSV file whatever its ending.
+///
+/// # Errors
+/// As [`read_covariance`].
 pub fn read_covariance_csv(path: impl AsRef<Path>, rows: usize) -> Result<Covariance, DataError> {
-    covariance_from(Records::read(path.as_ref(), MATRIX)?, rows)
+    let path = path.as_ref();
+    Covariance::parse_csv(&path.display().to_string(), &file_bytes(path)?, rows)
 }
 
 impl Covariance {
+    /// As [`read_covariance`], from memory; `file` names it in messages and its ending the format.
+    ///
+    /// # Errors
+    /// As [`read_covariance`].
+    pub fn parse(file: &str, bytes: &[u8], rows: usize) -> Result<Self, DataError> {
+        covariance_from(format_of(Path::new(file))?, file, bytes, rows)
+    }
+
     /// As [`read_covariance_csv`], from memory; `file` names it in messages.
     ///
     /// # Errors
-    /// As [`read_covariance_csv`].
+    /// As [`read_covariance`].
     pub fn parse_csv(file: &str, bytes: &[u8], rows: usize) -> Result<Self, DataError> {
-        covariance_from(Records::parse(file.to_owned(), bytes, MATRIX)?, rows)
+        covariance_from(array_formats()[0], file, bytes, rows)
     }
 }
 
-fn covariance_from(records: Records, rows: usize) -> Result<Covariance, DataError> {
-    let first = &records.records[0];
-    if first.fields.iter().all(|text| text.parse::<f64>().is_err() && !text.contains(char::is_whitespace)) {
-        let text = shown(&first.fields[0]);
-        return Err(DataError::MatrixHeader { file: records.file.clone(), line: first.line, text });
-    }
-    let (lines, columns) = (records.records.len(), first.fields.len());
-    if (lines, columns) != (rows, rows) {
-        let way_out = if columns == 1 && rows > 1 {
+fn covariance_from(
+    format: &dyn ArrayFormat,
+    file: &str,
+    bytes: &[u8],
+    rows: usize,
+) -> Result<Covariance, DataError> {
+    let NumberArray { file, numbers, line_names } = square_array(format, file, bytes, rows)?;
+    Ok(Covariance::labelled(numbers, file, line_names)?)
+}
+
+/// A table of `rows` × `rows` numbers, not checked further.
+pub(crate) fn square_array(
+    format: &dyn ArrayFormat,
+    file: &str,
+    bytes: &[u8],
+    rows: usize,
+) -> Result<NumberArray, DataError> {
+    let square = |file: &str, lines: usize, columns: usize| {
+        if (lines, columns) == (rows, rows) {
+            return Ok(());
+        }
+        let way_out = if columns == 1 && rows > 1 && format.name() == "csv" {
             "separate the numbers of a line with commas"
         } else if lines == columns && lines > rows {
             "if it holds more rows than the table, name its rows with `covariance_rows`"
         } else {
             "give the covariance of all rows of the table, in the table's order"
         };
-        return Err(DataError::CovarianceSize {
-            file: records.file,
-            expected: rows,
-            rows: lines,
-            columns,
-            way_out,
-        });
-    }
-    records.check_field_counts()?;
-    let mut matrix = DMatrix::zeros(rows, rows);
-    for (i, record) in records.records.iter().enumerate() {
-        for (j, text) in record.fields.iter().enumerate() {
-            matrix[(i, j)] = finite_number(text, || records.place(record.line, &(j + 1).to_string()))?;
-        }
-    }
-    let labels = records.records.iter().map(|record| format!("line {}", record.line)).collect();
-    Ok(Covariance::labelled(matrix, records.file, labels)?)
+        let (file, expected) = (file.to_owned(), rows);
+        Err(DataError::CovarianceSize { file, expected, rows: lines, columns, way_out })
+    };
+    parse_array(format, file, bytes, &square).map_err(|error| match error {
+        DataError::Empty { file, .. } => DataError::Empty { file, wanted: MATRIX },
+        other => other,
+    })
 }
 
 /// The columns of a `covariance_rows` file.

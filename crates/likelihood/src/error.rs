@@ -1,5 +1,6 @@
 //! What can be wrong with a file of measurements, and with a request that refers to its rows.
 
+use crate::arrays::ArrayError;
 use crate::covariance::CovarianceError;
 
 /// Where in a file the user wrote something: file as given, line (1-based) and column by its header.
@@ -378,6 +379,9 @@ pub enum DataError {
         /// The value.
         h: f64,
     },
+    /// A file of bare numbers is at fault.
+    #[error(transparent)]
+    Array(#[from] ArrayError),
     /// The covariance itself is at fault.
     #[error(transparent)]
     Covariance(#[from] CovarianceError),

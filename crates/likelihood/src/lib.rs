@@ -8,6 +8,7 @@
 //!
 //! This crate knows no physics, no priors and no sampling: a prediction is a vector, or kernels and coefficients.
 
+mod arrays;
 mod blocks;
 mod cholesky;
 mod compressed;
@@ -28,10 +29,11 @@ mod table;
 mod triangle;
 mod units;
 
+pub use arrays::{ArrayError, ArrayFormat, array_formats};
 pub use compressed::{CompressedLikelihood, LeastSquares};
 pub use covariance::{Covariance, CovarianceError, SYMMETRY_TOLERANCE};
 pub use covariance_file::{
-    COVARIANCE_ROW_COLUMNS, CovarianceRows, read_covariance_csv, read_covariance_rows,
+    COVARIANCE_ROW_COLUMNS, CovarianceRows, read_covariance, read_covariance_csv, read_covariance_rows,
 };
 pub use error::{DataError, Place};
 pub use fisher::{FisherError, effective_parameters, expected_standard_deviations};

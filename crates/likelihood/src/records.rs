@@ -4,6 +4,7 @@ use std::path::Path;
 
 use csv::{ReaderBuilder, StringRecord, Trim};
 
+use crate::arrays::file_bytes;
 use crate::error::{DataError, Place, shown};
 
 /// One line of fields.
@@ -23,12 +24,7 @@ pub(crate) struct Records {
 impl Records {
     /// Reads a file. `wanted` says in an error what an empty file should have held.
     pub(crate) fn read(path: &Path, wanted: &'static str) -> Result<Self, DataError> {
-        let file = path.display().to_string();
-        let bytes = std::fs::read(path).map_err(|reason| match reason.kind() {
-            std::io::ErrorKind::NotFound => DataError::Missing { file: file.clone() },
-            _ => DataError::Unreadable { file: file.clone(), reason },
-        })?;
-        Self::parse(file, &bytes, wanted)
+        Self::parse(path.display().to_string(), &file_bytes(path)?, wanted)
     }
 
     /// Splits text into records.
