@@ -14,6 +14,8 @@ use std::path::{Path, PathBuf};
 pub struct RunDirectory {
     target: PathBuf,
     staging: PathBuf,
+    /// Folders above the target that were made for it, the innermost first.
+    made: Vec<PathBuf>,
     replace: bool,
 }
 
@@ -36,12 +38,18 @@ impl RunDirectory {
             Some(parent) if !parent.as_os_str().is_empty() => parent.to_owned(),
             _ => PathBuf::from("."),
         };
+        let made: Vec<PathBuf> = parent
+            .ancestors()
+            .take_while(|folder| !folder.as_os_str().is_empty() && !folder.exists())
+            .map(Path::to_owned)
+            .collect();
         fs::create_dir_all(&parent).map_err(RunError::unwritable(target))?;
         let name = target.file_name().unwrap_or_default().to_string_lossy();
         sweep(&parent, &format!(".{name}.unfinished-"));
         let staging = parent.join(format!(".{name}.unfinished-{}", std::process::id()));
-        fs::create_dir(&staging).map_err(RunError::unwritable(target))?;
-        Ok(RunDirectory { target: target.to_owned(), staging, replace })
+        let claimed = RunDirectory { target: target.to_owned(), staging, made, replace };
+        fs::create_dir(&claimed.staging).map_err(RunError::unwritable(target))?;
+        Ok(claimed)
     }
 
     /// Writes `chain.csv`, `summary.json` and `manifest.json`, then puts the directory in its place.
@@ -83,6 +91,10 @@ impl Drop for RunDirectory {
     fn drop(&mut self) {
         // Gone already after a success; nothing half-written stays behind after a failure.
         let _ = fs::remove_dir_all(&self.staging);
+        // Folders made for a run that did not come about; those that hold one stay, since they are not empty.
+        for folder in &self.made {
+            let _ = fs::remove_dir(folder);
+        }
     }
 }
 
