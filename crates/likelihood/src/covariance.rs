@@ -64,6 +64,28 @@ pub enum CovarianceError {
         /// The diagonal entry.
         value: f64,
     },
+    /// A variance below zero, of an additional covariance.
+    #[error(
+        "{origin}: the variance of {row} must be 0 or above, found {value:e}; correct it, or give 0 where nothing is added"
+    )]
+    VarianceNegative {
+        /// Where the matrix comes from.
+        origin: String,
+        /// The row.
+        row: String,
+        /// The diagonal entry.
+        value: f64,
+    },
+    /// An additional covariance with a negative eigenvalue.
+    #[error(
+        "{origin}: an additional covariance must have no negative eigenvalue, but the smallest is {eigenvalue:.3} of a unit diagonal; check that the file is whole and that its correlations stay within -1 and 1"
+    )]
+    ExtraNegative {
+        /// Where the matrix comes from.
+        origin: String,
+        /// Smallest eigenvalue once scaled to a unit diagonal; −∞ where a row without variance has a covariance.
+        eigenvalue: f64,
+    },
     /// C_ij and C_ji differ beyond rounding.
     #[error(
         "{origin}: must be symmetric, but the covariance of {row} with {column} is {upper:e} one way and {lower:e} the other; they may differ by 1e-6 of the two standard deviations: check that the file is whole and in one order"
@@ -234,6 +256,11 @@ impl Covariance {
         assert_eq!(factors.len(), self.len(), "a factor for each row of the covariance");
         let matrix =
             DMatrix::from_fn(self.len(), self.len(), |i, j| self.matrix[(i, j)] * (factors[i] * factors[j]));
+        Self { matrix, origin: self.origin.clone(), labels: self.labels.clone() }
+    }
+
+    /// The same rows with another matrix, which must be symmetric and have positive variances.
+    pub(crate) fn with_matrix(&self, matrix: DMatrix<f64>) -> Self {
         Self { matrix, origin: self.origin.clone(), labels: self.labels.clone() }
     }
 

@@ -2,6 +2,7 @@
 
 use crate::arrays::ArrayError;
 use crate::covariance::CovarianceError;
+use crate::mocks::MockError;
 
 /// Where in a file the user wrote something: file as given, line (1-based) and column by its header.
 #[derive(Clone, Debug, PartialEq, Eq)]
@@ -382,6 +383,9 @@ pub enum DataError {
     /// A file of bare numbers is at fault.
     #[error(transparent)]
     Array(#[from] ArrayError),
+    /// Mock measurements are.
+    #[error(transparent)]
+    Mocks(#[from] MockError),
     /// The covariance itself is at fault.
     #[error(transparent)]
     Covariance(#[from] CovarianceError),

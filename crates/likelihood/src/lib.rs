@@ -15,14 +15,18 @@ mod compressed;
 mod covariance;
 mod covariance_file;
 mod error;
+mod extra;
 mod fisher;
 mod goodness;
 mod header;
 mod information;
+mod joint;
 mod keep;
+mod mocks;
 mod noise;
 mod records;
 mod rows;
+mod shrinkage;
 mod survey;
 mod surveys;
 mod table;
@@ -36,15 +40,19 @@ pub use covariance_file::{
     COVARIANCE_ROW_COLUMNS, CovarianceRows, read_covariance, read_covariance_csv, read_covariance_rows,
 };
 pub use error::{DataError, Place};
+pub use extra::{ExtraCovariance, read_extra_covariance};
 pub use fisher::{FisherError, effective_parameters, expected_standard_deviations};
 pub use goodness::chi_squared_p_value;
 pub use header::IgnoredColumn;
 pub use information::{
     allowed_shift, inverse_information, posterior_covariance, share_of_effective_parameters,
 };
+pub use joint::JointSurvey;
 pub use keep::{Keep, Kept, keep_rows};
+pub use mocks::{MockError, MockSet, MockTables, read_mock_tables, read_mocks};
 pub use noise::{NoiseChoice, NoiseError, NoiseFamily, NoiseInputs, NoiseModel, noise_families};
 pub use rows::{Axis, PAIRS};
+pub use shrinkage::Shrunk;
 pub use survey::{LikelihoodError, SurveyLikelihood};
 pub use surveys::{CompressedSet, SurveySet};
 pub use table::{MeasuredRow, MultipoleTable, TABLE_COLUMNS, read_multipoles};

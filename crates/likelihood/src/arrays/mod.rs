@@ -78,13 +78,7 @@ pub(crate) fn file_bytes(path: &Path) -> Result<Vec<u8>, DataError> {
     })
 }
 
-/// Reads a table of numbers of the shape that `rule` accepts.
-pub(crate) fn read_array(path: &Path, rule: ShapeRule<'_>) -> Result<NumberArray, DataError> {
-    let format = format_of(path)?;
-    parse_array(format, &path.display().to_string(), &file_bytes(path)?, rule)
-}
-
-/// As [`read_array`], from memory.
+/// Reads the bytes of a file as a table of numbers of the shape that `rule` accepts; `file` names it in messages.
 pub(crate) fn parse_array(
     format: &dyn ArrayFormat,
     file: &str,
