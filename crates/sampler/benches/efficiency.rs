@@ -58,7 +58,7 @@ fn run<F: Fn(&[f64]) -> f64 + Sync>(
 fn main() {
     let mut settings = EnsembleSettings {
         watched: vec![0],
-        maximum_evaluations: Some(5_000_000),
+        maximum_evaluations: Some(100_000_000),
         ..EnsembleSettings::default()
     };
     let mut names = vec![];

@@ -149,7 +149,7 @@ pub enum StopReason {
 /// How a run ended.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Outcome {
-    /// Whether every test passed.
+    /// Whether warm-up ended and every test passed, whatever ended the run.
     pub converged: bool,
     /// Why the run ended.
     pub stopped_by: StopReason,

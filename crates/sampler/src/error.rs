@@ -50,6 +50,8 @@ pub enum SamplerError {
         partial: Option<Box<Chain>>,
     },
     /// The caller stopped the run before there was anything to hand back.
-    #[error("sampling: stopped before the first draw")]
+    #[error(
+        "sampling: stopped before there was a draw to hand back; allow it more evaluations, or more time"
+    )]
     Stopped,
 }

@@ -1,5 +1,6 @@
 //! What a run is asked for, and what it reports on the way.
 
+use crate::error::SamplerError;
 use serde::{Deserialize, Serialize};
 
 /// Rank-normalised split R̂ that every parameter must stay below (Vehtari et al. 2021, Bayesian Analysis 16, 667, §4.4).
@@ -52,6 +53,48 @@ impl Default for EnsembleSettings {
             maximum_draws: None,
             move_weights: vec![],
         }
+    }
+}
+
+impl EnsembleSettings {
+    /// Walkers of an ensemble over `dimension` coordinates: the halves span the space with a few to spare.
+    pub fn walkers_for(&self, dimension: usize) -> usize {
+        self.walkers.unwrap_or_else(|| (2 * dimension + 8).next_multiple_of(4).max(16))
+    }
+
+    /// Draws that are kept at most.
+    pub(crate) fn draws_at_most(&self) -> usize {
+        self.maximum_draws.unwrap_or_else(|| ((16.0 * self.effective_samples).min(1e9) as usize).max(1 << 16))
+    }
+
+    /// Refuses settings that cannot work for `dimension` coordinates.
+    pub(crate) fn check(&self, dimension: usize) -> Result<(), SamplerError> {
+        let wrong = |setting, rule: String, value: String, way_out| {
+            Err(SamplerError::Setting { setting, rule, value, way_out })
+        };
+        if self.ensembles < 2 {
+            let way_out = "R̂ compares ensembles; leave it out for 4";
+            return wrong("ensembles", "at least 2".to_owned(), self.ensembles.to_string(), way_out);
+        }
+        let least = (2 * dimension + 2).max(6);
+        if let Some(walkers) = self.walkers.filter(|walkers| *walkers < least || !walkers.is_multiple_of(2)) {
+            let way_out = "leave it out to have it chosen from the dimension";
+            return wrong("walkers", format!("even and at least {least}"), walkers.to_string(), way_out);
+        }
+        if let Some(watched) = self.watched.iter().find(|watched| **watched >= dimension) {
+            let way_out = "parameters are counted from 0";
+            return wrong("watched", format!("below {dimension}"), watched.to_string(), way_out);
+        }
+        if !(self.effective_samples > 0.0 && self.effective_samples.is_finite()) {
+            let way_out = "a few thousand suffice for intervals";
+            let value = self.effective_samples.to_string();
+            return wrong("effective_samples", "finite and above 0".to_owned(), value, way_out);
+        }
+        if !(self.maximum_rhat > 1.0) {
+            let value = self.maximum_rhat.to_string();
+            return wrong("maximum_rhat", "above 1".to_owned(), value, "1.01 is what the literature advises");
+        }
+        Ok(())
     }
 }
 

@@ -2,7 +2,7 @@
 
 use crate::chain::{FailedTest, Test};
 use crate::diagnostics::{ParameterDiagnostics, ScoreTable, diagnose, split_walkers_rhat};
-use crate::history::History;
+use crate::history::Columns;
 use crate::settings::EnsembleSettings;
 use rayon::prelude::*;
 
@@ -35,38 +35,29 @@ struct Figures {
 }
 
 /// A first look without ranks, in linear time: enough to know that it is too early.
-pub(crate) fn first_look(history: &History, settings: &EnsembleSettings, evaluations_kept: f64) -> Verdict {
-    let dimension = history_dimension(history);
-    let shape = history.shape();
-    let figures: Vec<Figures> = (0..dimension)
-        .into_par_iter()
-        .map(|parameter| {
-            let values = history.column(parameter);
-            let (effective, _) = shape.ensemble_route(&values);
-            Figures { rhat: split_walkers_rhat(shape, &values), bulk: effective, tail: effective }
+pub(crate) fn first_look(columns: &Columns, settings: &EnsembleSettings, evaluations_kept: f64) -> Verdict {
+    let shape = columns.shape;
+    let figures: Vec<Figures> = columns
+        .parameters
+        .par_iter()
+        .map(|values| {
+            let (effective, _) = shape.ensemble_route(values);
+            Figures { rhat: split_walkers_rhat(shape, values), bulk: effective, tail: effective }
         })
         .collect();
     judge(&figures, settings, evaluations_kept, None)
 }
 
 /// The full tests.
-pub(crate) fn full_check(history: &History, settings: &EnsembleSettings, evaluations_kept: f64) -> Verdict {
-    let dimension = history_dimension(history);
-    let shape = history.shape();
-    let table = ScoreTable::new(shape.even().rows());
-    let diagnostics: Vec<ParameterDiagnostics> = (0..dimension)
-        .into_par_iter()
-        .map(|parameter| diagnose(&history.column(parameter), shape, &table))
-        .collect();
+pub(crate) fn full_check(columns: &Columns, settings: &EnsembleSettings, evaluations_kept: f64) -> Verdict {
+    let table = ScoreTable::new(columns.shape.even().rows());
+    let diagnostics: Vec<ParameterDiagnostics> =
+        columns.parameters.par_iter().map(|values| diagnose(values, columns.shape, &table)).collect();
     let figures: Vec<Figures> = diagnostics
         .iter()
         .map(|found| Figures { rhat: found.rhat, bulk: found.ess_bulk, tail: found.ess_tail })
         .collect();
     judge(&figures, settings, evaluations_kept, Some(diagnostics))
-}
-
-fn history_dimension(history: &History) -> usize {
-    history.records.first().map_or(0, |record| record.points.len() / record.log_prior.len().max(1))
 }
 
 /// Compares with what is wanted. Effective samples grow in proportion to the draws, R̂² − 1 falls in inverse proportion;

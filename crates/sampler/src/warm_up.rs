@@ -1,7 +1,7 @@
 //! Where the chain has forgotten its start, told from the chain itself.
 
 use crate::diagnostics::integrated_autocorrelation_time;
-use crate::history::History;
+use crate::history::Columns;
 use rayon::prelude::*;
 
 /// Integrated autocorrelation times that must lie behind the end of warm-up.
@@ -24,36 +24,28 @@ const SHARES: [f64; 5] = [0.1, 0.2, 0.3, 0.4, 0.5];
 /// 1. at least [`TIMES_BEFORE`] integrated autocorrelation times lie before and [`TIMES_AFTER`] after it, and
 /// 2. the means of the first quarter and of the last half of the rest agree within [`DRIFT`] standard errors
 ///    (Geweke 1992, with the standard errors from the autocorrelation time).
-pub(crate) fn settled(history: &History) -> Option<usize> {
-    let series = series(history);
+pub(crate) fn settled(columns: &Columns) -> Option<usize> {
+    let series = series(columns);
     SHARES
         .iter()
-        .map(|share| (share * history.steps() as f64).ceil() as usize)
+        .map(|share| (share * columns.shape.steps as f64).ceil() as usize)
         .find(|dropped| series.par_iter().all(|quantity| is_settled(quantity, *dropped)))
 }
 
 /// The number of steps to drop from a history whose warm-up was dropped before: zero unless a drift shows.
-pub(crate) fn still_settled(history: &History) -> usize {
-    let series = series(history);
+pub(crate) fn still_settled(columns: &Columns) -> usize {
+    let series = series(columns);
     let drifts = |dropped: usize| series.par_iter().any(|quantity| drift(quantity, dropped).0 > DRIFT);
-    let candidates = SHARES.iter().map(|share| (share * history.steps() as f64).ceil() as usize);
+    let candidates = SHARES.iter().map(|share| (share * columns.shape.steps as f64).ceil() as usize);
     std::iter::once(0).chain(candidates).find(|dropped| !drifts(*dropped)).unwrap_or(0)
 }
 
 /// Means over each ensemble of every parameter and of the log posterior: one vector of series a quantity.
-fn series(history: &History) -> Vec<Vec<Vec<f64>>> {
-    let shape = history.shape();
-    let dimension =
-        history.records.first().map_or(0, |record| record.points.len() / record.log_prior.len().max(1));
-    (0..=dimension)
-        .into_par_iter()
-        .map(|quantity| {
-            let values =
-                if quantity < dimension { history.column(quantity) } else { history.log_posterior() };
-            let means = shape.ensemble_means(&values);
-            means.blocks().map(<[f64]>::to_vec).collect()
-        })
-        .collect()
+fn series(columns: &Columns) -> Vec<Vec<Vec<f64>>> {
+    let quantities: Vec<&Vec<f64>> = columns.parameters.iter().chain([&columns.log_posterior]).collect();
+    let means =
+        |values: &&Vec<f64>| columns.shape.ensemble_means(values).blocks().map(<[f64]>::to_vec).collect();
+    quantities.par_iter().map(means).collect()
 }
 
 fn is_settled(series: &[Vec<f64>], dropped: usize) -> bool {

@@ -1,5 +1,7 @@
 //! Chain diagnostics against a general-purpose diagnostics library.
 
+#![allow(clippy::unwrap_used, clippy::panic, reason = "test helpers may stop where they fail")]
+
 use oddwell_sampler::diagnostics::{
     ess_bulk, ess_mean, ess_quantile, ess_tail, integrated_autocorrelation_time, mcse_mean, quantile,
     rank_normalised_split_rhat,

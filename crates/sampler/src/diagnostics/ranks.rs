@@ -142,7 +142,7 @@ impl Chains {
 
     /// Number of chains.
     pub(crate) fn count(&self) -> usize {
-        if self.length == 0 { 0 } else { self.values.len() / self.length }
+        self.values.len().checked_div(self.length).unwrap_or(0)
     }
 
     /// Mean of every chain.

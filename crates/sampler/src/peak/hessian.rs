@@ -7,14 +7,9 @@ use nalgebra::{DMatrix, DVector};
 /// step² f⁗/12, stays near 0.1 % for a moderately skewed density.
 const STEP: f64 = 0.1;
 
-/// Value, gradient and negative second derivatives of a function at a point.
-#[derive(Debug, Clone)]
-pub(super) struct Expansion {
-    /// ∂f/∂uᵢ.
-    pub(super) gradient: DVector<f64>,
-    /// −∂²f/∂uᵢ∂uⱼ.
-    pub(super) curvature: DMatrix<f64>,
-}
+/// Steps of the gradient, in units of those of the curvature: its truncation error h² f‴/6 moves the peak, so it has to be
+/// much smaller, while a first difference loses fewer digits to rounding.
+const GRADIENT_SHARE: f64 = 0.2;
 
 /// Finds, for each coordinate, a step of about a tenth of the conditional standard deviation.
 ///
@@ -49,24 +44,30 @@ pub(super) fn fit_steps(f: &mut dyn FnMut(&[f64]) -> f64, at: &[f64], value: f64
     }
 }
 
-/// Gradient by central differences: 2n evaluations.
+/// Gradient by central differences over a fifth of `steps`: 2n evaluations.
 pub(super) fn gradient(f: &mut dyn FnMut(&[f64]) -> f64, at: &[f64], steps: &[f64]) -> DVector<f64> {
     let mut u = at.to_vec();
     DVector::from_fn(at.len(), |i, _| {
-        u[i] = at[i] + steps[i];
+        let h = GRADIENT_SHARE * steps[i];
+        u[i] = at[i] + h;
         let up = f(&u);
-        u[i] = at[i] - steps[i];
+        u[i] = at[i] - h;
         let down = f(&u);
         u[i] = at[i];
-        (up - down) / (2.0 * steps[i])
+        (up - down) / (2.0 * h)
     })
 }
 
-/// Gradient and curvature by central differences: n² + n evaluations.
+/// Negative second derivatives by central differences: n² + n evaluations.
 ///
 /// Mixed derivatives from [f(+,+) + f(−,−) − f(+i) − f(−i) − f(+j) − f(−j) + 2f] / (2 hᵢ hⱼ) (Abramowitz & Stegun 1964,
 /// 25.3.27).
-pub(super) fn expand(f: &mut dyn FnMut(&[f64]) -> f64, at: &[f64], value: f64, steps: &[f64]) -> Expansion {
+pub(super) fn curvature(
+    f: &mut dyn FnMut(&[f64]) -> f64,
+    at: &[f64],
+    value: f64,
+    steps: &[f64],
+) -> DMatrix<f64> {
     let n = at.len();
     let mut u = at.to_vec();
     let (mut up, mut down) = (vec![0.0; n], vec![0.0; n]);
@@ -77,7 +78,6 @@ pub(super) fn expand(f: &mut dyn FnMut(&[f64]) -> f64, at: &[f64], value: f64, s
         down[i] = f(&u);
         u[i] = at[i];
     }
-    let gradient = DVector::from_fn(n, |i, _| (up[i] - down[i]) / (2.0 * steps[i]));
     let mut curvature = DMatrix::zeros(n, n);
     for i in 0..n {
         curvature[(i, i)] = -(up[i] + down[i] - 2.0 * value) / (steps[i] * steps[i]);
@@ -96,5 +96,5 @@ pub(super) fn expand(f: &mut dyn FnMut(&[f64]) -> f64, at: &[f64], value: f64, s
             curvature[(j, i)] = mixed;
         }
     }
-    Expansion { gradient, curvature }
+    curvature
 }

@@ -2,7 +2,7 @@
 
 use super::coordinates::Coordinates;
 use super::evaluator::Evaluator;
-use super::hessian::{Expansion, expand, fit_steps, gradient};
+use super::hessian::{curvature, fit_steps, gradient};
 use crate::priors::PriorSet;
 use crate::target::Target;
 use nalgebra::{DMatrix, DVector};
@@ -68,7 +68,7 @@ pub(super) fn polish<T: Target>(
     coordinates: &Coordinates,
     mut point: Vec<f64>,
 ) -> Polished {
-    const ITERATIONS: usize = 40;
+    const ITERATIONS: usize = 200;
     let mut value = evaluator.log_posterior(&point);
     let mut all_steps = vec![1e-2; point.len()];
     let mut converged = false;
@@ -84,25 +84,25 @@ pub(super) fn polish<T: Target>(
         let origin = vec![0.0; free.len()];
         let mut steps: Vec<f64> = free.iter().map(|dimension| all_steps[*dimension]).collect();
         let reusable = known.take().filter(|(for_free, _, _)| *for_free == free);
-        let (slope, curvature, fresh, last_gain) = match reusable {
-            Some((_, curvature, last_gain)) => {
+        let (slope, bend, fresh, last_gain) = match reusable {
+            Some((_, bend, last_gain)) => {
                 let slope = gradient(&mut |shift| slice.value(shift), &origin, &steps);
-                (slope, curvature, false, last_gain)
+                (slope, bend, false, last_gain)
             }
             None => {
                 fit_steps(&mut |shift| slice.value(shift), &origin, value, &mut steps);
                 for (dimension, step) in free.iter().zip(&steps) {
                     all_steps[*dimension] = *step;
                 }
-                let Expansion { gradient, curvature } =
-                    expand(&mut |shift| slice.value(shift), &origin, value, &steps);
-                (gradient, curvature, true, f64::INFINITY)
+                let slope = gradient(&mut |shift| slice.value(shift), &origin, &steps);
+                let bend = curvature(&mut |shift| slice.value(shift), &origin, value, &steps);
+                (slope, bend, true, f64::INFINITY)
             }
         };
-        if slope.iter().chain(curvature.iter()).any(|entry| !entry.is_finite()) {
+        if slope.iter().chain(bend.iter()).any(|entry| !entry.is_finite()) {
             break;
         }
-        let (step, gain) = newton_step(&curvature, &slope);
+        let (step, gain) = newton_step(&bend, &slope);
         if gain < GAIN && fresh {
             converged = true;
             break;
@@ -116,7 +116,7 @@ pub(super) fn polish<T: Target>(
                 point = next;
                 value = next_value;
                 if gain >= GAIN {
-                    known = Some((free, curvature, gain));
+                    known = Some((free, bend, gain));
                 }
             }
             None if fresh => break,
@@ -128,8 +128,8 @@ pub(super) fn polish<T: Target>(
 }
 
 /// |H|⁻¹ g and the gain ½ gᵀ|H|⁻¹ g that it promises.
-fn newton_step(curvature: &DMatrix<f64>, slope: &DVector<f64>) -> (DVector<f64>, f64) {
-    let eigen = curvature.clone().symmetric_eigen();
+fn newton_step(bend: &DMatrix<f64>, slope: &DVector<f64>) -> (DVector<f64>, f64) {
+    let eigen = bend.clone().symmetric_eigen();
     let mut along = eigen.eigenvectors.tr_mul(slope);
     let mut gain = 0.0;
     for (component, eigenvalue) in along.iter_mut().zip(eigen.eigenvalues.iter()) {
@@ -215,13 +215,13 @@ impl Polished {
         let origin = vec![0.0; free.len()];
         let mut steps: Vec<f64> = free.iter().map(|dimension| self.steps[*dimension]).collect();
         fit_steps(&mut |shift| slice.value(shift), &origin, self.value, &mut steps);
-        let mut curvature = expand(&mut |shift| slice.value(shift), &origin, self.value, &steps).curvature;
+        let mut bend = curvature(&mut |shift| slice.value(shift), &origin, self.value, &steps);
         let mut bounded_by_prior = false;
-        for entry in curvature.iter_mut().filter(|entry| !entry.is_finite()) {
+        for entry in bend.iter_mut().filter(|entry| !entry.is_finite()) {
             bounded_by_prior = true;
             *entry = 0.0;
         }
-        let mut eigen = curvature.symmetric_eigen();
+        let mut eigen = bend.symmetric_eigen();
         for eigenvalue in eigen.eigenvalues.iter_mut() {
             bounded_by_prior |= *eigenvalue < LEAST_CURVATURE;
             *eigenvalue = eigenvalue.max(LEAST_CURVATURE).recip();

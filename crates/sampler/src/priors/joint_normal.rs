@@ -37,7 +37,7 @@ impl JointNormal {
                 columns: ragged.unwrap_or(n),
             });
         }
-        for (row, value) in mean.iter().enumerate().filter(|(_, value)| !value.is_finite()) {
+        if let Some((row, value)) = mean.iter().enumerate().find(|(_, value)| !value.is_finite()) {
             return Err(PriorError::JointNotFinite { part: "mean", position: (row, 0), value: *value });
         }
         for (i, dimension) in of.iter().enumerate() {

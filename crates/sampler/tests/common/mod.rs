@@ -1,5 +1,10 @@
 //! Targets whose moments are known in closed form.
-#![allow(dead_code, reason = "each test binary uses a part of these")]
+#![allow(
+    dead_code,
+    unreachable_pub,
+    clippy::unwrap_used,
+    reason = "test helpers, of which each test binary uses a part"
+)]
 
 use nalgebra::{Cholesky, DMatrix, DVector};
 use oddwell_sampler::{EvaluationFailure, PriorSet, Target, build_prior};
