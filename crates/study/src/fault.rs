@@ -1,5 +1,6 @@
 //! Every rule that a study can break, with the text that says so: subject, rule, value, way out.
 
+use oddwell_cosmology::CosmologyError;
 use oddwell_sampler::PriorError;
 use thiserror::Error;
 
@@ -134,6 +135,25 @@ pub enum Fault {
         other: String,
         /// What to do.
         way_out: &'static str,
+    },
+
+    /// Two keys that say the same thing in two ways.
+    #[error("`{other}` stands beside `{one}`, which says the same; {way_out}")]
+    EitherOr {
+        /// One of the keys.
+        one: &'static str,
+        /// The other.
+        other: &'static str,
+        /// What to do.
+        way_out: &'static str,
+    },
+    /// A fiducial background in which a bin's redshift has no distance.
+    #[error("the fiducial background of survey `{survey}` gives no distance: {cause}")]
+    Fiducial {
+        /// The survey.
+        survey: String,
+        /// Rule, value and way out.
+        cause: CosmologyError,
     },
 
     /// A name that a dotted path, a table or a folder could not carry.
@@ -360,7 +380,7 @@ pub enum Fault {
     },
     /// Lengths in Mpc need an h that is known.
     #[error(
-        "`unit = \"Mpc\"` of survey `{survey}` needs a held `background.h`, but it is inferred; hold it or give lengths in Mpc/h"
+        "`unit = \"Mpc\"` of survey `{survey}` needs a held `background.h`, but it is inferred; hold it, give `fiducial.h`, or give lengths in Mpc/h"
     )]
     UnitNeedsHeldH {
         /// The survey.

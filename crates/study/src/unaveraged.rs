@@ -17,7 +17,11 @@ pub(crate) fn unaveraged_shells(
     scratch: &mut PosteriorScratch,
 ) -> Result<Vec<Warning>, RunError> {
     let rows = &measurements.rows;
-    if rows.iter().all(|row| row.edges.is_some()) {
+    // Of a survey with a window, the window knows what a measured row averages.
+    let windows = measurements.surveys.iter();
+    let of_window: Vec<bool> =
+        windows.flat_map(|survey| std::iter::repeat_n(survey.window.is_some(), survey.table.len())).collect();
+    if rows.iter().zip(&of_window).all(|(row, of_window)| *of_window || row.edges.is_some()) {
         return Ok(Vec::new());
     }
     let averaged: Vec<Row> = rows
@@ -33,7 +37,7 @@ pub(crate) fn unaveraged_shells(
     for survey in &measurements.surveys {
         let range = first..first + survey.table.len();
         first = range.end;
-        if survey.table.rows.iter().all(|row| row.edges.is_some()) {
+        if survey.window.is_some() || survey.table.rows.iter().all(|row| row.edges.is_some()) {
             continue;
         }
         let difference = range

@@ -132,7 +132,10 @@ impl Warning {
                     "the priors on `offset` carry that into the error; see whether the departure moves without the smallest separations (`keep`)".to_owned()
                 } else {
                     let held: Vec<String> = held.iter().map(|bin| format!("`{bin}.offset`")).collect();
-                    format!("give a prior to {}, or drop the smallest separations with `keep`", held.join(", "))
+                    format!(
+                        "give a prior to {}, or drop the smallest separations with `keep`",
+                        held.join(", ")
+                    )
                 };
                 format!(
                     "1 km/s of redshift offset is worth much in tau at the smallest separations: {}; {way_out}",

@@ -1,5 +1,6 @@
 //! Reads what a study measured.
 
+use super::window::{SurveyWindow, read_window};
 use crate::checksum::{InputHashes, file_sha256};
 use crate::file::{BinSection, KeepSection, SurveySection};
 use crate::nearest::Nearest;
@@ -27,6 +28,8 @@ pub struct SurveyMeasurements {
     pub likelihood: SurveyLikelihood,
     /// Each kept row's index among the study's bins.
     pub bins: Vec<usize>,
+    /// What turns predictions into the kept rows, where the survey has a window.
+    pub window: Option<SurveyWindow>,
 }
 
 impl SurveyMeasurements {
@@ -42,7 +45,7 @@ impl SurveyMeasurements {
 pub struct Measurements {
     /// By survey, in the study's order.
     pub surveys: Vec<SurveyMeasurements>,
-    /// All kept rows as a model predicts them, survey after survey.
+    /// All kept rows, survey after survey: what each measured number is.
     pub rows: Vec<Row>,
     /// Checksums of the files read, the study file first.
     pub inputs: Vec<InputFile>,
@@ -51,6 +54,20 @@ pub struct Measurements {
 }
 
 impl Measurements {
+    /// The rows that a model has to predict: those measured, and in their place those of the window for a survey that
+    /// has one.
+    #[must_use]
+    pub fn model_rows(&self) -> Vec<Row> {
+        let mut rows = Vec::new();
+        let mut first = 0;
+        for survey in &self.surveys {
+            let own = &self.rows[first..first + survey.table.len()];
+            first += own.len();
+            rows.extend(survey.window.as_ref().map_or(own, |window| &window.rows[..]));
+        }
+        rows
+    }
+
     /// How many numbers are kept.
     #[must_use]
     pub fn len(&self) -> usize {
@@ -111,9 +128,9 @@ fn read_survey(
             nearest: ignored.resembles.clone(),
         });
     }
+    let h = (section.unit.value == LengthUnit::Megaparsec).then(|| conversion_h(study, section));
     let mut factors = None;
-    if section.unit.value == LengthUnit::Megaparsec {
-        let h = held_h(study);
+    if let Some(h) = h {
         factors = Some(table.value_factors(h));
         table = table.from_megaparsec(h)?;
     }
@@ -125,6 +142,8 @@ fn read_survey(
         _ => whole,
     };
     let covariance = whole.with_labels(table.row_labels()).select(&kept.rows);
+    let rows = (&table, &kept.rows[..]);
+    let window = read_window(study, section, rows, first_bin, h, &columns, inputs)?;
     let cut = kept.cut.len();
     let all_bins: Vec<String> = table.bins().iter().map(ToString::to_string).collect();
     let table = table.select(&kept.rows);
@@ -135,11 +154,15 @@ fn read_survey(
         .map_err(|source| RunError::Noise { survey: name.clone(), source })?;
     let likelihood = SurveyLikelihood::from_covariance(table.values(), covariance, &noise)
         .map_err(|source| RunError::Likelihood { survey: name.clone(), source })?;
-    Ok(SurveyMeasurements { name, table, cut, likelihood, bins })
+    Ok(SurveyMeasurements { name, table, cut, likelihood, bins, window })
 }
 
-/// h, which `unit = "Mpc"` requires to be held (checked when the study was resolved).
-fn held_h(study: &Study) -> f64 {
+/// The h of lengths in Mpc: of the background that made them, else the one that is held (checked when the study was
+/// resolved).
+fn conversion_h(study: &Study, section: &SurveySection) -> f64 {
+    if let Some(h) = section.fiducial.as_ref().and_then(|fiducial| fiducial.h.as_ref()) {
+        return h.value;
+    }
     study.default_hypothesis().quantity("background.h").map_or(f64::NAN, |h| h.form.constant)
 }
 

@@ -1,9 +1,13 @@
 //! From a resolved study to something that can be evaluated: measurements read, model built, posterior ready.
 
+mod matrix_file;
 mod measurements;
 mod posterior;
 mod power_table;
+mod projection;
+mod window;
 
 pub use measurements::{Measurements, SurveyMeasurements, read_measurements};
 pub(crate) use posterior::model_setup;
 pub use posterior::{Posterior, PosteriorScratch};
+pub use window::SurveyWindow;

@@ -2,11 +2,12 @@
 
 use super::measurements::Measurements;
 use super::power_table::read_power_table;
+use super::projection::Projection;
 use crate::file::PowerChoice;
 use crate::parameter_map::ParameterMap;
 use crate::resolve::{Hypothesis, State, Study};
 use crate::run_error::RunError;
-use oddwell_cosmology::PowerShape;
+use oddwell_cosmology::{CosmologyError, PowerShape};
 use oddwell_likelihood::{CompressedSet, SurveySet};
 use oddwell_model::{BinSetup, Effects, Model, ModelError, ModelSetup, Row, Workspace};
 use oddwell_sampler::{EvaluationFailure, PriorSet, Target};
@@ -20,7 +21,7 @@ use std::sync::Arc;
 pub struct Posterior {
     /// The hypothesis, resolved.
     pub hypothesis: Hypothesis,
-    /// The model of all kept rows.
+    /// The model of all kept rows, or of the window's rows where a survey has one.
     pub model: Model,
     /// From free parameters to the model's quantities.
     pub map: ParameterMap,
@@ -28,6 +29,7 @@ pub struct Posterior {
     pub priors: PriorSet,
     /// The kept measurements.
     pub data: SurveySet,
+    projection: Projection,
     compressed: Option<CompressedSet>,
 }
 
@@ -36,7 +38,8 @@ pub struct Posterior {
 pub struct PosteriorScratch {
     values: Vec<f64>,
     coefficients: Vec<f64>,
-    prediction: Vec<f64>,
+    predicted: Vec<f64>,
+    measured: Vec<f64>,
     workspace: Workspace,
     residuals: Vec<f64>,
 }
@@ -53,7 +56,7 @@ pub(crate) fn model_setup(
         bins.extend(survey.bins.iter().map(|bin| BinSetup {
             survey: survey.name.value.clone(),
             name: bin.name.value.clone(),
-            nodes: vec![(bin.redshift.value, 1.0)],
+            nodes: bin.weighted_nodes(),
             sight_line: survey.sight_line.value,
             growth_given: bin.growth_rate.is_some(),
         }));
@@ -90,6 +93,16 @@ fn smallest_damping(hypothesis: &Hypothesis) -> Result<f64, RunError> {
     }
 }
 
+/// Says which table does not reach far enough.
+fn name_the_table(study: &Study, error: ModelError) -> RunError {
+    match (error, &study.file.background.power.value) {
+        (ModelError::Cosmology(source @ CosmologyError::OutsideTable { .. }), PowerChoice::Table(path)) => {
+            RunError::PowerRange { file: study.file.path_of(path).display().to_string(), source }
+        }
+        (error, _) => error.into(),
+    }
+}
+
 impl Posterior {
     /// Builds the model, checks that it can be evaluated at the prior's centre, and compresses the data where that is
     /// exact.
@@ -101,7 +114,7 @@ impl Posterior {
         hypothesis: &Hypothesis,
         measurements: &Measurements,
     ) -> Result<Posterior, RunError> {
-        let model = Model::new(model_setup(study, hypothesis, measurements.rows.clone())?)?;
+        let model = Model::new(model_setup(study, hypothesis, measurements.model_rows())?)?;
         let map = ParameterMap::new(hypothesis, model.layout().names())?;
         let priors = hypothesis.priors()?;
         let surveys = measurements.surveys.iter().map(|survey| survey.likelihood.clone()).collect();
@@ -111,15 +124,15 @@ impl Posterior {
             map,
             priors,
             data: SurveySet::new(surveys),
+            projection: Projection::new(&measurements.surveys),
             compressed: None,
         };
         let start = hypothesis.start();
         let mut scratch = posterior.scratch();
-        let prediction = posterior.predict(&start, &mut scratch)?;
-        debug_assert_eq!(prediction.len(), measurements.len());
+        posterior.predict(&start, &mut scratch).map_err(|error| name_the_table(study, error))?;
         if posterior.has_fixed_kernels() {
             let kernels = posterior.model.kernels(&scratch.values, &mut scratch.workspace)?;
-            let compressed = posterior.data.compress(&kernels.matrix);
+            let compressed = posterior.data.compress(&posterior.projection.of_kernels(&kernels.matrix));
             posterior.compressed =
                 Some(compressed.map_err(|source| RunError::Likelihood { survey: "all".into(), source })?);
         }
@@ -159,9 +172,25 @@ impl Posterior {
         values: &[f64],
         scratch: &mut PosteriorScratch,
     ) -> Result<Vec<f64>, ModelError> {
-        let mut prediction = vec![0.0; self.data.rows()];
-        self.model.predict(values, &mut scratch.workspace, &mut prediction)?;
-        Ok(prediction)
+        let mut measured = vec![0.0; self.data.rows()];
+        self.fill_prediction(values, &mut scratch.workspace, &mut scratch.predicted, &mut measured)?;
+        Ok(measured)
+    }
+
+    /// Predicts the model's rows, and from them one number a measured row.
+    fn fill_prediction(
+        &self,
+        values: &[f64],
+        workspace: &mut Workspace,
+        predicted: &mut [f64],
+        measured: &mut [f64],
+    ) -> Result<(), ModelError> {
+        if self.projection.is_identity() {
+            return self.model.predict(values, workspace, measured);
+        }
+        self.model.predict(values, workspace, predicted)?;
+        self.projection.apply(predicted, measured);
+        Ok(())
     }
 
     /// The log-likelihood by the plain prediction, whether or not the data are compressed.
@@ -173,9 +202,10 @@ impl Posterior {
         point: &[f64],
         scratch: &mut PosteriorScratch,
     ) -> Result<f64, ModelError> {
-        self.map.fill(point, &mut scratch.values);
-        self.model.predict(&scratch.values, &mut scratch.workspace, &mut scratch.prediction)?;
-        Ok(self.data.log_likelihood(&scratch.prediction, &mut scratch.residuals))
+        let PosteriorScratch { values, predicted, measured, workspace, residuals, .. } = scratch;
+        self.map.fill(point, values);
+        self.fill_prediction(values, workspace, predicted, measured)?;
+        Ok(self.data.log_likelihood(measured, residuals))
     }
 
     fn any_log_likelihood(&self, point: &[f64], scratch: &mut PosteriorScratch) -> Result<f64, ModelError> {
@@ -198,7 +228,8 @@ impl Target for Posterior {
         PosteriorScratch {
             values: vec![0.0; self.map.slots()],
             coefficients: vec![0.0; self.model.coefficient_count()],
-            prediction: vec![0.0; self.data.rows()],
+            predicted: vec![0.0; self.projection.predicted()],
+            measured: vec![0.0; self.data.rows()],
             workspace: Workspace::new(),
             residuals: Vec::new(),
         }

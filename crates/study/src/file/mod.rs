@@ -1,6 +1,7 @@
 //! The study file as typed: every value with its place, nothing looked up yet.
 
 mod background;
+mod fiducial;
 mod hypothesis;
 mod joint_prior;
 mod keep;
@@ -19,6 +20,7 @@ use std::path::{Path, PathBuf};
 use toml_edit::Document;
 
 pub use background::{BackgroundSection, PowerChoice, PredictionSection};
+pub use fiducial::FiducialSection;
 pub use hypothesis::{HypothesisSection, Shape};
 pub use joint_prior::JointPriorSection;
 pub use keep::KeepSection;

@@ -5,10 +5,14 @@ use std::collections::BTreeMap;
 use oddwell_likelihood::{LengthUnit, TABLE_COLUMNS, noise_families};
 use oddwell_model::SightLine;
 
+use toml_edit::{Item, Value};
+
+use super::fiducial::FiducialSection;
 use super::keep::KeepSection;
 use super::quantity::Quantity;
-use super::section::Section;
+use super::section::{Section, numbers_of};
 use super::source::Located;
+use crate::fault::Fault;
 
 /// `[[survey]]`: one table of measured multipoles with its covariance.
 #[derive(Clone, Debug, PartialEq)]
@@ -29,6 +33,12 @@ pub struct SurveySection {
     pub sight_line: Located<SightLine>,
     /// Unit of the table's lengths, default Mpc/h.
     pub unit: Located<LengthUnit>,
+    /// The background that turned redshifts into distances; none: the one that is inferred, so no remapping.
+    pub fiducial: Option<FiducialSection>,
+    /// Path of the window matrix, as written; given exactly where `window_rows` is.
+    pub window: Option<Located<String>>,
+    /// Path of the table that names the window's columns, as written.
+    pub window_rows: Option<Located<String>>,
     /// Rows that pass any entry are kept; empty: all of them.
     pub keep: Vec<KeepSection>,
     /// `[survey.columns]`: our column name → the table's header.
@@ -42,8 +52,9 @@ pub struct SurveySection {
 pub struct BinSection {
     /// The second part of its parameters' names, and the value of the table's `bin` column.
     pub name: Located<String>,
-    /// Pair-weighted mean redshift, above 0.
-    pub redshift: Located<f64>,
+    /// The redshifts that the prediction is averaged over, above 0, with their weights, which sum to 1: one alone where
+    /// `redshift` is given, the pair-weighted mean.
+    pub nodes: Located<Vec<(f64, f64)>>,
     /// By how much the second tracer's redshifts lie above the first's, km/s, default 0.
     pub offset: Located<Quantity>,
     /// f of this bin, in place of the growth equation.
@@ -98,6 +109,12 @@ impl SurveySection {
             Some(_) => section.choice("unit", "unit", &UNITS, "\"Mpc/h\""),
             None => Some(Located::default_of(LengthUnit::MegaparsecPerH)),
         };
+        let fiducial = match section.find("fiducial") {
+            Some(_) => FiducialSection::read(&section).map(Some),
+            None => Some(None),
+        };
+        let window = section.text("window", "\"window.csv\"");
+        let window_rows = section.text("window_rows", "\"window-rows.csv\"");
         let keep_example = "[{ separation = [24.0, 144.0], multipoles = [1, 3] }]";
         let keep: Vec<_> = section
             .tables("keep", "keep", "an entry of `keep`", keep_example)
@@ -123,6 +140,9 @@ impl SurveySection {
             noise: noise?,
             sight_line: sight_line?,
             unit: unit?,
+            fiducial: fiducial?,
+            window,
+            window_rows,
             keep: keep.into_iter().collect::<Option<_>>()?,
             columns,
             bins: bins.into_iter().collect::<Option<_>>()?,
@@ -142,10 +162,7 @@ fn read_columns(section: Section<'_>) -> BTreeMap<String, Located<String>> {
 impl BinSection {
     fn read(section: Section<'_>) -> Option<Self> {
         let name = section.required_text("name", "\"near\"");
-        if section.find("redshift").is_none() && section.keys().iter().all(|(key, _)| key.get() != "nodes") {
-            section.missing("redshift", "redshift = 0.35");
-        }
-        let redshift = section.number("redshift", "0.35");
+        let nodes = read_nodes(&section);
         let offset = section.quantity_or("offset", 0.0);
         let growth_rate = section.quantity("growth_rate");
         let growth_slope = section.quantity("growth_slope");
@@ -154,7 +171,7 @@ impl BinSection {
         section.finish();
         Some(Self {
             name: name?,
-            redshift: redshift?,
+            nodes: nodes?,
             offset: offset?,
             growth_rate,
             growth_slope,
@@ -162,6 +179,52 @@ impl BinSection {
             second: second?,
         })
     }
+}
+
+impl BinSection {
+    /// The weighted mean redshift.
+    pub fn redshift(&self) -> f64 {
+        self.weighted_nodes().iter().map(|(redshift, weight)| redshift * weight).sum()
+    }
+
+    /// The nodes with what their weights miss of a sum of 1, by rounding, divided out.
+    pub fn weighted_nodes(&self) -> Vec<(f64, f64)> {
+        let sum: f64 = self.nodes.value.iter().map(|(_, weight)| weight).sum();
+        self.nodes.value.iter().map(|&(redshift, weight)| (redshift, weight / sum)).collect()
+    }
+}
+
+/// `redshift`, or `nodes` in its place.
+fn read_nodes(section: &Section<'_>) -> Option<Located<Vec<(f64, f64)>>> {
+    let Some((_, item)) = section.find("nodes") else {
+        if section.find("redshift").is_none() {
+            section.missing("redshift", "redshift = 0.35");
+        }
+        return section.number("redshift", "0.35").map(|given| given.map(|redshift| vec![(redshift, 1.0)]));
+    };
+    if section.find("redshift").is_some() {
+        let (one, other) = ("redshift", "nodes");
+        let way_out = "give the mean redshift of a thin bin, or the nodes of a wide one";
+        section.fault_at("nodes", Fault::EitherOr { one, other, way_out });
+        return None;
+    }
+    let pair = |value: &Value| match numbers_of(&Item::Value(value.clone())).as_deref() {
+        Some(&[redshift, weight]) => Some((redshift, weight)),
+        _ => None,
+    };
+    let nodes: Option<Vec<(f64, f64)>> =
+        item.as_array().filter(|list| !list.is_empty()).and_then(|list| list.iter().map(pair).collect());
+    let Some(value) = nodes else {
+        let expected = "a list of [redshift, weight]";
+        section.wrong_type("nodes", expected, item, "[[0.30, 0.4], [0.38, 0.6]]");
+        return None;
+    };
+    if let Some(value) = value.iter().flat_map(|&(z, weight)| [z, weight]).find(|number| !number.is_finite())
+    {
+        section.fault_at("nodes", Fault::NotFinite { name: "nodes".to_owned(), value });
+        return None;
+    }
+    Some(Located { value, origin: section.origin("nodes", item) })
 }
 
 impl TracerSection {

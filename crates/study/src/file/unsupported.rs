@@ -33,13 +33,9 @@ const AS_CSV: &str = "write it as a square table of numbers in a .csv file";
 pub(crate) const UNSUPPORTED: &[Unsupported] = &[
     key("study", "joint_covariance", "remove it, and leave out one of two surveys that share volume"),
     key("survey", "mocks", "remove it, and give the covariance estimated from them, with `mock_count`"),
-    key("survey", "fiducial", "remove it, and hold the background that turned redshifts into distances"),
-    key("survey", "window", "remove it, and give multipoles that are corrected for the window"),
-    key("survey", "window_rows", "remove it together with `window`"),
     value("survey", "covariance", ".npy", AS_CSV),
     value("survey", "covariance", ".fits", AS_CSV),
     value("survey", "noise", "percival", "choose another noise model"),
-    key("bin", "nodes", "remove it, and give `redshift`, the pair-weighted mean"),
     key(
         "tracer",
         "observed_density_slope",

@@ -6,6 +6,7 @@ mod departure;
 mod hypothesis;
 mod link;
 mod names;
+mod redshifts;
 mod systematics;
 mod values;
 
@@ -161,14 +162,15 @@ fn infers(file: &StudyFile, section: &HypothesisSection) -> bool {
     })
 }
 
-/// Lengths in Mpc are converted once, so h must be known.
+/// Lengths in Mpc are converted once, so h must be known: the fiducial one, or else a held one.
 fn check_units(file: &StudyFile, hypotheses: &[Hypothesis], checker: &mut Checker<'_>) {
     let inferred = hypotheses
         .iter()
         .filter_map(|hypothesis| hypothesis.quantity("background.h"))
         .any(|h| !h.form.is_held());
     for survey in file.surveys.iter().filter(|survey| survey.unit.value == LengthUnit::Megaparsec) {
-        if inferred {
+        let given = survey.fiducial.as_ref().is_some_and(|fiducial| fiducial.h.is_some());
+        if inferred && !given {
             let fault = Fault::UnitNeedsHeldH { survey: survey.name.value.clone() };
             checker.fault(survey.unit.origin, "unit", fault);
         }

@@ -4,6 +4,7 @@ use oddwell_likelihood::noise_families;
 
 use super::Entry;
 use super::checker::Checker;
+use super::redshifts;
 use crate::fault::Fault;
 use crate::file::{Quantity, StudyFile};
 use crate::nearest::Nearest;
@@ -83,6 +84,18 @@ pub(super) fn check_surveys(file: &StudyFile, checker: &mut Checker<'_>) {
             other: other.to_owned(),
             way_out,
         };
+        redshifts::check(survey, checker);
+        let way_out =
+            "the window's columns are predicted rows: give the table that names them, and the matrix";
+        match (&survey.window, &survey.window_rows) {
+            (Some(window), None) => {
+                checker.fault(window.origin, "window", needs_other("window", "window_rows", way_out));
+            }
+            (None, Some(rows)) => {
+                checker.fault(rows.origin, "window_rows", needs_other("window_rows", "window", way_out));
+            }
+            _ => {}
+        }
         if let (Some(rows), None) = (&survey.covariance_rows, &survey.covariance) {
             let way_out = "give the covariance whose rows it names, or remove it";
             checker.fault(
@@ -122,15 +135,6 @@ pub(super) fn check_surveys(file: &StudyFile, checker: &mut Checker<'_>) {
         }
         for bin in &survey.bins {
             let path = format!("{}.{}", survey.name.value, bin.name.value);
-            if bin.redshift.value <= 0.0 {
-                let fault = Fault::OutOfRange {
-                    name: format!("{path}.redshift"),
-                    rule: "above 0",
-                    value: format!("{:?}", bin.redshift.value),
-                    way_out: "give the pair-weighted mean redshift of the bin",
-                };
-                checker.fault(bin.redshift.origin, "redshift", fault);
-            }
             let (rate, slope) = (format!("{path}.growth_rate"), format!("{path}.growth_slope"));
             let way_out = "a bin's growth is given by f and df/dln a together, or not at all";
             match (&bin.growth_rate, &bin.growth_slope) {
