@@ -52,8 +52,8 @@ impl CompressedLikelihood {
                 });
             }
         }
-        let whitened_data = survey.whiten_slice(survey.data().as_slice());
-        let parts = independent_parts(survey.covariance().matrix(), kernels);
+        let whitened_data = survey.whiten_slice(&survey.centred_data());
+        let parts = independent_parts(&survey.connections(), kernels);
         let used: Vec<usize> = parts.iter().flat_map(|part| part.columns.iter().copied()).collect();
         let whitened = survey.whiten(&kernels.select_columns(&used));
         let mut blocks = Vec::new();

@@ -30,6 +30,7 @@ mod shrinkage;
 mod survey;
 mod surveys;
 mod table;
+mod templates;
 mod triangle;
 mod units;
 
@@ -56,4 +57,5 @@ pub use shrinkage::Shrunk;
 pub use survey::{LikelihoodError, SurveyLikelihood};
 pub use surveys::{CompressedSet, SurveySet};
 pub use table::{MeasuredRow, MultipoleTable, TABLE_COLUMNS, read_multipoles};
+pub use templates::{AmplitudePrior, Amplitudes, Template, TemplateError, read_template};
 pub use units::LengthUnit;

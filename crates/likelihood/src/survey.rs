@@ -7,6 +7,7 @@ use nalgebra::{DMatrix, DVector};
 use crate::covariance::{Covariance, CovarianceError};
 use crate::goodness::chi_squared_p_value;
 use crate::noise::{NoiseChoice, NoiseError, NoiseModel};
+use crate::templates::{AmplitudePrior, Marginal, TemplateError, orthonormal, project_out};
 use crate::triangle::{LowerTriangle, dot};
 
 /// Data, covariance and noise that do not make a likelihood.
@@ -19,6 +20,9 @@ pub enum LikelihoodError {
     /// The noise model is.
     #[error(transparent)]
     Noise(#[from] NoiseError),
+    /// A template to integrate out is.
+    #[error(transparent)]
+    Template(#[from] TemplateError),
     /// A measured value that is no number.
     #[error("measured value {row} must be a finite number, found {value}; leave out what was not measured")]
     DataNotFinite {
@@ -73,6 +77,7 @@ pub struct SurveyLikelihood {
     log_determinant: f64,
     choice: NoiseChoice,
     noise: Arc<dyn NoiseModel>,
+    pub(crate) marginal: Option<Arc<Marginal>>,
 }
 
 impl SurveyLikelihood {
@@ -113,14 +118,17 @@ impl SurveyLikelihood {
         let factor = covariance.factor()?;
         let log_determinant = factor.log_determinant();
         let model = noise.build(data.len(), log_determinant)?;
-        Ok(Self { data, covariance, factor, log_determinant, choice: *noise, noise: model })
+        Ok(Self { data, covariance, factor, log_determinant, choice: *noise, noise: model, marginal: None })
     }
 
-    /// The same measurements with another noise model; the factor is kept.
+    /// The same measurements with another noise model; the factor is kept where there are no templates.
     ///
     /// # Errors
-    /// A mock count that is missing or too small.
+    /// A mock count that is missing or too small; noise that is not normal where templates are integrated out.
     pub fn with_noise(mut self, noise: &NoiseChoice) -> Result<Self, NoiseError> {
+        if let Some(marginal) = &self.marginal {
+            return marginal.base.as_ref().clone().with_noise(noise)?.with_templates_of(marginal);
+        }
         self.noise = noise.build(self.rows(), self.log_determinant)?;
         self.choice = *noise;
         Ok(self)
@@ -129,6 +137,10 @@ impl SurveyLikelihood {
     /// The same survey with other measured values (a simulated one, say). As many as before.
     pub fn with_data(mut self, data: DVector<f64>) -> Self {
         assert_eq!(data.len(), self.rows(), "a value for each row");
+        if let Some(marginal) = &mut self.marginal {
+            let base = Box::new(marginal.base.as_ref().clone().with_data(data.clone()));
+            *marginal = Arc::new(Marginal { base, ..marginal.as_ref().clone() });
+        }
         self.data = data;
         self
     }
@@ -143,7 +155,7 @@ impl SurveyLikelihood {
         &self.data
     }
 
-    /// Their covariance, as given.
+    /// Their covariance: as given, or with templates of normal amplitude in it ([`Self::with_templates`]).
     pub fn covariance(&self) -> &Covariance {
         &self.covariance
     }
@@ -156,6 +168,18 @@ impl SurveyLikelihood {
     /// The noise model.
     pub fn noise(&self) -> &dyn NoiseModel {
         self.noise.as_ref()
+    }
+
+    pub(crate) fn choice(&self) -> &NoiseChoice {
+        &self.choice
+    }
+
+    pub(crate) fn set_noise(&mut self, noise: Arc<dyn NoiseModel>) {
+        self.noise = noise;
+    }
+
+    pub(crate) fn factor(&self) -> &LowerTriangle {
+        &self.factor
     }
 
     pub(crate) fn shared_noise(&self) -> Arc<dyn NoiseModel> {
@@ -173,7 +197,10 @@ impl SurveyLikelihood {
         assert_eq!(prediction.len(), self.rows(), "a predicted number for each row");
         scratch.clear();
         scratch.extend(self.data.iter().zip(prediction).map(|(measured, predicted)| measured - predicted));
-        self.factor.solve_in_place(scratch);
+        if let Some(marginal) = &self.marginal {
+            scratch.iter_mut().zip(&marginal.shift).for_each(|(residual, shift)| *residual -= shift);
+        }
+        self.whiten_in_place(scratch);
         dot(scratch, scratch)
     }
 
@@ -198,19 +225,23 @@ impl SurveyLikelihood {
     ) -> Result<f64, LikelihoodError> {
         assert_eq!(prediction.len(), self.rows(), "a predicted number for each row");
         let factor = self.covariance.select(positions).factor()?;
+        let data = self.centred_data();
         let mut residual: Vec<f64> =
-            positions.iter().map(|position| self.data[*position] - prediction[*position]).collect();
+            positions.iter().map(|position| data[*position] - prediction[*position]).collect();
         factor.solve_in_place(&mut residual);
+        let flat = self.templates().iter().filter(|template| template.prior == AmplitudePrior::Flat);
+        let (projected, _) = orthonormal(&factor, flat, positions.len(), Some(positions))?;
+        project_out(&projected, &mut residual);
         Ok(dot(&residual, &residual))
     }
 
     /// L⁻¹ M for a matrix of n_d rows: columns become directions in which the noise has unit variance and no
-    /// correlation.
+    /// correlation. Directions of flat templates are taken out.
     pub fn whiten(&self, matrix: &DMatrix<f64>) -> DMatrix<f64> {
         assert_eq!(matrix.nrows(), self.rows(), "a matrix row for each measured number");
         let mut whitened = matrix.clone();
         for mut column in whitened.column_iter_mut() {
-            self.factor.solve_in_place(column.as_mut_slice());
+            self.whiten_in_place(column.as_mut_slice());
         }
         whitened
     }
@@ -218,7 +249,35 @@ impl SurveyLikelihood {
     /// L⁻¹ v for n_d numbers.
     pub(crate) fn whiten_slice(&self, values: &[f64]) -> Vec<f64> {
         let mut whitened = values.to_vec();
-        self.factor.solve_in_place(&mut whitened);
+        self.whiten_in_place(&mut whitened);
         whitened
+    }
+
+    fn whiten_in_place(&self, values: &mut [f64]) {
+        self.factor.solve_in_place(values);
+        if let Some(marginal) = &self.marginal {
+            project_out(&marginal.projected, values);
+        }
+    }
+
+    /// The measured numbers less the templates at their prior means.
+    pub(crate) fn centred_data(&self) -> Vec<f64> {
+        let mut data = self.data.as_slice().to_vec();
+        if let Some(marginal) = &self.marginal {
+            data.iter_mut().zip(&marginal.shift).for_each(|(value, shift)| *value -= shift);
+        }
+        data
+    }
+
+    /// What connects rows: the covariance, and flat templates as if they were in it.
+    pub(crate) fn connections(&self) -> DMatrix<f64> {
+        let mut matrix = self.covariance.matrix().clone();
+        for template in self.templates().iter().filter(|template| template.prior == AmplitudePrior::Flat) {
+            let touched: Vec<usize> = (0..self.rows()).filter(|row| template.shape[*row] != 0.0).collect();
+            for (i, j) in touched.iter().flat_map(|i| touched.iter().map(move |j| (*i, *j))) {
+                matrix[(i, j)] = 1.0;
+            }
+        }
+        matrix
     }
 }

@@ -111,6 +111,14 @@ pub enum NoiseError {
         /// The model.
         name: &'static str,
     },
+    /// Templates to integrate out under noise that is not normal.
+    #[error(
+        "noise `{name}` is not normal, so that the amplitudes of templates cannot be integrated out exactly; choose noise \"gaussian\" or \"hartlap\", or infer the amplitudes as parameters"
+    )]
+    Templates {
+        /// The model.
+        name: &'static str,
+    },
     /// More quantities determined than there are rows.
     #[error(
         "noise `{name}`: the data cannot determine {determined} quantities with {rows} kept rows; set at most {rows}"
