@@ -118,6 +118,20 @@ impl Background {
         (a, self.slope(a, terms), terms[0] / terms.iter().sum::<f64>())
     }
 
+    /// (d ln E/d ln a, d² ln E/d(ln a)², Ωm(a)) where both a and ln a are known. With N = 3m + 2c + 3(1+w)d for the terms
+    /// m, c, d of E², the slope is −N/2E², and since N is also −dE²/d ln a its own is −N′/2E² − 2 slope².
+    pub(crate) fn normal_form(&self, a: f64, log_a: f64) -> (f64, f64, f64) {
+        let [matter, curvature, dark_energy] = self.terms(a, || log_a);
+        let inverse = 1.0 / (matter + curvature + dark_energy);
+        let stiffness = 3.0 * (1.0 + self.w0 + self.wa * (1.0 - a));
+        let fall = 3.0 * matter + 2.0 * curvature + stiffness * dark_energy;
+        // w′ = −wa a.
+        let fall_slope =
+            -9.0 * matter - 4.0 * curvature - (stiffness * stiffness + 3.0 * self.wa * a) * dark_energy;
+        let slope = -0.5 * fall * inverse;
+        (slope, -0.5 * fall_slope * inverse - 2.0 * slope * slope, matter * inverse)
+    }
+
     /// Ωm(a): matter over the critical density at `a`.
     pub fn matter_fraction(&self, a: f64) -> f64 {
         self.omega_m / (a * a * a * self.expansion_squared(a))
@@ -184,6 +198,16 @@ impl Background {
     /// z beyond the antipode of a closed universe.
     pub fn epoch(&self, z: f64) -> Result<Epoch, CosmologyError> {
         Epoch::new(self, z)
+    }
+
+    /// Says no where E² ≤ 0 between scale factor `a` and today.
+    pub(crate) fn check_past(&self, a: f64) -> Result<(), CosmologyError> {
+        match self.missing_past(a) {
+            None => Ok(()),
+            Some((at, value)) => {
+                Err(CosmologyError::NoExpansion { redshift: 1.0 / at - 1.0, value, asked: 1.0 / a - 1.0 })
+            }
+        }
     }
 
     /// Where E² ≤ 0 first (as (a, E²)), between scale factor `a` and today, if it is anywhere.

@@ -91,7 +91,8 @@ pub fn growth_history(
     gravity: &dyn Fn(f64) -> f64,
     scale_factors: &[f64],
 ) -> Result<Vec<RawGrowth>, CosmologyError> {
-    check_scale_factors(background, scale_factors)?;
+    check_scale_factors(scale_factors)?;
+    background.check_past(STARTING_SCALE_FACTOR)?;
     let mut order: Vec<usize> = (0..scale_factors.len()).collect();
     order.sort_by(|&i, &j| scale_factors[i].total_cmp(&scale_factors[j]));
     let equation = Equation { background, gravity };
@@ -164,7 +165,7 @@ fn advance(
     solver.y_out().last().copied().ok_or_else(|| fail(to, "no step was taken"))
 }
 
-fn check_scale_factors(background: &Background, scale_factors: &[f64]) -> Result<(), CosmologyError> {
+pub(crate) fn check_scale_factors(scale_factors: &[f64]) -> Result<(), CosmologyError> {
     for &a in scale_factors {
         if !(STARTING_SCALE_FACTOR..=1.0).contains(&a) {
             return Err(CosmologyError::OutOfRange {
@@ -174,13 +175,6 @@ fn check_scale_factors(background: &Background, scale_factors: &[f64]) -> Result
                 way_out: "give a redshift between 0 and 999",
             });
         }
-    }
-    if let Some((at, value)) = background.missing_past(STARTING_SCALE_FACTOR) {
-        return Err(CosmologyError::NoExpansion {
-            redshift: 1.0 / at - 1.0,
-            value,
-            asked: 1.0 / STARTING_SCALE_FACTOR - 1.0,
-        });
     }
     Ok(())
 }
@@ -214,7 +208,8 @@ pub fn growth_from_index(
             way_out: "give 0.55 for general relativity",
         });
     }
-    check_scale_factors(background, scale_factors)?;
+    check_scale_factors(scale_factors)?;
+    background.check_past(STARTING_SCALE_FACTOR)?;
     let rate_at = |a: f64| background.matter_fraction(a).powf(gamma);
     Ok(scale_factors
         .iter()

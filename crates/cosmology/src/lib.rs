@@ -5,6 +5,7 @@
 //! | [`background`] | E(a), its slope, the densities' fractions, distances |
 //! | [`epoch`] | everything of the background that one redshift needs, checked once |
 //! | [`growth`] | D, f and f′ from the growth equation or from a growth index |
+//! | [`growth_solver`] | the same for redshifts that stay while all else moves, many wavenumbers at once |
 //! | [`transfer`] | shapes of the linear power spectrum |
 //! | [`power`] | the linear power spectrum normalised to σ8 |
 //! | [`clocks`] | how differently clocks tick a given distance apart |
@@ -21,6 +22,7 @@ pub mod clocks;
 pub mod epoch;
 pub mod errors;
 pub mod growth;
+pub mod growth_solver;
 pub mod legendre;
 pub mod power;
 pub mod quadrature;
@@ -32,7 +34,8 @@ pub use clocks::{ClockContrast, ClockSetting, SECONDS_PER_YEAR, clock_contrast};
 pub use epoch::Epoch;
 pub use errors::CosmologyError;
 pub use growth::{GrowthState, RawGrowth, growth_from_index, growth_history, growth_states};
+pub use growth_solver::{GrowthScratch, GrowthSolver};
 pub use legendre::legendre;
-pub use power::LinearPower;
+pub use power::{LinearPower, RawPower, Wavenumbers, variance_kernel};
 pub use quadrature::{GaussLegendre, composite, gauss_legendre};
 pub use transfer::{PowerShape, PowerTable};

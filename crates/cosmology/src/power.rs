@@ -6,7 +6,7 @@ use std::sync::{Arc, LazyLock};
 
 use crate::bessel::spherical_bessel;
 use crate::errors::CosmologyError;
-use crate::quadrature::{GaussLegendre, composite, even, geometric};
+use crate::quadrature::{composite, even, geometric};
 use crate::transfer::{EisensteinHu, EisensteinHuSmooth, PowerShape, PowerTable};
 
 /// Radius of the top-hat sphere of σ8, Mpc/h.
@@ -15,13 +15,65 @@ pub const SIGMA8_RADIUS: f64 = 8.0;
 /// How many wavenumbers go through the transfer function at once.
 const BLOCK: usize = 8;
 
-/// P_lin(k), today's in general relativity.
+/// Wavenumbers (h/Mpc) at which spectra are asked for again and again, with their logarithms and the powers of them that
+/// the transfer functions take.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct Wavenumbers {
+    values: Vec<f64>,
+    logarithms: Vec<f64>,
+    quotient_powers: Vec<f64>,
+    silk_powers: Vec<f64>,
+}
+
+impl Wavenumbers {
+    /// Checks them: each above 0 and finite, in any order.
+    ///
+    /// # Errors
+    /// A wavenumber of 0 or below, or not finite.
+    pub fn new(values: Vec<f64>) -> Result<Self, CosmologyError> {
+        if let Some(&bad) = values.iter().find(|&&k| !(k > 0.0 && k.is_finite())) {
+            return Err(CosmologyError::OutOfRange {
+                name: "wavenumber",
+                value: bad,
+                rule: "above 0 and finite",
+                way_out: "give it in h/Mpc",
+            });
+        }
+        let power = |exponent: f64| values.iter().map(|k| k.powf(exponent)).collect();
+        Ok(Self {
+            logarithms: values.iter().map(|k| k.ln()).collect(),
+            quotient_powers: power(EisensteinHu::QUOTIENT_POWER),
+            silk_powers: power(EisensteinHu::SILK_POWER),
+            values,
+        })
+    }
+
+    /// The wavenumbers, h/Mpc.
+    pub fn values(&self) -> &[f64] {
+        &self.values
+    }
+
+    /// Their natural logarithms.
+    pub fn logarithms(&self) -> &[f64] {
+        &self.logarithms
+    }
+
+    /// How many there are.
+    pub fn len(&self) -> usize {
+        self.values.len()
+    }
+
+    /// Whether there are none.
+    pub fn is_empty(&self) -> bool {
+        self.values.is_empty()
+    }
+}
+
+/// The shape of P_lin(k) with whatever amplitude comes natural: kⁿ T² with T → 1 as k → 0, or a table as it was given.
 #[derive(Clone, Debug)]
-pub struct LinearPower {
+pub struct RawPower {
     shape: Shape,
     spectral_index: f64,
-    amplitude: f64,
-    sigma8: f64,
 }
 
 #[derive(Clone, Debug)]
@@ -31,35 +83,122 @@ enum Shape {
     Table(Arc<PowerTable>),
 }
 
-impl Shape {
-    /// Power of arbitrary amplitude.
-    fn power(&self, k: f64, spectral_index: f64) -> f64 {
-        self.powers([k], spectral_index)[0]
+impl RawPower {
+    /// Works out the shape's scales.
+    ///
+    /// # Errors
+    /// `n_s` not finite; densities or h that the transfer function can't take. A table looks at none of them but `n_s`.
+    pub fn new(
+        shape: &PowerShape,
+        omega_m: f64,
+        omega_b: f64,
+        h: f64,
+        n_s: f64,
+    ) -> Result<Self, CosmologyError> {
+        if !n_s.is_finite() {
+            return Err(CosmologyError::OutOfRange {
+                name: "n_s",
+                value: n_s,
+                rule: "finite",
+                way_out: "give the slope of the primordial power, such as 0.965",
+            });
+        }
+        let shape = match shape {
+            PowerShape::EisensteinHu => Shape::EisensteinHu(EisensteinHu::new(omega_m, omega_b, h)?),
+            PowerShape::EisensteinHuSmooth => {
+                Shape::EisensteinHuSmooth(EisensteinHuSmooth::new(omega_m, omega_b, h)?)
+            }
+            PowerShape::Table(table) => Shape::Table(Arc::clone(table)),
+        };
+        Ok(Self { shape, spectral_index: n_s })
+    }
+
+    /// Power at k > 0 (h/Mpc); NaN outside a table.
+    pub fn power(&self, k: f64) -> f64 {
+        let power = |exponent: f64| [k.powf(exponent)];
+        let powers = (power(EisensteinHu::QUOTIENT_POWER), power(EisensteinHu::SILK_POWER));
+        self.powers([k], [k.ln()], powers.0, powers.1)[0]
     }
 
     /// The same for N wavenumbers: see [`EisensteinHu::transfers`] for what that saves.
-    fn powers<const N: usize>(&self, k: [f64; N], spectral_index: f64) -> [f64; N] {
-        let log_k = k.map(f64::ln);
-        let transfer = match self {
-            Shape::EisensteinHu(fit) => fit.transfers(k, log_k),
+    fn powers<const N: usize>(
+        &self,
+        k: [f64; N],
+        log_k: [f64; N],
+        quotient_power: [f64; N],
+        silk_power: [f64; N],
+    ) -> [f64; N] {
+        let transfer = match &self.shape {
+            Shape::EisensteinHu(fit) => fit.transfers(k, quotient_power, silk_power),
             Shape::EisensteinHuSmooth(fit) => k.map(|k| fit.transfer(k)),
             Shape::Table(table) => return k.map(|k| table.power(k)),
         };
-        let primordial = log_k.map(|log_k| (spectral_index * log_k).exp());
+        let primordial = log_k.map(|log_k| (self.spectral_index * log_k).exp());
         from_fn(|i| primordial[i] * transfer[i] * transfer[i])
     }
 
-    /// `scale` times the power at each of `k`, into `out` of the same length.
-    fn tabulate(&self, k: &[f64], spectral_index: f64, scale: f64, out: &mut [f64]) {
-        let (blocks, rest) = k.as_chunks::<BLOCK>();
-        let (out_blocks, out_rest) = out.as_chunks_mut::<BLOCK>();
-        for (out, &k) in out_blocks.iter_mut().zip(blocks) {
-            *out = self.powers(k, spectral_index).map(|power| scale * power);
+    /// Power at each of `wavenumbers`, into `out` of the same length.
+    ///
+    /// # Errors
+    /// `out` of another length; a wavenumber outside a table (the error names the range needed).
+    pub fn tabulate(&self, wavenumbers: &Wavenumbers, out: &mut [f64]) -> Result<(), CosmologyError> {
+        let Wavenumbers { values, logarithms, quotient_powers, silk_powers } = wavenumbers;
+        if values.len() != out.len() {
+            return Err(CosmologyError::Length { what: "powers", given: out.len(), wanted: values.len() });
         }
-        for (out, &k) in out_rest.iter_mut().zip(rest) {
-            *out = scale * self.power(k, spectral_index);
+        if let Some((low, high)) = self.range()
+            && let Some(&outside) = values.iter().find(|&k| !(low..=high).contains(k))
+        {
+            return Err(CosmologyError::OutsideTable {
+                wavenumber: outside,
+                low,
+                high,
+                needed_low: values.iter().copied().fold(f64::INFINITY, f64::min),
+                needed_high: values.iter().copied().fold(0.0, f64::max),
+            });
+        }
+        let mut start = 0;
+        let (blocks, rest) = out.as_chunks_mut::<BLOCK>();
+        for out in blocks {
+            let block = |list: &[f64]| -> [f64; BLOCK] { from_fn(|i| list[start + i]) };
+            *out = self.powers(block(values), block(logarithms), block(quotient_powers), block(silk_powers));
+            start += BLOCK;
+        }
+        for (i, out) in (start..).zip(rest) {
+            *out = self.powers([values[i]], [logarithms[i]], [quotient_powers[i]], [silk_powers[i]])[0];
+        }
+        Ok(())
+    }
+
+    /// σ8² for this amplitude: the variance in a top-hat sphere of 8 Mpc/h (a table's over its own range).
+    pub fn variance(&self) -> f64 {
+        match &self.shape {
+            Shape::Table(table) => table_variance(table),
+            _ => {
+                let (wavenumbers, weights) = &*VARIANCE_RULE;
+                let mut power = vec![0.0; weights.len()];
+                // The rule's own wavenumbers, and no table: there is nothing to refuse.
+                let _ = self.tabulate(wavenumbers, &mut power);
+                power.iter().zip(weights).map(|(power, weight)| power * weight).sum()
+            }
         }
     }
+
+    /// The wavenumbers that a table covers, h/Mpc; `None` where the shape is defined for all.
+    pub fn range(&self) -> Option<(f64, f64)> {
+        match &self.shape {
+            Shape::Table(table) => Some(table.range()),
+            _ => None,
+        }
+    }
+}
+
+/// P_lin(k), today's in general relativity.
+#[derive(Clone, Debug)]
+pub struct LinearPower {
+    raw: RawPower,
+    amplitude: f64,
+    sigma8: f64,
 }
 
 /// Wavenumbers (h/Mpc) and weights with σ² = Σ weight P(k) = ∫k²dk/2π² P W², for the shapes that have no range of
@@ -75,7 +214,7 @@ impl Shape {
 /// * at 200 it ends, with 10⁻¹² of σ² left.
 ///
 /// Compared with a rule ten times as fine, σ² is good to 2·10⁻¹⁰ for Ωm 0.1 to 0.9, Ωb 0.01 to 0.12, n_s 0.8 to 1.05.
-static VARIANCE_RULE: LazyLock<GaussLegendre> = LazyLock::new(|| {
+static VARIANCE_RULE: LazyLock<(Wavenumbers, Vec<f64>)> = LazyLock::new(|| {
     const POINTS: usize = 8;
     let period = PI / SIGMA8_RADIUS;
     let (smooth, wiggles, faint, end) = (0.01, 0.4, 2.0, 200.0);
@@ -95,11 +234,12 @@ static VARIANCE_RULE: LazyLock<GaussLegendre> = LazyLock::new(|| {
     }
     rule.nodes.append(&mut tail.nodes);
     rule.weights.append(&mut tail.weights);
-    rule
+    // They are above 0: an empty rule would show in every σ8.
+    (Wavenumbers::new(rule.nodes).unwrap_or_default(), rule.weights)
 });
 
-/// k²/2π² W(kR)², with W(x) = 3 j₁(x)/x.
-fn variance_kernel(k: f64) -> f64 {
+/// k²/2π² W(kR)², with W(x) = 3 j₁(x)/x and R = 8 Mpc/h: σ8² = ∫ P(k) × this dk.
+pub fn variance_kernel(k: f64) -> f64 {
     let x = k * SIGMA8_RADIUS;
     let window = 3.0 * spherical_bessel(1, x) / x;
     k * k / (2.0 * PI * PI) * window * window
@@ -115,37 +255,15 @@ impl LinearPower {
         n_s: f64,
         sigma8: f64,
     ) -> Result<Self, CosmologyError> {
-        if !n_s.is_finite() {
-            return Err(CosmologyError::OutOfRange {
-                name: "n_s",
-                value: n_s,
-                rule: "finite",
-                way_out: "give the slope of the primordial power, such as 0.965",
-            });
-        }
         check_sigma8(sigma8)?;
-        let shape = match shape {
-            PowerShape::EisensteinHu => Shape::EisensteinHu(EisensteinHu::new(omega_m, omega_b, h)?),
-            PowerShape::EisensteinHuSmooth => {
-                Shape::EisensteinHuSmooth(EisensteinHuSmooth::new(omega_m, omega_b, h)?)
-            }
-            PowerShape::Table(table) => Shape::Table(Arc::clone(table)),
-        };
-        let variance = match &shape {
-            Shape::Table(table) => table_variance(table),
-            _ => {
-                let rule = &*VARIANCE_RULE;
-                let mut power = vec![0.0; rule.len()];
-                shape.tabulate(&rule.nodes, n_s, 1.0, &mut power);
-                power.iter().zip(&rule.weights).map(|(power, weight)| power * weight).sum()
-            }
-        };
-        Ok(Self { shape, spectral_index: n_s, amplitude: sigma8 * sigma8 / variance, sigma8 })
+        let raw = RawPower::new(shape, omega_m, omega_b, h, n_s)?;
+        let amplitude = sigma8 * sigma8 / raw.variance();
+        Ok(Self { raw, amplitude, sigma8 })
     }
 
     /// P(k) in (Mpc/h)³ for k > 0 in h/Mpc; NaN outside a table ([`LinearPower::tabulate`] says so instead).
     pub fn power(&self, k: f64) -> f64 {
-        self.amplitude * self.shape.power(k, self.spectral_index)
+        self.amplitude * self.raw.power(k)
     }
 
     /// P at each of `k`, into `out`.
@@ -154,38 +272,21 @@ impl LinearPower {
     /// `out` of another length; a wavenumber that is not above 0 or lies outside a table (the error names the range
     /// needed).
     pub fn tabulate(&self, k: &[f64], out: &mut [f64]) -> Result<(), CosmologyError> {
-        if k.len() != out.len() {
-            return Err(CosmologyError::Length { what: "powers", given: out.len(), wanted: k.len() });
+        self.raw.tabulate(&Wavenumbers::new(k.to_vec())?, out)?;
+        for power in out {
+            *power *= self.amplitude;
         }
-        if let Some(&bad) = k.iter().find(|&&k| !(k > 0.0 && k.is_finite())) {
-            return Err(CosmologyError::OutOfRange {
-                name: "wavenumber",
-                value: bad,
-                rule: "above 0 and finite",
-                way_out: "give it in h/Mpc",
-            });
-        }
-        if let Some((low, high)) = self.range()
-            && let Some(&outside) = k.iter().find(|&k| !(low..=high).contains(k))
-        {
-            return Err(CosmologyError::OutsideTable {
-                wavenumber: outside,
-                low,
-                high,
-                needed_low: k.iter().copied().fold(f64::INFINITY, f64::min),
-                needed_high: k.iter().copied().fold(0.0, f64::max),
-            });
-        }
-        self.shape.tabulate(k, self.spectral_index, self.amplitude, out);
         Ok(())
     }
 
     /// The wavenumbers that a table covers, h/Mpc; `None` where the shape is defined for all.
     pub fn range(&self) -> Option<(f64, f64)> {
-        match &self.shape {
-            Shape::Table(table) => Some(table.range()),
-            _ => None,
-        }
+        self.raw.range()
+    }
+
+    /// The shape, and the factor that brings it to σ8.
+    pub fn raw(&self) -> (&RawPower, f64) {
+        (&self.raw, self.amplitude)
     }
 
     /// The same shape with another σ8 (above 0), without integrating again.

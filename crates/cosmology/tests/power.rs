@@ -10,7 +10,9 @@ use std::sync::Arc;
 use common::{close, near, rows, words};
 use oddwell_cosmology::quadrature::geometric;
 use oddwell_cosmology::transfer::{EisensteinHu, EisensteinHuSmooth};
-use oddwell_cosmology::{CosmologyError, LinearPower, PowerShape, PowerTable, composite, spherical_bessel};
+use oddwell_cosmology::{
+    CosmologyError, LinearPower, PowerShape, PowerTable, RawPower, Wavenumbers, composite, spherical_bessel,
+};
 use proptest::prelude::*;
 
 /// Source: Eisenstein & Hu 1998, written out again with 30 digits in mpmath 1.4.1 (tests/reference/README.md). In
@@ -69,6 +71,27 @@ fn normalisation_to_sigma8() {
         let power = LinearPower::new(&shape, omega_m, omega_b, h, n_s, sigma8).unwrap();
         close(power.power(k), expected, 1e-9, (word, &row));
     }
+}
+
+/// A likelihood that only moves the amplitude keeps the raw shape: amplitude × shape is the normalised spectrum.
+#[test]
+fn the_raw_shape_times_its_amplitude_is_the_spectrum() {
+    for shape in [PowerShape::EisensteinHu, PowerShape::EisensteinHuSmooth, PowerShape::Table(frozen_table())]
+    {
+        let power = LinearPower::new(&shape, 0.31, 0.049, 0.68, 0.965, 0.81).unwrap();
+        let raw = RawPower::new(&shape, 0.31, 0.049, 0.68, 0.965).unwrap();
+        // Eleven: a block of eight and a rest.
+        let wavenumbers = Wavenumbers::new(geometric(1e-3, 10.0, 10)).unwrap();
+        let mut found = vec![0.0; wavenumbers.len()];
+        raw.tabulate(&wavenumbers, &mut found).unwrap();
+        for (&k, found) in wavenumbers.values().iter().zip(&found) {
+            close(0.81 * 0.81 / raw.variance() * found, power.power(k), 1e-13, k);
+            close(raw.power(k), *found, 1e-13, k);
+        }
+        assert!(matches!(raw.tabulate(&wavenumbers, &mut found[1..]), Err(CosmologyError::Length { .. })));
+    }
+    let error = Wavenumbers::new(vec![0.1, 0.0]).unwrap_err();
+    assert!(matches!(error, CosmologyError::OutOfRange { name: "wavenumber", .. }), "{error}");
 }
 
 fn frozen_table() -> Arc<PowerTable> {

@@ -15,13 +15,14 @@ pub struct EisensteinHu {
     dark_share: f64,
     /// q/k, with k in h/Mpc.
     scaled: f64,
-    log_scaled: f64,
+    /// (q/k)^1.08.
+    scaled_power: f64,
     /// Mpc.
     sound_horizon: f64,
     /// Mpc/h.
     sound_horizon_scaled: f64,
-    /// ln of the Silk wavenumber in h/Mpc.
-    log_silk: f64,
+    /// The Silk wavenumber in h/Mpc to the power −1.4.
+    silk_power: f64,
     /// 14.2/alpha_c.
     dark_coefficient: f64,
     /// 1.8 beta_c.
@@ -34,6 +35,10 @@ pub struct EisensteinHu {
 }
 
 impl EisensteinHu {
+    /// The power of q in equation 20, and that of k/k_silk in equation 21.
+    pub(crate) const QUOTIENT_POWER: f64 = 1.08;
+    pub(crate) const SILK_POWER: f64 = 1.4;
+
     /// Works out the scales from the densities and h (Hubble rate over 100 km/s/Mpc).
     ///
     /// # Errors
@@ -83,10 +88,10 @@ impl EisensteinHu {
             baryon_share,
             dark_share,
             scaled,
-            log_scaled: scaled.ln(),
+            scaled_power: scaled.powf(Self::QUOTIENT_POWER),
             sound_horizon,
             sound_horizon_scaled: sound_horizon * h,
-            log_silk: (silk / h).ln(),
+            silk_power: (silk / h).powf(-Self::SILK_POWER),
             dark_coefficient: 14.2 / alpha_dark,
             beta_dark: 1.8 * beta_dark,
             alpha_baryon,
@@ -102,27 +107,29 @@ impl EisensteinHu {
 
     /// T(k) for k > 0 in h/Mpc (equations 10, 16 to 22).
     pub fn transfer(&self, wavenumber: f64) -> f64 {
-        self.transfers([wavenumber], [wavenumber.ln()])[0]
+        let power = |exponent: f64| [wavenumber.powf(exponent)];
+        self.transfers([wavenumber], power(Self::QUOTIENT_POWER), power(Self::SILK_POWER))[0]
     }
 
-    /// The same for N wavenumbers whose logarithms are known.
+    /// The same for N wavenumbers whose powers k^1.08 and k^1.4 are known.
     ///
-    /// This runs for every wavenumber at every evaluation in which the background moves. So powers are exponentials
-    /// of multiples of ln k, fractions are brought to common denominators, and the steps go one at a time through N
-    /// values: a call to a logarithm or sine spills every register, which between the steps of one value costs as
-    /// much as the calls.
+    /// This runs for every wavenumber at every evaluation in which the background moves. So powers of k alone come from
+    /// outside (a grid keeps them), fractions are brought to common denominators, and the steps go one at a time through
+    /// N values: a call to a logarithm or sine spills every register, which between the steps of one value costs as much
+    /// as the calls.
     pub(crate) fn transfers<const N: usize>(
         &self,
         wavenumber: [f64; N],
-        log_wavenumber: [f64; N],
+        quotient_power: [f64; N],
+        silk_power: [f64; N],
     ) -> [f64; N] {
         let q = wavenumber.map(|k| k * self.scaled);
         let ks = wavenumber.map(|k| k * self.sound_horizon_scaled);
-        let q_power = log_wavenumber.map(|log_k| (1.08 * (log_k + self.log_scaled)).exp());
+        let q_power = quotient_power.map(|power| power * self.scaled_power);
         let log_dark = q.map(|q| (E + self.beta_dark * q).ln());
         let log_plain = q.map(|q| (E + 1.8 * q).ln());
         // (k/k_silk)^1.4; beyond 80, e^(-damping) is lost in the rounding of what stands beside it.
-        let damping = log_wavenumber.map(|log_k| (1.4 * (log_k - self.log_silk)).exp().min(80.0));
+        let damping = silk_power.map(|power| (power * self.silk_power).min(80.0));
         let damped = damping.map(|damping| (-damping).exp());
         // 1 + (beta_node/ks)³ to the power -1/3, by logarithm: half the price of a cube root.
         let node = ks.map(|ks| 1.0 + self.node_cube / (ks * ks * ks)).map(|node| node.ln() * (-1.0 / 3.0));
