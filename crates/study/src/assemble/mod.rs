@@ -1,5 +1,6 @@
 //! From a resolved study to something that can be evaluated: measurements read, model built, posterior ready.
 
+mod domain;
 mod matrix_file;
 mod measurements;
 mod posterior;

@@ -1,11 +1,12 @@
 //! One hypothesis of a study, ready to be evaluated.
 
+use super::domain::Domain;
 use super::measurements::Measurements;
 use super::power_table::read_power_table;
 use super::projection::Projection;
 use crate::file::PowerChoice;
 use crate::parameter_map::ParameterMap;
-use crate::resolve::{Hypothesis, State, Study};
+use crate::resolve::{Hypothesis, Study};
 use crate::run_error::RunError;
 use oddwell_cosmology::{CosmologyError, PowerShape};
 use oddwell_likelihood::{CompressedSet, SurveySet};
@@ -30,6 +31,7 @@ pub struct Posterior {
     /// The kept measurements.
     pub data: SurveySet,
     projection: Projection,
+    domain: Domain,
     compressed: Option<CompressedSet>,
 }
 
@@ -87,10 +89,13 @@ pub(crate) fn model_setup(
 /// The smallest damping that the hypothesis can ask for: it sets the range of the k integrals.
 fn smallest_damping(hypothesis: &Hypothesis) -> Result<f64, RunError> {
     let Some(damping) = hypothesis.quantity("prediction.damping") else { return Ok(0.5) };
-    match damping.state {
-        State::Free(parameter) => Ok(hypothesis.priors()?.support(parameter).0.max(0.0)),
-        _ => Ok(damping.form.constant),
-    }
+    let priors = hypothesis.priors()?;
+    let lowest = |(parameter, coefficient): &(usize, f64)| {
+        let (low, high) = priors.support(*parameter);
+        (coefficient * low).min(coefficient * high)
+    };
+    let smallest = damping.form.constant + damping.form.terms.iter().map(lowest).sum::<f64>();
+    Ok(smallest.max(0.0))
 }
 
 /// Says which table does not reach far enough.
@@ -116,6 +121,7 @@ impl Posterior {
     ) -> Result<Posterior, RunError> {
         let model = Model::new(model_setup(study, hypothesis, measurements.model_rows())?)?;
         let map = ParameterMap::new(hypothesis, model.layout().names())?;
+        let domain = Domain::new(&map, model.layout());
         let priors = hypothesis.priors()?;
         let surveys = measurements.surveys.iter().map(|survey| survey.likelihood.clone()).collect();
         let mut posterior = Posterior {
@@ -125,6 +131,7 @@ impl Posterior {
             priors,
             data: SurveySet::new(surveys),
             projection: Projection::new(&measurements.surveys),
+            domain,
             compressed: None,
         };
         let start = hypothesis.start();
@@ -204,14 +211,16 @@ impl Posterior {
     ) -> Result<f64, ModelError> {
         let PosteriorScratch { values, predicted, measured, workspace, residuals, .. } = scratch;
         self.map.fill(point, values);
+        self.domain.check(values)?;
         self.fill_prediction(values, workspace, predicted, measured)?;
         Ok(self.data.log_likelihood(measured, residuals))
     }
 
     fn any_log_likelihood(&self, point: &[f64], scratch: &mut PosteriorScratch) -> Result<f64, ModelError> {
         let Some(compressed) = &self.compressed else { return self.plain_log_likelihood(point, scratch) };
-        self.map.fill(point, &mut scratch.values);
         let PosteriorScratch { values, coefficients, workspace, .. } = scratch;
+        self.map.fill(point, values);
+        self.domain.check(values)?;
         self.model.coefficients(values, workspace, coefficients)?;
         Ok(compressed.log_likelihood(coefficients))
     }

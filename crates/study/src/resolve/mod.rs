@@ -17,6 +17,7 @@ use oddwell_likelihood::LengthUnit;
 pub use affine::AffineForm;
 pub use hypothesis::{FreeParameter, FreePrior, Hypothesis, JointBlock, ResolvedQuantity, State};
 pub use systematics::Move;
+pub(crate) use values::{QuantityRule, rule_of};
 
 use crate::error::{Location, Problem, StudyError};
 use crate::fault::Fault;

@@ -9,36 +9,43 @@ use crate::fault::Fault;
 use crate::file::{Quantity, StudyFile};
 use crate::nearest::Nearest;
 
-/// The range of a held quantity: a test, the rule in words, the way out.
-struct Rule {
-    holds: fn(f64) -> bool,
-    rule: &'static str,
-    way_out: &'static str,
+/// The range of a quantity: a test, the rule in words, the way out. A held number outside is an error of the study; where
+/// a prior reaches outside, there is no prediction.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct QuantityRule {
+    /// Dotted name.
+    pub(crate) name: &'static str,
+    pub(crate) holds: fn(f64) -> bool,
+    pub(crate) rule: &'static str,
+    pub(crate) way_out: &'static str,
 }
 
-const fn above_zero(way_out: &'static str) -> Rule {
-    Rule { holds: |value| value > 0.0, rule: "above 0", way_out }
+const fn above_zero(name: &'static str, way_out: &'static str) -> QuantityRule {
+    QuantityRule { name, holds: |value| value > 0.0, rule: "above 0", way_out }
 }
+
+const fn not_negative(name: &'static str, way_out: &'static str) -> QuantityRule {
+    QuantityRule { name, holds: |value| value >= 0.0, rule: "0 or above", way_out }
+}
+
+const RULES: [QuantityRule; 7] = [
+    above_zero("background.omega_m", "a universe without matter has no structure, as in 0.31"),
+    above_zero("background.omega_b", "the transfer function needs baryons, as in 0.049"),
+    QuantityRule {
+        name: "background.h",
+        holds: |value| value > 0.0 && value < 10.0,
+        rule: "above 0 and below 10",
+        way_out: "it is H0 in 100 km/s/Mpc, as in 0.68",
+    },
+    above_zero("background.sigma8", "it is the rms of matter in 8 Mpc/h, as in 0.81"),
+    not_negative("prediction.damping", "it is a length in Mpc/h, as in 0.5"),
+    not_negative("prediction.smearing", "it is a length in Mpc/h, as in 5.0, or 0 for none"),
+    above_zero("prediction.clock_distance", "it is a length in Mpc/h, as in 50.0"),
+];
 
 /// The rule of a quantity's dotted name; most may be any finite number.
-fn rule_of(name: &str) -> Option<Rule> {
-    match name {
-        "background.omega_m" => Some(above_zero("a universe without matter has no structure, as in 0.31")),
-        "background.omega_b" => Some(above_zero("the transfer function needs baryons, as in 0.049")),
-        "background.h" => Some(Rule {
-            holds: |value| value > 0.0 && value < 10.0,
-            rule: "above 0 and below 10",
-            way_out: "it is H0 in 100 km/s/Mpc, as in 0.68",
-        }),
-        "background.sigma8" => Some(above_zero("it is the rms of matter in 8 Mpc/h, as in 0.81")),
-        "prediction.damping" => Some(Rule {
-            holds: |value| value >= 0.0,
-            rule: "0 or above",
-            way_out: "it is a length in Mpc/h, as in 0.5",
-        }),
-        "prediction.clock_distance" => Some(above_zero("it is a length in Mpc/h, as in 50.0")),
-        _ => None,
-    }
+pub(crate) fn rule_of(name: &str) -> Option<QuantityRule> {
+    RULES.iter().find(|rule| rule.name == name).copied()
 }
 
 /// Checks every held quantity of the file.
@@ -48,7 +55,7 @@ pub(super) fn check_quantities(entries: &[Entry], checker: &mut Checker<'_>) {
         match &entry.given.value {
             Quantity::Held(value) => {
                 let broken = rule_of(&name).filter(|rule| !(rule.holds)(*value));
-                if let Some(Rule { rule, way_out, .. }) = broken {
+                if let Some(QuantityRule { rule, way_out, .. }) = broken {
                     let fault = Fault::OutOfRange { name, rule, value: format!("{value:?}"), way_out };
                     checker.fault(entry.given.origin, &entry.name, fault);
                 }
