@@ -104,12 +104,12 @@ pub enum RunError {
         /// What to do.
         way_out: &'static str,
     },
-    /// A table of the matter power spectrum does not reach as far as the prediction needs.
+    /// A table whose numbers are no matter power spectrum, or do not reach as far as the prediction needs.
     #[error("{file}: {source}")]
-    PowerRange {
+    Power {
         /// The table.
         file: String,
-        /// Which wavenumbers it covers, and which are needed.
+        /// What is wrong.
         source: CosmologyError,
     },
     /// A window matrix, or the table that names its columns, is wrong.

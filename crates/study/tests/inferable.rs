@@ -86,7 +86,10 @@ fn cases() -> Vec<Case> {
             "{ normal = [0.049, 0.1] }",
             [0.04, 0.06],
             false,
-            Some((-0.01, "background.omega_b = -0.01: must be above 0; the transfer function needs baryons, as in 0.049")),
+            Some((
+                -0.01,
+                "background.omega_b = -0.01: must be above 0; the transfer function needs baryons, as in 0.049",
+            )),
         ),
         case("background.h", "{ normal = [0.68, 0.3] }", [0.6, 0.74], false, Some((-0.1, h))),
         case("background.n_s", "{ normal = [0.965, 0.02] }", [0.9, 1.0], false, None),
@@ -160,7 +163,10 @@ fn a_fit_with_a_free_universe_runs() {
     let text = text("background.omega_m", "{ normal = [0.31, 0.1] }")
         .replace("h = 0.68", "h = { normal = [0.68, 0.05] }")
         .replace("sigma8 = 0.81", "sigma8 = { normal = [0.81, 0.1] }\nw0 = { normal = [-1.0, 0.2] }")
-        .replace("[prediction]", "[prediction]\ndamping = { half_normal = 0.5 }\ngrowth_index = { normal = [0.55, 0.1] }");
+        .replace(
+            "[prediction]",
+            "[prediction]\ndamping = { half_normal = 0.5 }\ngrowth_index = { normal = [0.55, 0.1] }",
+        );
     let study = folder.study(&text);
     let options = FitOptions {
         out: folder.0.path().join("run"),

@@ -102,7 +102,7 @@ fn smallest_damping(hypothesis: &Hypothesis) -> Result<f64, RunError> {
 fn name_the_table(study: &Study, error: ModelError) -> RunError {
     match (error, &study.file.background.power.value) {
         (ModelError::Cosmology(source @ CosmologyError::OutsideTable { .. }), PowerChoice::Table(path)) => {
-            RunError::PowerRange { file: study.file.path_of(path).display().to_string(), source }
+            RunError::Power { file: study.file.path_of(path).display().to_string(), source }
         }
         (error, _) => error.into(),
     }
