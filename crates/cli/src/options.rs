@@ -110,6 +110,13 @@ Example: oddwell fit study.toml --hypothesis constant --out runs/first --seed 7
 Ctrl-C stops early and keeps what was sampled, marked as not converged; a second one ends at once.")]
     #[command(mut_arg("hypothesis", |argument| argument.help(WHICH_TO_FIT)))]
     Fit(FitArguments),
+    /// Draw synthetic measurements from the study's own model and covariance, as a complete study
+    ///
+    /// Writes a folder with the study, its tables with drawn values, its covariances, and truth.csv. Inferred quantities
+    /// stand at the centre of their priors, or where `--set` puts them, or are drawn from the priors with `--from-prior`.
+    /// The noise is normal with the covariance as given. Without `--hypothesis`, as `fit` chooses.
+    #[command(after_help = "Example: oddwell simulate study.toml --out drawn --set departure.tau=2 --seed 7")]
+    Simulate(SimulateArguments),
 }
 
 /// Options of `new`.
@@ -118,6 +125,22 @@ pub(crate) struct NewArguments {
     /// The folder to make; it must not exist, or be empty
     #[arg(value_name = "DIR")]
     pub(crate) directory: PathBuf,
+}
+
+/// Options of `simulate`.
+#[derive(Args, Debug)]
+pub(crate) struct SimulateArguments {
+    #[command(flatten)]
+    pub(crate) study: StudyArguments,
+    /// The folder to make; it must not exist
+    #[arg(long, value_name = "DIR")]
+    pub(crate) out: PathBuf,
+    /// Seed of the noise, and of the truth with `--from-prior`
+    #[arg(long, value_name = "N", default_value_t = 1)]
+    pub(crate) seed: u64,
+    /// Draw the truth from the priors
+    #[arg(long)]
+    pub(crate) from_prior: bool,
 }
 
 /// Which study, which hypothesis, and what to change in it.

@@ -9,7 +9,9 @@
 //! This crate does no arithmetic of physics or statistics and prints nothing.
 
 mod checksum;
+mod copy;
 mod describe;
+mod draw;
 mod error;
 mod fault;
 mod fit;
@@ -30,7 +32,9 @@ pub mod resolve;
 pub mod simulate;
 pub mod template;
 
+pub use copy::StudyCopy;
 pub use describe::{DescribedQuantity, Kind, describe};
+pub use draw::{Simulated, Truth, simulate_study};
 pub use error::{Location, Problem, StudyError};
 pub use fault::Fault;
 pub use file::{Located, Origin, Override, Place, PriorSpec, Quantity, StudyFile};

@@ -140,6 +140,12 @@ pub enum RunError {
         /// The path.
         path: PathBuf,
     },
+    /// The folder for a new study exists.
+    #[error("{}: exists already; give a folder that does not, with `--out`", .path.display())]
+    FolderExists {
+        /// The folder.
+        path: PathBuf,
+    },
     /// A file or folder can't be written.
     #[error("{}: can't be written ({reason}); choose a folder that you may write to with `--out`", .path.display())]
     Unwritable {

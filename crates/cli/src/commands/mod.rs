@@ -4,6 +4,7 @@ mod fit;
 mod new;
 mod predict;
 mod show;
+mod simulate;
 
 use oddwell_study::{Hypothesis, Override, Study};
 
@@ -19,6 +20,7 @@ pub(crate) fn run(options: &Options) -> Status {
         Command::Show(arguments) => show::run(arguments, &output),
         Command::Predict(arguments) => predict::run(arguments, &output),
         Command::Fit(arguments) => fit::run(arguments, &output),
+        Command::Simulate(arguments) => simulate::run(arguments, &output),
     };
     done.unwrap_or_else(|failure| output.failure(&failure))
 }

@@ -28,6 +28,8 @@ pub struct SurveyMeasurements {
     pub likelihood: SurveyLikelihood,
     /// Each kept row's index among the study's bins.
     pub bins: Vec<usize>,
+    /// The h that converted lengths given in Mpc; none where they were given in Mpc/h.
+    pub h: Option<f64>,
     /// What turns predictions into the kept rows, where the survey has a window.
     pub window: Option<SurveyWindow>,
 }
@@ -154,7 +156,7 @@ fn read_survey(
         .map_err(|source| RunError::Noise { survey: name.clone(), source })?;
     let likelihood = SurveyLikelihood::from_covariance(table.values(), covariance, &noise)
         .map_err(|source| RunError::Likelihood { survey: name.clone(), source })?;
-    Ok(SurveyMeasurements { name, table, cut, likelihood, bins, window })
+    Ok(SurveyMeasurements { name, h, table, cut, likelihood, bins, window })
 }
 
 /// The h of lengths in Mpc: of the background that made them, else the one that is held (checked when the study was

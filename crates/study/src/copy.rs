@@ -1,0 +1,152 @@
+//! A complete copy of a study with other measurements, in a folder of its own.
+
+use crate::assemble::Measurements;
+use crate::file::{Located, Origin, PowerChoice};
+use crate::resolve::Study;
+use crate::run_error::RunError;
+use oddwell_likelihood::{Axis, LengthUnit, with_values};
+use std::collections::BTreeMap;
+use std::fs;
+use std::path::{Path, PathBuf};
+
+/// What goes into the folder: names and contents, the study file first.
+#[derive(Clone, Debug, PartialEq)]
+pub struct StudyCopy {
+    files: Vec<(String, Vec<u8>)>,
+}
+
+/// Name of the study file in the copy.
+pub(crate) const STUDY_FILE: &str = "study.toml";
+
+impl StudyCopy {
+    /// A copy of `study` with `values` in place of the measured ones (all rows of `measurements`, survey after survey, in
+    /// their units: Mpc/h), `note` as comment lines in front of the study file, and `appendix` behind it. All files that
+    /// the study refers to come along, and the copy refers to its own.
+    ///
+    /// # Errors
+    /// [`RunError::UnreadableRun`] where a file that was read before can no longer be.
+    pub fn new(
+        study: &Study,
+        measurements: &Measurements,
+        values: &[f64],
+        note: &str,
+        appendix: &str,
+    ) -> Result<StudyCopy, RunError> {
+        let mut copy = StudyCopy { files: vec![(STUDY_FILE.to_owned(), Vec::new())] };
+        let mut edits: Vec<(usize, usize, String)> = Vec::new();
+        let mut first = 0;
+        for (section, survey) in study.file.surveys.iter().zip(&measurements.surveys) {
+            let columns: BTreeMap<String, String> =
+                section.columns.iter().map(|(ours, theirs)| (ours.clone(), theirs.value.clone())).collect();
+            let lines: Vec<(u64, f64)> = survey
+                .table
+                .rows
+                .iter()
+                .zip(&values[first..])
+                .map(|(row, value)| {
+                    let spectrum =
+                        section.unit.value == LengthUnit::Megaparsec && row.axis == Axis::Wavenumber;
+                    let factor = if spectrum { survey.h.unwrap_or(1.0).powi(3) } else { 1.0 };
+                    (row.line, value / factor)
+                })
+                .collect();
+            first += survey.table.len();
+            let path = study.file.path_of(&section.multipoles.value);
+            let text = String::from_utf8(read(&path)?).unwrap_or_default();
+            let text = with_values(&text, &columns, &lines)
+                .ok_or_else(|| unreadable(&path, "its lines have changed meanwhile".to_owned()))?;
+            let name = copy.add(&section.multipoles.value, &section.name.value, text.into_bytes());
+            edits.extend(edit(&section.multipoles, &name));
+            let others =
+                [&section.covariance, &section.covariance_rows, &section.window, &section.window_rows];
+            for other in others.into_iter().flatten() {
+                let content = read(&study.file.path_of(&other.value))?;
+                let name = copy.add(&other.value, &section.name.value, content);
+                edits.extend(edit(other, &name));
+            }
+        }
+        if let PowerChoice::Table(path) = &study.file.background.power.value {
+            let name = copy.add(path, "power", read(&study.file.path_of(path))?);
+            edits.extend(edit(&study.file.background.power, &name));
+        }
+        let mut text = study.file.source.text().to_owned();
+        edits.sort_by_key(|(start, ..)| std::cmp::Reverse(*start));
+        for (start, end, name) in edits {
+            text.replace_range(start..end, &format!("\"{name}\""));
+        }
+        let notes: String = note.lines().map(|line| format!("# {line}\n")).collect();
+        let separator = if appendix.is_empty() || text.ends_with('\n') { "" } else { "\n" };
+        copy.files[0].1 = format!("{notes}{text}{separator}{appendix}").into_bytes();
+        Ok(copy)
+    }
+
+    /// Takes a file in under its own name, or with `owner` in front where that is taken by another content.
+    fn add(&mut self, written: &str, owner: &str, content: Vec<u8>) -> String {
+        let base = Path::new(written)
+            .file_name()
+            .map_or_else(|| "table".to_owned(), |name| name.to_string_lossy().into_owned());
+        let mut name = base.clone();
+        let mut attempt = 1;
+        while let Some((_, known)) = self.files.iter().find(|(known, _)| *known == name) {
+            if *known == content {
+                return name;
+            }
+            name = if attempt == 1 { format!("{owner}-{base}") } else { format!("{owner}-{attempt}-{base}") };
+            attempt += 1;
+        }
+        self.files.push((name.clone(), content));
+        name
+    }
+
+    /// One more file of the copy.
+    pub fn with_file(mut self, name: &str, content: Vec<u8>) -> StudyCopy {
+        self.files.push((name.to_owned(), content));
+        self
+    }
+
+    /// Writes everything into a folder that does not exist yet; returns the study file's path.
+    ///
+    /// # Errors
+    /// [`RunError::FolderExists`]; [`RunError::Unwritable`], and then nothing stays behind.
+    pub fn write(&self, folder: &Path) -> Result<PathBuf, RunError> {
+        if folder.symlink_metadata().is_ok() {
+            return Err(RunError::FolderExists { path: folder.to_owned() });
+        }
+        let staging = match folder.file_name() {
+            Some(name) => folder.with_file_name(format!(
+                ".{}.unfinished-{}",
+                name.to_string_lossy(),
+                std::process::id()
+            )),
+            None => folder.to_owned(),
+        };
+        let write = || -> std::io::Result<()> {
+            fs::create_dir_all(&staging)?;
+            for (name, content) in &self.files {
+                fs::write(staging.join(name), content)?;
+            }
+            fs::rename(&staging, folder)
+        };
+        write().map_err(|error| {
+            let _ = fs::remove_dir_all(&staging);
+            RunError::Unwritable { path: folder.to_owned(), reason: error.to_string() }
+        })?;
+        Ok(folder.join(STUDY_FILE))
+    }
+}
+
+fn unreadable(path: &Path, reason: String) -> RunError {
+    RunError::UnreadableRun { path: path.to_owned(), reason }
+}
+
+fn read(path: &Path) -> Result<Vec<u8>, RunError> {
+    fs::read(path).map_err(|error| unreadable(path, error.to_string()))
+}
+
+/// Where a path stands in the study file's text, and what goes there.
+fn edit<T>(written: &Located<T>, name: &str) -> Option<(usize, usize, String)> {
+    match written.origin {
+        Origin::Written(place) => Some((place.start, place.end, name.to_owned())),
+        Origin::Set | Origin::Default => None,
+    }
+}
