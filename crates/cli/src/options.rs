@@ -117,6 +117,19 @@ Ctrl-C stops early and keeps what was sampled, marked as not converged; a second
     /// The noise is normal with the covariance as given. Without `--hypothesis`, as `fit` chooses.
     #[command(after_help = "Example: oddwell simulate study.toml --out drawn --set departure.tau=2 --seed 7")]
     Simulate(SimulateArguments),
+    /// Shift the measurements by a secret departure, so that nobody can steer the analysis
+    ///
+    /// Writes a complete blinded study into a folder. The secret departure is drawn from the phrase, three times as wide
+    /// as what the study expects to measure; the study commits to the phrase by a salted hash. While it is blinded, what
+    /// would tell where the departure lies is withheld. The phrase is written nowhere: keep its file.
+    #[command(after_help = "Example: oddwell blind study.toml --phrase-file phrase.txt --out blinded")]
+    Blind(BlindArguments),
+    /// Take the secret shift out again, once the analysis is frozen
+    ///
+    /// Checks the phrase, prints the secret, writes the study with the measurements as they were, and a log (reveal.json)
+    /// of when, and of what was planned before anybody knew.
+    #[command(after_help = "Example: oddwell reveal blinded --phrase-file phrase.txt --out revealed")]
+    Reveal(BlindArguments),
 }
 
 /// Options of `new`.
@@ -125,6 +138,20 @@ pub(crate) struct NewArguments {
     /// The folder to make; it must not exist, or be empty
     #[arg(value_name = "DIR")]
     pub(crate) directory: PathBuf,
+}
+
+/// Options of `blind` and `reveal`.
+#[derive(Args, Debug)]
+pub(crate) struct BlindArguments {
+    /// The study file, or (to reveal) the folder of the blinded study
+    #[arg(value_name = "STUDY")]
+    pub(crate) study: PathBuf,
+    /// A file that holds the phrase, at least eight characters
+    #[arg(long, value_name = "F")]
+    pub(crate) phrase_file: PathBuf,
+    /// The folder to make; it must not exist
+    #[arg(long, value_name = "DIR")]
+    pub(crate) out: PathBuf,
 }
 
 /// Options of `simulate`.

@@ -40,7 +40,8 @@ pub fn prediction_csv(rows: &[PredictedRow]) -> String {
                 cells.push(at.map_or_else(String::new, number));
             }
         }
-        cells.extend([row.measured, row.error, row.predicted].map(number));
+        cells.push(row.measured.map_or_else(String::new, number));
+        cells.extend([row.error, row.predicted].map(number));
         out.push_str(&cells.join(","));
         out.push('\n');
     }
@@ -96,7 +97,7 @@ mod tests {
             multipole: 1,
             separation,
             wavenumber,
-            measured: 1.0 / 3.0,
+            measured: Some(1.0 / 3.0),
             error: 2.5e-7,
             predicted: -0.001,
         }

@@ -74,6 +74,8 @@ impl StudyCopy {
         for (start, end, name) in edits {
             text.replace_range(start..end, &format!("\"{name}\""));
         }
+        // Where a note was blanked out.
+        let text = text.trim_start();
         let notes: String = note.lines().map(|line| format!("# {line}\n")).collect();
         let separator = if appendix.is_empty() || text.ends_with('\n') { "" } else { "\n" };
         copy.files[0].1 = format!("{notes}{text}{separator}{appendix}").into_bytes();

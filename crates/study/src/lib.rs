@@ -9,6 +9,7 @@
 //! This crate does no arithmetic of physics or statistics and prints nothing.
 
 mod checksum;
+mod clocks;
 mod copy;
 mod describe;
 mod draw;
@@ -26,6 +27,7 @@ mod warnings;
 mod worth;
 
 pub mod assemble;
+pub mod blinding;
 pub mod file;
 pub mod record;
 pub mod resolve;

@@ -22,8 +22,8 @@ pub struct PredictedRow {
     pub separation: Option<f64>,
     /// h/Mpc; none in separation space.
     pub wavenumber: Option<f64>,
-    /// The measured value.
-    pub measured: f64,
+    /// The measured value; withheld while the measurements are blinded.
+    pub measured: Option<f64>,
     /// Its standard deviation, from the covariance.
     pub error: f64,
     /// The prediction.
@@ -51,7 +51,7 @@ pub fn predict(study: &Study, hypothesis: &Hypothesis) -> Result<Vec<PredictedRo
                 multipole: row.multipole,
                 separation: at(Axis::Separation),
                 wavenumber: at(Axis::Wavenumber),
-                measured: row.value,
+                measured: study.file.blinding.is_none().then_some(row.value),
                 error,
                 predicted,
             });

@@ -140,6 +140,46 @@ pub enum RunError {
         /// The path.
         path: PathBuf,
     },
+    /// Blinded where it must not be, or not where it must.
+    #[error("{what} is blinded; {way_out}")]
+    Blinded {
+        /// What is blinded.
+        what: &'static str,
+        /// What to do.
+        way_out: &'static str,
+    },
+    /// A phrase that can't be used. Its text is never part of the message.
+    #[error("{}: a phrase file: {reason}", .path.display())]
+    Phrase {
+        /// The phrase file.
+        path: PathBuf,
+        /// What is wrong with it.
+        reason: String,
+    },
+    /// Not the phrase that the study commits to.
+    #[error("{}: is not the phrase that the study was blinded with; give that one (nothing was revealed)", .path.display())]
+    WrongPhrase {
+        /// The phrase file.
+        path: PathBuf,
+    },
+    /// A row that was not there when the study was blinded.
+    #[error(
+        "the row {row} was not measured when the study was blinded, so its shift is unknown; remove it, or bring back the table as it was"
+    )]
+    NotFrozen {
+        /// The row.
+        row: String,
+    },
+    /// A fit that would show how general relativity does on blinded measurements.
+    #[error(
+        "hypothesis `{hypothesis}` has no inferred departure, and {withheld}; fit a hypothesis with an inferred departure"
+    )]
+    Withheld {
+        /// The hypothesis.
+        hypothesis: String,
+        /// Why.
+        withheld: &'static str,
+    },
     /// The folder for a new study exists.
     #[error("{}: exists already; give a folder that does not, with `--out`", .path.display())]
     FolderExists {

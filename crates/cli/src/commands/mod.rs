@@ -1,8 +1,10 @@
 //! One file a command.
 
+mod blind;
 mod fit;
 mod new;
 mod predict;
+mod reveal;
 mod show;
 mod simulate;
 
@@ -20,6 +22,8 @@ pub(crate) fn run(options: &Options) -> Status {
         Command::Show(arguments) => show::run(arguments, &output),
         Command::Predict(arguments) => predict::run(arguments, &output),
         Command::Fit(arguments) => fit::run(arguments, &output),
+        Command::Blind(arguments) => blind::run(arguments, &output),
+        Command::Reveal(arguments) => reveal::run(arguments, &output),
         Command::Simulate(arguments) => simulate::run(arguments, &output),
     };
     done.unwrap_or_else(|failure| output.failure(&failure))

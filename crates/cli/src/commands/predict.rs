@@ -1,6 +1,7 @@
 //! `oddwell predict STUDY`
 
 use oddwell_report::{prediction_csv, prediction_json};
+use oddwell_study::blinding::WITHHELD;
 use oddwell_study::predict;
 
 use super::{choice, read_study};
@@ -13,6 +14,9 @@ pub(super) fn run(arguments: &StudyArguments, output: &Output) -> Result<Status,
     let hypothesis = study.hypothesis(arguments.hypothesis.as_deref())?;
     if arguments.hypothesis.is_none() {
         output.notice(&choice("predicting", &study, hypothesis));
+    }
+    if study.file.blinding.is_some() {
+        output.notice(&format!("BLINDED: no measured values here; {WITHHELD}"));
     }
     let rows = predict(&study, hypothesis)?;
     if output.json {

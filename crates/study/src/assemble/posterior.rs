@@ -184,6 +184,17 @@ impl Posterior {
         Ok(measured)
     }
 
+    /// One number a measured row, from a prediction of the model's rows: the same but where a survey has a window.
+    #[must_use]
+    pub fn measured(&self, predicted: &[f64]) -> Vec<f64> {
+        if self.projection.is_identity() {
+            return predicted.to_vec();
+        }
+        let mut measured = vec![0.0; self.data.rows()];
+        self.projection.apply(predicted, &mut measured);
+        measured
+    }
+
     /// Predicts the model's rows, and from them one number a measured row.
     fn fill_prediction(
         &self,

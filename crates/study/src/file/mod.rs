@@ -1,6 +1,7 @@
 //! The study file as typed: every value with its place, nothing looked up yet.
 
 mod background;
+mod blinding;
 mod fiducial;
 mod hypothesis;
 mod joint_prior;
@@ -20,6 +21,7 @@ use std::path::{Path, PathBuf};
 use toml_edit::Document;
 
 pub use background::{BackgroundSection, PowerChoice, PredictionSection};
+pub use blinding::BlindingSection;
 pub use fiducial::FiducialSection;
 pub use hypothesis::{HypothesisSection, Shape};
 pub use joint_prior::JointPriorSection;
@@ -59,6 +61,8 @@ pub struct StudyFile {
     pub hypotheses: Vec<HypothesisSection>,
     /// `[sampling]`.
     pub sampling: SamplingSection,
+    /// `[blinding]`, where the measurements are blinded.
+    pub blinding: Option<BlindingSection>,
 }
 
 impl StudyFile {
@@ -106,8 +110,17 @@ impl StudyFile {
             }
         };
         let parts = StudyError::unless_none(reader.into_problems(), read)?;
-        let Parts { title, background, prediction, surveys, systematics, joint_priors, hypotheses, sampling } =
-            parts;
+        let Parts {
+            title,
+            background,
+            prediction,
+            surveys,
+            systematics,
+            joint_priors,
+            hypotheses,
+            sampling,
+            blinding,
+        } = parts;
         Ok(Self {
             source,
             folder,
@@ -119,6 +132,7 @@ impl StudyFile {
             joint_priors,
             hypotheses,
             sampling,
+            blinding,
         })
     }
 
@@ -138,6 +152,7 @@ struct Parts {
     joint_priors: Vec<JointPriorSection>,
     hypotheses: Vec<HypothesisSection>,
     sampling: SamplingSection,
+    blinding: Option<BlindingSection>,
 }
 
 impl Parts {
@@ -176,6 +191,13 @@ impl Parts {
                 .and_then(SamplingSection::read),
             None => Some(SamplingSection::defaults()),
         };
+        let blinding = match root.find("blinding") {
+            Some(_) => root
+                .table("blinding", "blinding", "[blinding]", "{ commitment = \"…\" }")
+                .and_then(BlindingSection::read)
+                .map(Some),
+            None => Some(None),
+        };
         root.finish();
         Some(Self {
             title: title?,
@@ -186,6 +208,7 @@ impl Parts {
             joint_priors: joint_priors?,
             hypotheses: hypotheses?,
             sampling: sampling?,
+            blinding: blinding?,
         })
     }
 }
