@@ -52,7 +52,8 @@ impl RunDirectory {
         Ok(claimed)
     }
 
-    /// Writes `chain.csv`, `summary.json` and `manifest.json`, then puts the directory in its place.
+    /// Writes `chain.csv`, `summary.json` and `manifest.json`, then puts the directory in its place. `derived` holds the
+    /// names of derived quantities and for each a number for every draw.
     ///
     /// # Errors
     /// [`RunError::Unwritable`]; then nothing stays behind, and a directory that was to be replaced stands as it was.
@@ -60,11 +61,12 @@ impl RunDirectory {
         &self,
         names: &[String],
         chain: &Chain,
+        derived: (&[String], &[Vec<f64>]),
         summary: &Summary,
         manifest: &Manifest,
     ) -> Result<(), RunError> {
         let unwritable = || RunError::unwritable(&self.target);
-        write_file(&self.staging.join("chain.csv"), |out| write_chain(out, names, chain))
+        write_file(&self.staging.join("chain.csv"), |out| write_chain(out, names, chain, derived))
             .map_err(unwritable())?;
         write_file(&self.staging.join("summary.json"), |out| write_json(out, summary))
             .map_err(unwritable())?;
@@ -141,20 +143,31 @@ fn write_json(out: &mut impl Write, value: &impl Serialize) -> io::Result<()> {
     out.write_all(b"\n")
 }
 
-/// One line a draw: ensemble, walker, step, log prior, log likelihood, then the parameters in the study's order. Numbers
-/// are the shortest that read back as the same 64-bit value.
-fn write_chain(out: &mut impl Write, names: &[String], chain: &Chain) -> io::Result<()> {
+/// One line a draw: ensemble, walker, step, log prior, log likelihood, then the parameters in the study's order, then
+/// derived quantities. Numbers are the shortest that read back as the same 64-bit value; what is not finite is left empty.
+fn write_chain(
+    out: &mut impl Write,
+    names: &[String],
+    chain: &Chain,
+    (derived, columns): (&[String], &[Vec<f64>]),
+) -> io::Result<()> {
     out.write_all(b"ensemble,walker,step,log_prior,log_likelihood")?;
-    for name in names {
+    for name in names.iter().chain(derived) {
         write!(out, ",{name}")?;
     }
     out.write_all(b"\n")?;
     let mut number = ryu::Buffer::new();
-    for draw in chain.draws() {
+    for (row, draw) in chain.draws().enumerate() {
         write!(out, "{},{},{}", draw.ensemble, draw.walker, draw.step)?;
         for &value in [draw.log_prior, draw.log_likelihood].iter().chain(draw.point) {
             out.write_all(b",")?;
             out.write_all(number.format(value).as_bytes())?;
+        }
+        for column in columns {
+            out.write_all(b",")?;
+            if column[row].is_finite() {
+                out.write_all(number.format(column[row]).as_bytes())?;
+            }
         }
         out.write_all(b"\n")?;
     }

@@ -109,6 +109,8 @@ fn converged() -> Summary {
             Mimic { nuisance: "magnification".to_owned(), shift: 0.4123, allowed: None, likeness: 0.942 },
             Mimic { nuisance: "offset".to_owned(), shift: 11.27, allowed: Some(10.0), likeness: 0.513 },
         ],
+        clocks: Vec::new(),
+        switched_off: None,
         sampler: SamplerSummary {
             ensembles: 4,
             walkers: 32,

@@ -76,11 +76,13 @@ pub(super) fn mimics(
     Ok(mimics)
 }
 
-fn difference(one: &[f64], other: &[f64]) -> Vec<f64> {
+/// Number by number.
+pub(super) fn difference(one: &[f64], other: &[f64]) -> Vec<f64> {
     one.iter().zip(other).map(|(one, other)| one - other).collect()
 }
 
-fn projection(posterior: &Posterior, one: &[f64], other: &[f64]) -> f64 {
+/// oneᵀ C⁻¹ other, summed over surveys.
+pub(super) fn projection(posterior: &Posterior, one: &[f64], other: &[f64]) -> f64 {
     let surveys = posterior.data.with_offsets();
     surveys
         .map(|(first, survey)| {

@@ -1,13 +1,16 @@
 //! From a study to a finished run: sampling, what the chain says, and the run directory.
 
 mod analysis;
+mod clocks;
 mod general_relativity;
 mod goodness;
 mod mimics;
 mod summary;
 mod suspicions;
+mod switched_off;
 
 use crate::assemble::{Posterior, read_measurements};
+use crate::blinding::{WITHHELD, withhold};
 use crate::file::Override;
 use crate::record::{Manifest, Summary};
 use crate::resolve::{Hypothesis, Study};
@@ -76,6 +79,10 @@ pub fn fit(
     progress: &mut dyn FnMut(&Progress, &[String]) -> Control,
 ) -> Result<Fitted, RunError> {
     let started = OffsetDateTime::now_utc();
+    if study.file.blinding.is_some() && hypothesis.watched().is_empty() {
+        let hypothesis = hypothesis.name.clone();
+        return Err(RunError::Withheld { hypothesis, withheld: WITHHELD });
+    }
     let directory = RunDirectory::claim(&options.out, options.replace)?;
     let measurements = read_measurements(study)?;
     let posterior = Posterior::new(study, hypothesis, &measurements)?;
@@ -96,7 +103,10 @@ pub fn fit(
     };
     let names = posterior.map.names().to_vec();
     let chain = sample(&posterior, &posterior.priors, &settings, &mut |state| progress(state, &names))?;
-    let summary = summary::summarise(study, &posterior, &measurements, &chain, settings.seed)?;
+    let (mut summary, derived) = summary::summarise(study, &posterior, &measurements, &chain, settings.seed)?;
+    if study.file.blinding.is_some() {
+        withhold(&mut summary);
+    }
     let time = |moment: OffsetDateTime| moment.format(&Rfc3339).unwrap_or_default();
     let manifest = Manifest {
         version: concat!("oddwell ", env!("CARGO_PKG_VERSION")).to_owned(),
@@ -112,9 +122,13 @@ pub fn fit(
         inputs: measurements.inputs.clone(),
         warm_up: chain.warm_up,
         thinning: chain.thinning,
-        units: names.iter().filter_map(|name| Some((name.clone(), unit_of(name)?.to_owned()))).collect(),
+        units: names
+            .iter()
+            .chain(&derived.names)
+            .filter_map(|name| Some((name.clone(), unit_of(name)?.to_owned())))
+            .collect(),
     };
-    directory.write(&names, &chain, &summary, &manifest)?;
+    directory.write(&names, &chain, (&derived.names, &derived.columns), &summary, &manifest)?;
     let interrupted = chain.outcome.stopped_by == StopReason::Caller && !chain.outcome.converged;
     Ok(Fitted { summary, manifest, directory: options.out.clone(), interrupted })
 }
@@ -129,6 +143,9 @@ impl RunError {
 
 /// The unit of a quantity, where it has one.
 fn unit_of(name: &str) -> Option<&'static str> {
+    if name.starts_with("derived.clock_contrast.") {
+        return Some("s/yr");
+    }
     match name.rsplit('.').next() {
         Some("offset") => Some("km/s"),
         Some("damping" | "clock_distance") => Some("Mpc/h"),

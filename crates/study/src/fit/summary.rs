@@ -1,57 +1,50 @@
 //! Puts the contents of `summary.json` together.
 
 use super::analysis::Analysis;
-use super::{general_relativity, goodness, mimics, suspicions};
+use super::clocks::{self, Derived};
+use super::{general_relativity, goodness, mimics, suspicions, switched_off};
 use crate::assemble::{Measurements, Posterior};
-use crate::record::{ParameterSummary, SamplerSummary, Summary, WarningRecord};
+use crate::record::{Ordered, ParameterSummary, SamplerSummary, Summary, WarningRecord};
 use crate::resolve::Study;
 use crate::run_error::RunError;
+use oddwell_sampler::diagnostics::ParameterDiagnostics;
 use oddwell_sampler::{Chain, Target};
 
-fn finite(value: f64) -> Option<f64> {
+pub(super) fn finite(value: f64) -> Option<f64> {
     Some(value).filter(|value| value.is_finite())
 }
 
-fn interval((low, high): (f64, f64)) -> Option<[f64; 2]> {
+pub(super) fn interval((low, high): (f64, f64)) -> Option<[f64; 2]> {
     (low.is_finite() && high.is_finite()).then_some([low, high])
 }
 
+/// The summary, and the derived quantities of the chain.
 pub(super) fn summarise(
     study: &Study,
     posterior: &Posterior,
     measurements: &Measurements,
     chain: &Chain,
     seed: u64,
-) -> Result<Summary, RunError> {
+) -> Result<(Summary, Derived), RunError> {
     let mut scratch = posterior.scratch();
     let analysis = Analysis::new(posterior, chain, &mut scratch)?;
     let general_relativity = general_relativity::general_relativity(posterior, chain);
     let mimics = mimics::mimics(posterior, chain, &analysis, &general_relativity, &mut scratch)?;
+    let derived = clocks::derived(posterior, measurements, chain, &analysis)?;
     let mut warnings = measurements.warnings.clone();
     warnings.extend(suspicions::suspicions(posterior, measurements, chain, &analysis, &mut scratch)?);
     let names = posterior.map.names();
-    let parameters = names
+    let mut parameters: Ordered<ParameterSummary> = names
         .iter()
         .zip(&chain.diagnostics)
         .enumerate()
         .map(|(index, (name, diagnostics))| {
-            let summary = ParameterSummary {
-                mean: finite(diagnostics.mean),
-                sd: finite(diagnostics.sd),
-                median: finite(diagnostics.median),
-                interval68: interval(diagnostics.interval68),
-                interval95: interval(diagnostics.interval95),
-                prior_mean: finite(posterior.priors.mean(index)),
-                prior_sd: finite(posterior.priors.standard_deviation(index)),
-                ess: finite(diagnostics.ess_bulk),
-                ess_tail: finite(diagnostics.ess_tail),
-                rhat: finite(diagnostics.rhat),
-                mcse: finite(diagnostics.mcse),
-            };
-            (name.clone(), summary)
+            let prior = (posterior.priors.mean(index), posterior.priors.standard_deviation(index));
+            (name.clone(), parameter(diagnostics, Some(prior)))
         })
         .collect();
-    Ok(Summary {
+    parameters.extend(derived.parameters.clone());
+    let summary = Summary {
         study: study.file.title.value.clone(),
         hypothesis: posterior.hypothesis.name.clone(),
         departure: posterior.hypothesis.shape.0.name().to_owned(),
@@ -76,8 +69,28 @@ pub(super) fn summarise(
         best: goodness::goodness(posterior, measurements, &analysis)?,
         general_relativity,
         mimics,
+        clocks: derived.clocks.clone(),
+        switched_off: switched_off::switched_off(posterior, measurements, &analysis, &mut scratch)?,
         sampler: sampler_summary(chain, seed),
-    })
+    };
+    Ok((summary, derived))
+}
+
+/// What the diagnostics say; `prior` is its mean and standard deviation, none of a derived quantity.
+pub(super) fn parameter(diagnostics: &ParameterDiagnostics, prior: Option<(f64, f64)>) -> ParameterSummary {
+    ParameterSummary {
+        mean: finite(diagnostics.mean),
+        sd: finite(diagnostics.sd),
+        median: finite(diagnostics.median),
+        interval68: interval(diagnostics.interval68),
+        interval95: interval(diagnostics.interval95),
+        prior_mean: prior.and_then(|(mean, _)| finite(mean)),
+        prior_sd: prior.and_then(|(_, sd)| finite(sd)),
+        ess: finite(diagnostics.ess_bulk),
+        ess_tail: finite(diagnostics.ess_tail),
+        rhat: finite(diagnostics.rhat),
+        mcse: finite(diagnostics.mcse),
+    }
 }
 
 fn sampler_summary(chain: &Chain, seed: u64) -> SamplerSummary {

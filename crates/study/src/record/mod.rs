@@ -7,6 +7,6 @@ mod summary;
 
 pub use manifest::{InputFile, Manifest};
 pub use summary::{
-    BestFit, BinGoodness, GeneralRelativity, Mimic, Ordered, ParameterSummary, SamplerSummary, Summary,
-    SurveyGoodness, WarningRecord,
+    BestFit, BinGoodness, ClockContrastSummary, ClockSummary, GeneralRelativity, Mimic, Ordered,
+    ParameterSummary, SamplerSummary, Summary, SurveyGoodness, SwitchedOff, WarningRecord,
 };

@@ -33,6 +33,13 @@ pub struct Summary {
     pub general_relativity: GeneralRelativity,
     /// What it would take for general relativity to give the same data (only where the departure is above 1 σ).
     pub mimics: Vec<Mimic>,
+    /// What it means for clocks, bin by bin.
+    #[serde(default)]
+    pub clocks: Vec<ClockSummary>,
+    /// The largest effect that the study leaves out of its predictions; null where it leaves out none, or where the data
+    /// could not tell.
+    #[serde(default)]
+    pub switched_off: Option<SwitchedOff>,
     /// What sampling cost.
     pub sampler: SamplerSummary,
 }
@@ -152,6 +159,45 @@ pub struct Mimic {
     pub allowed: Option<f64>,
     /// How nearly the same: cosine between the two changes of the data, in units of the noise; 1 is exactly the same.
     pub likeness: f64,
+}
+
+/// How differently clocks tick in a bin: the rms difference in rate between two places, `derived.clock_contrast`.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct ClockSummary {
+    /// The survey.
+    pub survey: String,
+    /// The bin.
+    pub bin: String,
+    /// How far apart the clocks stand, comoving, Mpc/h.
+    pub distance: f64,
+    /// Seconds a year: the posterior.
+    pub seconds_per_year: ClockContrastSummary,
+    /// Seconds a year in general relativity: the same study without a departure, at the best point.
+    pub general_relativity: Option<f64>,
+    /// Share of the square that comes from wavenumbers that the bin's measurements reach, at the best point, 0 to 1; the
+    /// rest is the shape's word. Separations from s₁ to s₂ reach from π/s₂ to π/s₁, wavenumbers themselves.
+    pub share_reached: Option<f64>,
+}
+
+/// The posterior of a clock contrast.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct ClockContrastSummary {
+    /// Mean.
+    pub mean: Option<f64>,
+    /// Standard deviation.
+    pub sd: Option<f64>,
+    /// Central 68 %.
+    pub interval68: Option<[f64; 2]>,
+}
+
+/// An effect that is left out of the predictions.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct SwitchedOff {
+    /// `wide_angle`, `light_cone`, `lensing`, or `offset`.
+    pub effect: String,
+    /// What it would be taken for: the departure felt by light whose change of the data, in units of the noise, is most
+    /// like the effect's. Of an offset, for 10 km/s.
+    pub tau: f64,
 }
 
 /// What sampling cost. `evaluations` and `wall_seconds` run from the first evaluation to the last, warm-up included.
