@@ -16,16 +16,24 @@ pub fn chi_squared_p_value(
     degrees_of_freedom: f64,
     mock_count: Option<usize>,
 ) -> Option<f64> {
+    tails(chi_squared, degrees_of_freedom, mock_count.map(|mocks| mocks as f64)).map(|(_, upper)| upper)
+}
+
+/// The probabilities of a χ² at most and at least this large; the number of mocks need not be whole.
+pub(crate) fn tails(chi_squared: f64, degrees_of_freedom: f64, mocks: Option<f64>) -> Option<(f64, f64)> {
     if !(chi_squared.is_finite() && chi_squared >= 0.0 && degrees_of_freedom > 0.0) {
         return None;
     }
-    match mock_count {
-        None => Some(ChiSquared::new(degrees_of_freedom).ok()?.sf(chi_squared)),
+    match mocks {
+        None => {
+            let distribution = ChiSquared::new(degrees_of_freedom).ok()?;
+            Some((distribution.cdf(chi_squared), distribution.sf(chi_squared)))
+        }
         Some(mocks) => {
-            let mocks = mocks as f64;
             let spare = mocks - degrees_of_freedom;
             let ratio = chi_squared * spare / (degrees_of_freedom * (mocks - 1.0));
-            Some(FisherSnedecor::new(degrees_of_freedom, spare).ok()?.sf(ratio))
+            let distribution = FisherSnedecor::new(degrees_of_freedom, spare).ok()?;
+            Some((distribution.cdf(ratio), distribution.sf(ratio)))
         }
     }
 }

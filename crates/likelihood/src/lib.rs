@@ -34,6 +34,7 @@ mod table;
 mod templates;
 mod triangle;
 mod units;
+pub mod verdicts;
 
 pub use arrays::{ArrayError, ArrayFormat, array_formats};
 pub use compressed::{CompressedLikelihood, LeastSquares};

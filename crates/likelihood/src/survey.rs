@@ -160,6 +160,11 @@ impl SurveyLikelihood {
         &self.covariance
     }
 
+    /// The covariance of the noise alone, without templates.
+    pub(crate) fn noise_covariance(&self) -> &Covariance {
+        self.marginal.as_ref().map_or(&self.covariance, |marginal| &marginal.base.covariance)
+    }
+
     /// ln det C.
     pub fn log_determinant(&self) -> f64 {
         self.log_determinant

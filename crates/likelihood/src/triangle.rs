@@ -51,6 +51,11 @@ impl LowerTriangle {
         Some(Self { size, entries })
     }
 
+    /// Rows.
+    pub(crate) fn size(&self) -> usize {
+        self.size
+    }
+
     /// ln det(L Lᵀ).
     pub(crate) fn log_determinant(&self) -> f64 {
         let mut end = 0;
