@@ -96,6 +96,13 @@ pub(crate) enum Command {
         after_help = "Example: oddwell predict study.toml --set departure.tau=3 --set larkfield.near.offset=10"
     )]
     Predict(StudyArguments),
+    /// Check study and measurements before a fit; samples nothing
+    ///
+    /// Reads everything, says what is wrong (error) or suspicious (warning) and what to do about it, then the data's own
+    /// verdicts: covariances and mocks, how much signal there is, whether it is gravitational redshift, how far the
+    /// measurements lie from general relativity, whether the tracers are swapped, what limits the departure.
+    #[command(after_help = "Example: oddwell check study.toml")]
+    Check(StudyArguments),
     /// Fit a hypothesis: a posterior of everything inferred, in a run directory
     ///
     /// Samples until the departure has as many effective samples as `[sampling]` asks for and every parameter passes, then

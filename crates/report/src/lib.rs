@@ -2,6 +2,7 @@
 //!
 //! This crate never reads or writes files and computes no result; it only chooses words and digits.
 
+mod check;
 mod closing;
 mod numbers;
 mod prediction;
@@ -9,6 +10,7 @@ mod show;
 mod style;
 mod text;
 
+pub use check::check_text;
 pub use closing::closing_summary;
 pub use numbers::{count, duration, signed, significant, whole};
 pub use prediction::{prediction_csv, prediction_json};

@@ -28,6 +28,7 @@ mod worth;
 
 pub mod assemble;
 pub mod blinding;
+pub mod check;
 pub mod file;
 pub mod record;
 pub mod resolve;

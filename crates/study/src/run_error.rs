@@ -180,6 +180,12 @@ pub enum RunError {
         /// Why.
         withheld: &'static str,
     },
+    /// A verdict of the data that can't be had.
+    #[error("{reason}")]
+    Verdict {
+        /// Why.
+        reason: String,
+    },
     /// The folder for a new study exists.
     #[error("{}: exists already; give a folder that does not, with `--out`", .path.display())]
     FolderExists {

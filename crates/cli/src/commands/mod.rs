@@ -1,6 +1,7 @@
 //! One file a command.
 
 mod blind;
+mod check;
 mod fit;
 mod new;
 mod predict;
@@ -22,6 +23,7 @@ pub(crate) fn run(options: &Options) -> Status {
         Command::Show(arguments) => show::run(arguments, &output),
         Command::Predict(arguments) => predict::run(arguments, &output),
         Command::Fit(arguments) => fit::run(arguments, &output),
+        Command::Check(arguments) => check::run(arguments, &output),
         Command::Blind(arguments) => blind::run(arguments, &output),
         Command::Reveal(arguments) => reveal::run(arguments, &output),
         Command::Simulate(arguments) => simulate::run(arguments, &output),

@@ -1,8 +1,9 @@
 //! What a fit says at its end, for a person at a terminal.
 //!
-//! The order is that of the questions: what came out, what else would look the same, what it does not mean, whether the
+//! The order is that of the questions: what came out, what it means for clocks, what else would look the same, what it does not mean, whether the
 //! model fits, what is suspicious, every parameter, and what the sampling was worth.
 
+mod clocks;
 mod departure;
 mod goodness;
 mod limits;
@@ -28,6 +29,7 @@ pub fn closing_summary(summary: &Summary, style: Style) -> String {
     let sections = [
         title(summary, style),
         departure::section(summary, style),
+        clocks::section(summary, style),
         mimics::section(summary, style),
         limits::section(summary, style),
         goodness::section(summary, style),

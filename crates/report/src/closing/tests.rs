@@ -2,8 +2,8 @@
 
 use indexmap::IndexMap;
 use oddwell_study::record::{
-    BestFit, BinGoodness, GeneralRelativity, Mimic, ParameterSummary, SamplerSummary, Summary,
-    SurveyGoodness, WarningRecord,
+    BestFit, BinGoodness, ClockContrastSummary, ClockSummary, GeneralRelativity, Mimic, ParameterSummary,
+    SamplerSummary, Summary, SurveyGoodness, SwitchedOff, WarningRecord,
 };
 use unicode_width::UnicodeWidthStr;
 
@@ -33,6 +33,21 @@ fn bin(name: &str, chi2: f64, p_value: f64) -> BinGoodness {
         data_points: 30,
         effective_parameters: Some(1.84),
         p_value: Some(p_value),
+    }
+}
+
+fn clock(survey: &str, bin: &str, mean: f64, sd: f64, share_reached: Option<f64>) -> ClockSummary {
+    ClockSummary {
+        survey: survey.to_owned(),
+        bin: bin.to_owned(),
+        distance: 50.0,
+        seconds_per_year: ClockContrastSummary {
+            mean: Some(mean),
+            sd: Some(sd),
+            interval68: Some([mean - 0.99 * sd, mean + 0.99 * sd]),
+        },
+        general_relativity: Some(388.49),
+        share_reached,
     }
 }
 
@@ -109,7 +124,10 @@ fn converged() -> Summary {
             Mimic { nuisance: "magnification".to_owned(), shift: 0.4123, allowed: None, likeness: 0.942 },
             Mimic { nuisance: "offset".to_owned(), shift: 11.27, allowed: Some(10.0), likeness: 0.513 },
         ],
-        clocks: Vec::new(),
+        clocks: vec![
+            clock("larkfield", "near", 2210.4, 731.2, Some(0.6138)),
+            clock("northmoor", "deep", 1903.0, 690.0, None),
+        ],
         switched_off: None,
         sampler: SamplerSummary {
             ensembles: 4,
@@ -222,6 +240,49 @@ fn general_relativity_at_the_end_of_a_prior() {
         ),
         "{text}"
     );
+}
+
+#[test]
+fn what_is_switched_off_is_said_with_its_size() {
+    let mut summary = converged();
+    for (effect, tau, sentence) in [
+        (
+            "wide_angle",
+            -1.934,
+            "The study switches wide-angle terms off: they would be taken for a departure of -1.9 that",
+        ),
+        (
+            "light_cone",
+            0.41,
+            "The study switches light-cone evolution off: it would be taken for a departure of +0.41",
+        ),
+        (
+            "lensing",
+            0.0312,
+            "The study switches lensing off: it would be taken for a departure of +0.031 that",
+        ),
+        (
+            "offset",
+            4.0,
+            "The study holds the redshift offset at 0: one of 10 km/s would be taken for a departure of +4.0",
+        ),
+    ] {
+        summary.switched_off = Some(SwitchedOff { effect: effect.to_owned(), tau });
+        let text = closing_summary(&summary, Style::Plain);
+        let text = text.split_whitespace().collect::<Vec<_>>().join(" ");
+        assert!(text.contains(sentence), "{text}");
+    }
+}
+
+#[test]
+fn clocks_whose_every_quantity_is_held_have_no_interval() {
+    let mut summary = converged();
+    summary.clocks.truncate(1);
+    summary.clocks[0].seconds_per_year =
+        ClockContrastSummary { mean: Some(388.49), sd: Some(0.0), interval68: Some([388.49, 388.49]) };
+    let text = closing_summary(&summary, Style::Plain);
+    let sentence = "clocks 50 Mpc/h apart differ by 388.5 seconds a year; general relativity gives 388;";
+    assert!(text.split_whitespace().collect::<Vec<_>>().join(" ").contains(sentence), "{text}");
 }
 
 #[test]
