@@ -14,7 +14,7 @@ pub(super) fn section(summary: &Summary, style: Style) -> String {
     for clock in &summary.clocks {
         out.push_str(&wrapped("  - ", 4, &sentence(clock)));
     }
-    let text = "(Clocks differ by the rms difference in rate between two places so far apart today; shares are of its square.)";
+    let text = "(The rms over pairs of places that far apart, comoving; the share is of its square.)";
     out + &wrapped("  ", 2, text)
 }
 
@@ -26,7 +26,7 @@ fn sentence(clock: &ClockSummary) -> String {
         "In `{}.{}` clocks {} Mpc/h apart differ by {} seconds a year",
         clock.survey,
         clock.bin,
-        significant(clock.distance, 3),
+        clock.distance,
         contrast.mean.map_or(UNKNOWN.to_owned(), seconds)
     );
     if let Some([low, high]) = contrast.interval68.filter(|_| error > 0.0) {
