@@ -38,7 +38,7 @@ impl Records {
             let line = 1 + before.iter().filter(|byte| **byte == b'\n').count() as u64;
             DataError::NotText { file: file.clone(), line, byte: rest.first().copied().unwrap_or(0) }
         })?;
-        let text = text.strip_prefix('\u{feff}').unwrap_or(text).replace("\r\n", "\n").replace('\r', "\n");
+        let text = text.trim_start_matches('\u{feff}').replace("\r\n", "\n").replace('\r', "\n");
         let (lines, kept): (Vec<u64>, Vec<&str>) = (1..)
             .zip(text.split('\n'))
             .filter(|(_, line)| !line.trim().is_empty() && !line.trim_start().starts_with('#'))
@@ -63,7 +63,11 @@ impl Records {
             }
             records.push(Record { line: *line, fields });
         }
-        Ok(Self { file, records })
+        match lines.get(records.len()) {
+            None => Ok(Self { file, records }),
+            // A quote that runs over lines is found above; whatever else hides a line must not lose it.
+            Some(line) => Err(DataError::OpenQuote { file, line: *line }),
+        }
     }
 
     /// Place of a field, for an error.

@@ -216,7 +216,7 @@ fn headers_that_lie() {
     );
     let fits = bytes("primary.fits");
     let with = |card: &str| {
-        let keyword = card[..8].as_bytes();
+        let keyword = &card.as_bytes()[..8];
         let at = fits.chunks(80).position(|line| line.starts_with(keyword)).unwrap() * 80;
         let mut bytes = fits.clone();
         bytes[at..at + 80].copy_from_slice(format!("{card:80}").as_bytes());

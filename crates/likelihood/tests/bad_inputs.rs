@@ -55,6 +55,11 @@ fn tables() {
              measured number",
         ),
         (
+            "\u{feff}\u{feff}".to_owned(),
+            "larkfield.csv: is empty, but must hold a header such as bin,multipole,separation,value and a row for each \
+             measured number",
+        ),
+        (
             "# note\nbin,multipole,separation,value\n".to_owned(),
             "larkfield.csv, line 2: a header with no rows below it; add at least one measured row",
         ),

@@ -52,7 +52,8 @@ pub fn amplitude(comparison: &Comparison, direction: &DVector<f64>) -> Result<Am
         None => None,
         Some(mocks) => {
             let rows = factored.noise_rows;
-            if mocks <= rows {
+            // Half a mock more than none, since an effective number is rounded.
+            if mocks < rows + 0.5 {
                 let (least, mocks) = (rows.round() as usize, mocks.round() as usize);
                 return Err(VerdictError::TooFewMocks { what: "an amplitude", least, mocks });
             }
@@ -83,7 +84,7 @@ pub fn amplitude_error(comparison: &Comparison, direction: &DVector<f64>) -> Res
         Some(mocks) => {
             let spare = mocks - factored.noise_rows;
             let growth = (mocks - 2.0) / (spare - 1.0) * (mocks - 1.0) / spare;
-            if spare > 1.0 { growth } else { f64::INFINITY }
+            if spare > 1.0 + 1e-6 { growth } else { f64::INFINITY }
         }
     };
     Ok((inflation / information).sqrt())

@@ -28,8 +28,9 @@ pub fn whitened_residuals(comparison: &Comparison) -> Result<Vec<f64>, VerdictEr
     let factored = comparison.factored()?;
     let mut residuals = factored.whiten(&comparison.residual());
     if let Some(mocks) = factored.mocks {
-        if mocks <= residuals.len() as f64 {
-            let (least, mocks) = (residuals.len(), mocks as usize);
+        // Half a mock more than none, since an effective number is rounded.
+        if mocks < residuals.len() as f64 + 0.5 {
+            let (least, mocks) = (residuals.len(), mocks.round() as usize);
             return Err(VerdictError::TooFewMocks { what: "a test of residuals", least, mocks });
         }
         let mut before = 0.0;

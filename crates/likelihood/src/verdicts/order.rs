@@ -44,6 +44,7 @@ pub fn row_order(comparison: &Comparison) -> Result<RowOrder, VerdictError> {
     let whitened = factored.whiten_matrix(&DMatrix::identity(size, size));
     let precision = whitened.tr_mul(&whitened);
     let start = factored.chi_squared(&comparison.residual());
+    let mut lowest_log_p = 0.0;
     let mut best =
         RowOrder { swap: Swap::Values, order: (0..size).collect(), improvement: 0.0, p_value: 1.0 };
     for (swap, numbers, sign) in
@@ -75,8 +76,9 @@ pub fn row_order(comparison: &Comparison) -> Result<RowOrder, VerdictError> {
             chi_squared = (chi_squared + change).max(0.0);
             let improvement = factored.badness(start) - factored.badness(chi_squared);
             let log_p = log_orders(size, swaps) + (2.0 * most_swaps(size) as f64).ln() - 0.5 * improvement;
-            let p_value = log_p.exp().min(1.0);
-            if p_value < best.p_value {
+            if log_p < lowest_log_p {
+                lowest_log_p = log_p;
+                let p_value = log_p.exp();
                 best = RowOrder { swap, order: order.clone(), improvement, p_value };
             }
         }

@@ -57,11 +57,16 @@ impl World {
         &self.root * normal_vector(self.rows(), generator)
     }
 
-    /// Measurements with parameters drawn from their priors.
-    pub(crate) fn data(&self, generator: &mut impl Rng) -> DVector<f64> {
+    /// What would be measured without noise, parameters drawn from their priors.
+    pub(crate) fn signal(&self, generator: &mut impl Rng) -> DVector<f64> {
         let Expectation { prediction, jacobian, .. } = &self.expectation;
         let parameters = &self.prior_root * normal_vector(jacobian.ncols(), generator);
-        prediction + jacobian * parameters + self.noise(generator)
+        prediction + jacobian * parameters
+    }
+
+    /// Measurements with parameters drawn from their priors.
+    pub(crate) fn data(&self, generator: &mut impl Rng) -> DVector<f64> {
+        self.signal(generator) + self.noise(generator)
     }
 
     /// What an analysis takes for the covariance.
