@@ -137,6 +137,19 @@ Ctrl-C stops early and keeps what was sampled, marked as not converged; a second
     /// of when, and of what was planned before anybody knew.
     #[command(after_help = "Example: oddwell reveal blinded --phrase-file phrase.txt --out revealed")]
     Reveal(BlindArguments),
+    /// Print a page of the manual: what a departure is, and what an odd multipole can and cannot tell about it
+    ///
+    /// Without a topic, lists the topics: every departure with its formula.
+    #[command(after_help = "Example: oddwell manual finite-range")]
+    Manual(ManualArguments),
+}
+
+/// Options of `manual`.
+#[derive(Args, Debug)]
+pub(crate) struct ManualArguments {
+    /// The topic, such as the name of a departure
+    #[arg(value_name = "TOPIC")]
+    pub(crate) topic: Option<String>,
 }
 
 /// Options of `new`.

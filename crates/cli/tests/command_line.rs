@@ -225,3 +225,26 @@ fn a_new_study_can_be_shown_predicted_and_is_never_overwritten() {
     let json = folder.run(&["new", "second", "--json", "--quiet"]);
     assert_eq!((&json.json()["written"][0], json.err.as_str()), (&"second/study.toml".into(), ""));
 }
+
+#[test]
+fn the_manual_lists_its_topics_and_prints_their_pages() {
+    let folder = Folder::new();
+    let topics = folder.run(&["manual"]);
+    assert_eq!((topics.status, topics.err.as_str()), (Some(0), ""));
+    for topic in ["none", "constant", "finite-range", "f-of-r"] {
+        assert!(topics.out.contains(&format!("  {topic} ")), "{}", topics.out);
+        let page = folder.run(&["manual", topic]);
+        assert_eq!((page.status, page.err.as_str()), (Some(0), ""));
+        assert!(page.out.starts_with(&format!("departure = \"{topic}\"\n")), "{}", page.out);
+        assert!(page.out.contains("Who feels it"), "{}", page.out);
+    }
+    let cancels = folder.run(&["manual", "braneworld"]).out;
+    let cancels = cancels.split_whitespace().collect::<Vec<_>>().join(" ");
+    assert!(cancels.contains("potential and acceleration cancel"), "{cancels}");
+    let wrong = folder.run(&["manual", "constnt"]);
+    assert_eq!((wrong.status, wrong.out.as_str()), (Some(2), ""));
+    assert_eq!(wrong.err, "error: the manual has no topic `constnt`; did you mean `constant`?\n");
+    let json: serde_json::Value =
+        serde_json::from_str(&folder.run(&["manual", "step", "--json"]).out).expect("it is JSON");
+    assert_eq!((&json["name"], &json["parameters"][1]["name"]), (&"step".into(), &"redshift".into()));
+}

@@ -4,6 +4,7 @@
 
 mod check;
 mod closing;
+mod manual;
 mod numbers;
 mod prediction;
 mod show;
@@ -12,6 +13,7 @@ mod text;
 
 pub use check::check_text;
 pub use closing::closing_summary;
+pub use manual::{manual_text, manual_topics};
 pub use numbers::{count, duration, signed, significant, whole};
 pub use prediction::{prediction_csv, prediction_json};
 pub use show::{show_json, show_table};

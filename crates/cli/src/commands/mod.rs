@@ -3,6 +3,7 @@
 mod blind;
 mod check;
 mod fit;
+mod manual;
 mod new;
 mod predict;
 mod reveal;
@@ -24,6 +25,7 @@ pub(crate) fn run(options: &Options) -> Status {
         Command::Predict(arguments) => predict::run(arguments, &output),
         Command::Fit(arguments) => fit::run(arguments, &output),
         Command::Check(arguments) => check::run(arguments, &output),
+        Command::Manual(arguments) => manual::run(arguments, &output),
         Command::Blind(arguments) => blind::run(arguments, &output),
         Command::Reveal(arguments) => reveal::run(arguments, &output),
         Command::Simulate(arguments) => simulate::run(arguments, &output),

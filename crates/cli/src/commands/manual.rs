@@ -1,0 +1,27 @@
+//! `oddwell manual [TOPIC]`
+
+use oddwell_report::{manual_text, manual_topics};
+use oddwell_study::{manual_page, manual_pages};
+
+use crate::ending::{Failure, Status};
+use crate::options::ManualArguments;
+use crate::output::Output;
+
+pub(super) fn run(arguments: &ManualArguments, output: &Output) -> Result<Status, Failure> {
+    let Some(topic) = &arguments.topic else {
+        if output.json {
+            output.json_result(&serde_json::to_value(manual_pages()).map_err(Failure::input)?)?;
+        } else {
+            output.result(&manual_topics(output.style))?;
+        }
+        return Ok(Status::Done);
+    };
+    let page = manual_page(topic)
+        .map_err(|nearest| Failure::command_line(format!("the manual has no topic `{topic}`; {nearest}")))?;
+    if output.json {
+        output.json_result(&serde_json::to_value(&page).map_err(Failure::input)?)?;
+    } else {
+        output.result(&manual_text(&page, output.style))?;
+    }
+    Ok(Status::Done)
+}
