@@ -5,7 +5,7 @@
 //! state of a bin:
 //!
 //! * T and D the same at every k, the linear spectrum's shape held: c = |T| D σ8 Ωm(a) H² times one number.
-//! * T or D depend on k, the shape held: c² = Σ weight · (T D)² over points in ln k, the weights made once ([`weights`]).
+//! * T or D depend on k, the shape held: c² = Σ weight · (T D)² over points in ln k, the weights made once ([`grid`]).
 //! * The shape is inferred (Ωm, Ωb, h, n_s or the damping): the integral is made for every draw anew, once for all bins
 //!   where T and D are the same at every k, else once a bin.
 //!
@@ -13,24 +13,18 @@
 //! as in the prediction; `smearing`, which only redistributes power among acoustic wiggles, is left out.
 
 mod columns;
-mod weights;
+mod grid;
 
 pub(crate) use columns::clock_columns;
 
 use crate::assemble::{Measurements, Posterior};
 use crate::run_error::RunError;
+use grid::{Grid, KWeights, LOWEST};
 use oddwell_cosmology::{
-    Background, ClockContrast, ClockSetting, LinearPower, SECONDS_PER_YEAR, clock_contrast,
+    Background, ClockContrast, ClockSetting, LinearPower, PowerShape, SECONDS_PER_YEAR, clock_contrast,
 };
 use oddwell_model::{BinSetup, Layout, Model, ModelError, ModelSetup, Row, Space, Workspace, departures};
 use std::f64::consts::PI;
-use weights::KWeights;
-
-/// Scale-dependent shapes are general relativity at low k, and where the k integrals of a prediction begin there is hardly
-/// any power left: below this wavenumber (h/Mpc) T and D keep their value there.
-const LOWEST: f64 = 1e-4;
-/// … and above this one, where damping has ended everything.
-const HIGHEST: f64 = 20.0;
 
 /// One bin of the study.
 #[derive(Clone, Debug, PartialEq)]
@@ -56,6 +50,8 @@ pub(crate) struct ClockContrasts {
     pub(crate) distance: f64,
     /// Bins at one redshift each, without rows: gives T, D, Ωm(a) and H.
     model: Model,
+    shape: PowerShape,
+    grid: Grid,
     /// Where the integral is cut.
     pub(crate) method: Method,
 }
@@ -97,6 +93,8 @@ impl ClockContrasts {
         let mut contrasts = ClockContrasts {
             distance: distance.map_or(50.0, |distance| distance.form.constant),
             model: model_of(setup, &bins)?,
+            shape: setup.power.clone(),
+            grid: Grid::new(setup.smallest_damping),
             bins,
             method: Method::Full,
         };
@@ -184,20 +182,17 @@ impl ClockContrasts {
         bin: usize,
         power: &LinearPower,
     ) -> Result<ClockContrast, ModelError> {
-        // T and D change over an e-fold of k: a table of T·D serves all wavenumbers of the integral.
-        let table = self.table(values, scratch, bin)?;
         let setting = ClockSetting { redshift: self.bins[bin].redshift, ..self.setting(values, bin) };
         let background = self.background(values)?;
-        Ok(clock_contrast(&background, power, &setting, &|k| table.at(k), &|_| 1.0)?)
-    }
-
-    /// T·D at points in ln k; one point where neither depends on k.
-    fn table(&self, values: &[f64], scratch: &mut ClockScratch, bin: usize) -> Result<Table, ModelError> {
         if !self.model.setup().departure.scale_dependent() {
-            return Ok(Table(vec![self.factor(values, scratch, bin, LOWEST)?]));
+            let factor = self.factor(values, scratch, bin, LOWEST)?;
+            return Ok(clock_contrast(&background, power, &setting, &|_| factor, &|_| 1.0)?);
         }
-        let at = |k| self.factor(values, scratch, bin, k);
-        Ok(Table(weights::grid().map(at).collect::<Result<_, _>>()?))
+        let squares = |k| Ok(self.factor(values, scratch, bin, k)?.powi(2));
+        let squares: Vec<f64> = self.grid.wavenumbers().map(squares).collect::<Result<_, ModelError>>()?;
+        // The polynomial may dip below 0 by its own error, where T D passes through 0.
+        let factor = |k: f64| self.grid.interpolate(&squares, k).max(0.0).sqrt();
+        Ok(clock_contrast(&background, power, &setting, &factor, &|_| 1.0)?)
     }
 
     fn factor(
@@ -207,7 +202,7 @@ impl ClockContrasts {
         bin: usize,
         k: f64,
     ) -> Result<f64, ModelError> {
-        let state = self.model.bin_state(values, &mut scratch.workspace, bin, 0, k.clamp(LOWEST, HIGHEST))?;
+        let state = self.model.bin_state(values, &mut scratch.workspace, bin, 0, k)?;
         Ok(state.time_distortion * state.growth.growth)
     }
 
@@ -242,7 +237,7 @@ impl ClockContrasts {
     fn power(&self, values: &[f64], sigma8: f64) -> Result<LinearPower, ModelError> {
         let [omega_m, omega_b, h, n_s] =
             ["omega_m", "omega_b", "h", "n_s"].map(|key| self.value(values, &format!("background.{key}")));
-        Ok(LinearPower::new(&self.model.setup().power, omega_m, omega_b, h, n_s, sigma8)?)
+        Ok(LinearPower::new(&self.shape, omega_m, omega_b, h, n_s, sigma8)?)
     }
 
     fn background(&self, values: &[f64]) -> Result<Background, ModelError> {
@@ -272,6 +267,8 @@ impl ClockContrasts {
             bins: self.bins.clone(),
             distance: self.distance,
             model: model_of(&plain, &self.bins)?,
+            shape: self.shape.clone(),
+            grid: self.grid.clone(),
             method: Method::Full,
         };
         let names = relativity.model.layout().names().iter();
@@ -287,23 +284,9 @@ impl ClockContrasts {
 fn model_of(setup: &ModelSetup, bins: &[ClockBin]) -> Result<Model, ModelError> {
     let at = bins.iter().zip(&setup.bins);
     let bins = at.map(|(at, bin)| BinSetup { nodes: vec![(at.redshift, 1.0)], ..bin.clone() }).collect();
-    Model::new(ModelSetup { bins, rows: Vec::new(), ..setup.clone() })
-}
-
-/// T·D on [`weights::grid`].
-struct Table(Vec<f64>);
-
-impl Table {
-    fn at(&self, k: f64) -> f64 {
-        let (first, share) = weights::between(k);
-        match self.0.get(first..first + 2) {
-            Some(&[one, two]) => {
-                // The same rule as that of the weights: the square is what is interpolated.
-                (one * one + share * (two * two - one * one)).max(0.0).sqrt()
-            }
-            _ => self.0.first().copied().unwrap_or(f64::NAN),
-        }
-    }
+    // Its spectrum is never asked for; a table would have to reach where it need not.
+    let power = PowerShape::EisensteinHuSmooth;
+    Model::new(ModelSetup { bins, rows: Vec::new(), power, ..setup.clone() })
 }
 
 /// The wavenumbers that measured rows reach: of separations from s₁ to s₂ (shells with their ends) those from π/s₂ to
