@@ -10,8 +10,11 @@ use oddwell_model::{Effects, FeltBy, Model, ModelSetup, Workspace, departures};
 /// An offset that is held at 0 is none that is known: this is the width of its usual prior, km/s.
 const USUAL_OFFSET: f64 = 10.0;
 
+/// A switch of an effect.
+type Switch = fn(&mut Effects) -> &mut bool;
+
 /// The effects that a study can switch off, and what switches each on.
-const SWITCHES: [(&str, fn(&mut Effects) -> &mut bool); 3] = [
+const SWITCHES: [(&str, Switch); 3] = [
     ("wide_angle", |effects| &mut effects.wide_angle),
     ("light_cone", |effects| &mut effects.light_cone),
     ("lensing", |effects| &mut effects.lensing),
