@@ -22,6 +22,7 @@ fn model(multipoles: &[u8], departure: &str, felt_by: FeltBy) -> (Model, Vec<f64
         nodes: vec![(redshift, 1.0)],
         sight_line: SightLine::Midpoint,
         growth_given: false,
+        fiducial: None,
     });
     let mut rows = Vec::new();
     for bin in 0..REDSHIFTS.len() {

@@ -1,6 +1,5 @@
-//! One separation or shell, one wavenumber or wavenumber bin: what turns a spectrum into a number there.
+//! One separation or shell, one wavenumber or wavenumber bin.
 
-use crate::grid::WavenumberGrid;
 use crate::rows::{Row, Space};
 use oddwell_cosmology::{gauss_legendre, spherical_bessel_all};
 
@@ -20,6 +19,11 @@ impl Abscissa {
     /// The largest separation or wavenumber it reaches.
     pub(crate) fn end(&self) -> f64 {
         self.edges.map_or(self.at, |(_, high)| high)
+    }
+
+    /// The smallest separation or wavenumber it reaches, if that is above 0 (else a hundredth of the largest).
+    pub(crate) fn start(&self) -> f64 {
+        self.edges.map_or(self.at, |(low, high)| if low > 0.0 { low } else { 0.01 * high })
     }
 
     /// Points and weights of the average: weight x²dx over the shell, 3/(hi³−lo³) in front; `n` Gauss–Legendre points.
@@ -42,50 +46,42 @@ impl Abscissa {
     pub(crate) fn wavenumbers(&self) -> Vec<(f64, f64)> {
         self.average(24)
     }
-}
 
-/// jₗ(ks) and s·jₗ(ks), averaged over a shell, at every wavenumber of a grid and times the grid's weight.
-#[derive(Clone, Debug)]
-pub(crate) struct ShellTable {
-    /// By separation power (0, 1), then order 0–4, then wavenumber.
-    values: [[Vec<f64>; 5]; 2],
-}
-
-impl ShellTable {
-    /// Averages with enough points for the phase k·(hi − lo) that the shell spans: n points integrate a polynomial of
-    /// degree 2n − 1, and cos(φx/2) on [−1, 1] to 1e-11 once n > φ/4 + 10. A few rules are made and shared.
-    pub(crate) fn new(abscissa: &Abscissa, grid: &WavenumberGrid) -> ShellTable {
-        let length = grid.wavenumbers.len();
-        let mut values: [[Vec<f64>; 5]; 2] = Default::default();
-        for table in values.iter_mut().flatten() {
-            table.reserve_exact(length);
-        }
-        let width = abscissa.edges.map_or(0.0, |(low, high)| high - low);
-        let mut points = Vec::new();
-        for (&k, &weight) in grid.wavenumbers.iter().zip(&grid.weights) {
-            // Multiples of eight points, so that a rule serves many wavenumbers.
-            let needed = (((0.3 * k * width) as usize + 10) / 8 + 1) * 8;
-            if width == 0.0 && points.is_empty() || width > 0.0 && points.len() != needed {
-                points = abscissa.average(needed);
-            }
-            let mut sums = [[0.0; 5]; 2];
-            for &(s, share) in &points {
-                for (order, bessel) in spherical_bessel_all(k * s).into_iter().enumerate() {
-                    sums[0][order] += share * bessel;
-                    sums[1][order] += share * s * bessel;
-                }
-            }
-            for (tables, sums) in values.iter_mut().zip(&sums) {
-                for (table, sum) in tables.iter_mut().zip(sums) {
-                    table.push(weight * sum);
-                }
-            }
-        }
-        ShellTable { values }
+    /// What averages Bessel functions over the shell.
+    pub(crate) fn shell(&self) -> Shell {
+        Shell { abscissa: *self, rules: Vec::new().into() }
     }
+}
 
-    /// Weighted averages of s^separation jₗ(ks) by wavenumber.
-    pub(crate) fn get(&self, separation: usize, order: usize) -> &[f64] {
-        &self.values[separation][order]
+/// jₗ(ks) and s·jₗ(ks), averaged over a shell.
+#[derive(Clone, Debug)]
+pub(crate) struct Shell {
+    abscissa: Abscissa,
+    /// Points and weights, by their number over eight; made when first asked for.
+    rules: std::cell::RefCell<Vec<Vec<(f64, f64)>>>,
+}
+
+impl Shell {
+    /// By separation power (0, 1), then order 0–4. With enough points for the phase k·(hi − lo) that the shell spans: n
+    /// points integrate a polynomial of degree 2n − 1, and cos(φx/2) on [−1, 1] to 1e-11 once n > φ/4 + 10.
+    pub(crate) fn bessel(&self, k: f64) -> [[f64; 5]; 2] {
+        let width = self.abscissa.edges.map_or(0.0, |(low, high)| high - low);
+        // Multiples of eight points, so that a rule serves many wavenumbers.
+        let eights = if width == 0.0 { 1 } else { ((0.3 * k * width) as usize + 10) / 8 + 1 };
+        let mut rules = self.rules.borrow_mut();
+        while rules.len() <= eights {
+            rules.push(Vec::new());
+        }
+        if rules[eights].is_empty() {
+            rules[eights] = self.abscissa.average(8 * eights);
+        }
+        let mut sums = [[0.0; 5]; 2];
+        for &(s, share) in &rules[eights] {
+            for (order, bessel) in spherical_bessel_all(k * s).into_iter().enumerate() {
+                sums[0][order] += share * bessel;
+                sums[1][order] += share * s * bessel;
+            }
+        }
+        sums
     }
 }

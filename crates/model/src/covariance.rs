@@ -1,6 +1,6 @@
 //! The covariance of measured multipoles for Gaussian fields: for simulating a measurement and planning one.
 
-use crate::abscissa::{Abscissa, ShellTable};
+use crate::abscissa::Abscissa;
 use crate::error::ModelError;
 use crate::grid::WavenumberGrid;
 use crate::model::Model;
@@ -140,19 +140,21 @@ pub fn gaussian_covariance(
             })
         })
         .collect();
-    // Tables without the grid's weight: it must enter a product of two tables once.
-    let plain =
-        WavenumberGrid { wavenumbers: grid.wavenumbers.clone(), weights: vec![1.0; grid.weights.len()] };
-    let tables: Vec<ShellTable> =
-        abscissae.iter().map(|abscissa| ShellTable::new(abscissa, &plain)).collect();
+    let tables: Vec<Vec<[f64; 5]>> = abscissae
+        .iter()
+        .map(|abscissa| {
+            let shell = abscissa.shell();
+            grid.wavenumbers.iter().map(|&k| shell.bessel(k)[0]).collect()
+        })
+        .collect();
     let integrals = angular_integrals(model, values, workspace, bin, sampling, &grid.wavenumbers)?;
     let mut covariance = DMatrix::zeros(rows.len(), rows.len());
     for i in 0..rows.len() {
         for j in 0..=i {
             let (l, m) = (usize::from(rows[i].multipole), usize::from(rows[j].multipole));
-            let (left, right) = (tables[of_row[i]].get(0, l), tables[of_row[j]].get(0, m));
+            let (left, right) = (&tables[of_row[i]], &tables[of_row[j]]);
             let sum: f64 = (0..grid.weights.len())
-                .map(|n| grid.weights[n] * left[n] * right[n] * integrals[n].separation(l, m))
+                .map(|n| grid.weights[n] * left[n][l] * right[n][m] * integrals[n].separation(l, m))
                 .sum();
             let factor = ((2 * l + 1) * (2 * m + 1)) as f64 / sampling.volume;
             let mut value = factor * sum;

@@ -24,6 +24,21 @@ pub enum ModelError {
         /// The value found.
         value: f64,
     },
+    /// Wavenumbers of a remapped bin stretch beyond the range in which spectra are tabulated.
+    #[error(
+        "the remapping of bin `{bin}` stretches by {along:.3} along the line of sight and {across:.3} across: wavenumbers \
+         are tabulated for stretches up to {limit}; narrow the priors of the background, or give a fiducial nearer to it"
+    )]
+    Remapping {
+        /// `SURVEY.BIN`.
+        bin: String,
+        /// α∥ = H_fid/H.
+        along: f64,
+        /// α⊥ = r/r_fid.
+        across: f64,
+        /// Largest stretch, either way.
+        limit: f64,
+    },
     /// A setup that can't be predicted.
     #[error("{what} = {value}: {rule}; {way_out}")]
     Setup {

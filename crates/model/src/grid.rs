@@ -1,16 +1,10 @@
-//! The wavenumbers at which the k integrals are sampled.
+//! Wavenumbers at which a k integral is sampled directly: that of a covariance, whose integrand is no polynomial between
+//! the knots of a prediction.
 
+use crate::model::{SMALLEST, end_of_integrals};
 use oddwell_cosmology::gauss_legendre;
 use std::f64::consts::PI;
 
-/// Below this wavenumber (h/Mpc) nothing reaches the separations that surveys measure: the integrands fall at least as
-/// k², and the part left out is below 1e-7 of ⟦P/k²⟧ at 200 Mpc/h, less of all others.
-const SMALLEST: f64 = 1e-4;
-/// Where damping is small, integrals end here: linear theory says nothing there, and the part left out is below the
-/// damping's own effect.
-const LARGEST: f64 = 40.0;
-/// k·damping at the upper end: the integrand has fallen by e^(−4.3²) = 1e-8.
-const DAMPED: f64 = 4.3;
 /// Gauss–Legendre nodes a panel. With 16 nodes an oscillation through 16 radians is integrated to 1e-10.
 const NODES: usize = 16;
 const RADIANS: f64 = 16.0;
@@ -32,7 +26,7 @@ impl WavenumberGrid {
     /// where the spectrum is what varies, and linear (a fixed number of radians) where the Bessel function is.
     pub(crate) fn new(largest_separation: f64, damping: f64) -> WavenumberGrid {
         let rule = gauss_legendre(NODES);
-        let end = (DAMPED / damping).min(LARGEST);
+        let end = end_of_integrals(damping);
         let (mut wavenumbers, mut weights) = (Vec::new(), Vec::new());
         let mut low = SMALLEST;
         while low < end {

@@ -16,7 +16,8 @@ pub(crate) mod slot {
     pub(crate) const WA: usize = 7;
     pub(crate) const DAMPING: usize = 8;
     pub(crate) const GROWTH_INDEX: usize = 9;
-    pub(crate) const COMMON: [&str; 10] = [
+    pub(crate) const SMEARING: usize = 10;
+    pub(crate) const COMMON: [&str; 11] = [
         "background.omega_m",
         "background.omega_b",
         "background.h",
@@ -27,6 +28,7 @@ pub(crate) mod slot {
         "background.wa",
         "prediction.damping",
         "prediction.growth_index",
+        "prediction.smearing",
     ];
 
     // Relative to the first slot of a bin.
@@ -54,7 +56,7 @@ pub(crate) mod slot {
 ///
 /// | slots | names |
 /// |---|---|
-/// | 0–9 | `background.*` (8), `prediction.damping`, `prediction.growth_index` |
+/// | 0–10 | `background.*` (8), `prediction.damping`, `prediction.growth_index`, `prediction.smearing` |
 /// | 11 a bin | `SURVEY.BIN.offset`, `.growth_rate`, `.growth_slope`, then bias, magnification, evolution and bias_slope of `first` and of `second` |
 /// | the rest | `departure.*`; with `.SURVEY.BIN` or `.SURVEY` behind the parameter's name where each has its own |
 #[derive(Clone, Debug)]
@@ -62,6 +64,8 @@ pub struct Layout {
     names: Vec<String>,
     by_name: HashMap<String, usize>,
     departure_of_bin: Vec<usize>,
+    /// Whether a bin is remapped: then the background's distances enter the kernels.
+    remapped: bool,
 }
 
 impl Layout {
@@ -91,7 +95,8 @@ impl Layout {
             departure_of_bin.push(start);
         }
         let by_name = names.iter().cloned().enumerate().map(|(index, name)| (name, index)).collect();
-        Layout { names, by_name, departure_of_bin }
+        let remapped = bins.iter().any(|bin| bin.fiducial.is_some());
+        Layout { names, by_name, departure_of_bin, remapped }
     }
 
     /// How many slots there are.
@@ -130,10 +135,15 @@ impl Layout {
         self.departure_of_bin.iter().copied().min().unwrap_or(self.names.len())..self.names.len()
     }
 
-    /// Whether moving this quantity changes the k-shape of a kernel, so that fixed kernels can't serve.
+    /// Whether moving this quantity changes the k-shape of a kernel, so that fixed kernels can't serve. Curvature and
+    /// dark energy do so only where a bin is remapped from a fiducial background.
     #[must_use]
     pub fn changes_kernels(&self, index: usize) -> bool {
-        matches!(index, slot::OMEGA_M | slot::OMEGA_B | slot::H | slot::N_S | slot::DAMPING)
+        match index {
+            slot::OMEGA_M | slot::OMEGA_B | slot::H | slot::N_S | slot::DAMPING | slot::SMEARING => true,
+            slot::OMEGA_K | slot::W0 | slot::WA => self.remapped,
+            _ => false,
+        }
     }
 
     pub(crate) fn bin(&self, bin: usize) -> usize {

@@ -10,21 +10,32 @@
 //! Never here: reading or writing, measured data, statistics.
 
 mod abscissa;
+mod by_effect;
+mod check;
+mod coefficients;
 pub mod covariance;
 pub mod degeneracy;
 pub mod departures;
 mod error;
+mod functionals;
 mod grid;
+mod growth;
+mod integration;
 mod kernels;
+mod knots;
 mod layout;
 mod model;
+mod plan;
+mod remapping;
 mod rows;
 mod setup;
+mod spectrum;
 mod state;
 mod terms;
 mod tracer;
 mod workspace;
 
+pub use by_effect::EffectName;
 pub use departures::{Departure, FeltBy, Spread};
 pub use error::ModelError;
 pub use kernels::Kernels;

@@ -2,7 +2,7 @@
 
 use crate::departures::{Departure, FeltBy};
 use crate::rows::{Row, SightLine};
-use oddwell_cosmology::PowerShape;
+use oddwell_cosmology::{Background, PowerShape};
 
 /// One redshift bin of one survey.
 #[derive(Clone, Debug, PartialEq)]
@@ -17,6 +17,10 @@ pub struct BinSetup {
     pub sight_line: SightLine,
     /// Whether f and f′ are quantities of the bin (`growth_rate`, `growth_slope`), in place of the growth equation.
     pub growth_given: bool,
+    /// The background with which the measurement turned redshifts and angles into separations (or wavenumbers), which the
+    /// prediction is then remapped to (Alcock & Paczynski 1979). None: separations are true ones whatever the background,
+    /// so that positions and shells move with it.
+    pub fiducial: Option<Background>,
 }
 
 impl BinSetup {
@@ -44,6 +48,19 @@ pub struct Effects {
     pub light_cone: bool,
     /// Lensing of the farther tracer by matter around the nearer one.
     pub lensing: bool,
+}
+
+impl Effects {
+    /// None of them: what is left is the zeroth order of the even multipoles.
+    pub const NONE: Effects = Effects {
+        doppler: false,
+        acceleration: false,
+        gravitational_redshift: false,
+        offset: false,
+        wide_angle: false,
+        light_cone: false,
+        lensing: false,
+    };
 }
 
 impl Default for Effects {

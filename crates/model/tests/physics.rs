@@ -27,6 +27,7 @@ fn setup(redshift: f64, sight_line: SightLine, departure: &str, felt_by: FeltBy,
             nodes: vec![(redshift, 1.0)],
             sight_line,
             growth_given: false,
+            fiducial: None,
         }],
         rows: separations.chain(wavenumbers).collect(),
         power: PowerShape::EisensteinHu,
@@ -219,7 +220,8 @@ fn gravitational_redshift_alone_is_mcdonalds() {
             let power = model.spectrum(&values, &[row.at]).unwrap()[0] * state.growth.growth.powi(2);
             let hubble_over_k = state.epoch.conformal_hubble / row.at;
             let expected = 1.5 * state.epoch.matter_fraction * hubble_over_k * (2.2 - 1.1) * power;
-            assert!((value.abs() / expected - 1.0).abs() < 1e-12, "{value} {expected}");
+            // P comes from between the knots: 1e-11 of itself.
+            assert!((value.abs() / expected - 1.0).abs() < 1e-10, "{value} {expected}");
             // R₁ = R₂ = −(3/2) Ωm: R₁b₂ − R₂b₁ = (3/2) Ωm (b₁ − b₂).
             assert!(*value > 0.0);
         }

@@ -224,6 +224,7 @@ fn a_study_with_everything_held_is_read_for_every_departure() {
                     nodes: vec![(1.09, 1.0)],
                     sight_line: study.file.surveys[0].sight_line.value,
                     growth_given: !growth.is_empty(),
+                    fiducial: None,
                 }],
                 rows: vec![Row {
                     bin: 0,

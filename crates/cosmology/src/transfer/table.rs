@@ -61,6 +61,11 @@ impl PowerTable {
         (self.low, self.high)
     }
 
+    /// The wavenumbers of its entries, h/Mpc, increasing.
+    pub fn wavenumbers(&self) -> impl Iterator<Item = f64> + '_ {
+        self.log_k.iter().map(|log_k| log_k.exp())
+    }
+
     /// ln of the wavenumbers.
     pub(crate) fn log_wavenumbers(&self) -> &[f64] {
         &self.log_k

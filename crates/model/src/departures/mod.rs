@@ -134,6 +134,20 @@ pub trait Departure: Send + Sync + fmt::Debug {
 
     /// τ at scale factor `a` in (0, 1] and wavenumber `k` (h/Mpc).
     fn tau(&self, parameters: &[f64], background: &Background, a: f64, k: f64) -> f64;
+
+    /// τ at one scale factor and many wavenumbers, into `out` of the same length.
+    fn taus(
+        &self,
+        parameters: &[f64],
+        background: &Background,
+        a: f64,
+        wavenumbers: &[f64],
+        out: &mut [f64],
+    ) {
+        for (tau, &k) in out.iter_mut().zip(wavenumbers) {
+            *tau = self.tau(parameters, background, a, k);
+        }
+    }
 }
 
 /// Every shape, in the order of the documentation.

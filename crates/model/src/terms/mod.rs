@@ -14,7 +14,7 @@ mod wide_angle;
 use crate::rows::Space;
 use crate::setup::Effects;
 use crate::state::PairState;
-pub(crate) use kaiser::even;
+use kaiser::even;
 
 /// Most integrands that one multipole has.
 pub(crate) const MOST: usize = 5;
@@ -35,10 +35,10 @@ pub(crate) struct Amplitudes {
 }
 
 impl Amplitudes {
-    pub(crate) fn new(pair: &PairState, effects: &Effects) -> Amplitudes {
+    fn new(pair: &PairState, even: &[f64; 3], effects: &Effects) -> Amplitudes {
         let mut amplitudes = Amplitudes::default();
         relativistic::add(pair, &mut amplitudes);
-        offset::add(pair, &mut amplitudes);
+        offset::add(pair, even, &mut amplitudes);
         if effects.wide_angle {
             wide_angle::add(pair, &mut amplitudes);
         }
@@ -63,7 +63,36 @@ pub(crate) enum Component {
     Slope,
 }
 
-/// The integrands of a multipole, in the order of [`weights`].
+/// What a component takes from its power of k times P.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
+pub(crate) enum Readout {
+    /// `s^separation ∫k²dk/2π² g(k) j_order(ks)`, averaged over a shell.
+    Transform { separation: usize, order: usize },
+    /// g(k), averaged over a Fourier bin.
+    Value,
+    /// dg/dk, averaged over a Fourier bin.
+    Slope,
+}
+
+impl Component {
+    /// The power of k that multiplies P, −2 to 1.
+    pub(crate) fn wavenumber(self) -> i32 {
+        match self {
+            Component::Transform { wavenumber, .. } | Component::Power { wavenumber } => wavenumber,
+            Component::Slope => 0,
+        }
+    }
+
+    pub(crate) fn readout(self) -> Readout {
+        match self {
+            Component::Transform { separation, order, .. } => Readout::Transform { separation, order },
+            Component::Power { .. } => Readout::Value,
+            Component::Slope => Readout::Slope,
+        }
+    }
+}
+
+/// The integrands of a multipole, in the order of [`Weights::of`].
 pub(crate) fn components(space: Space, multipole: u8) -> &'static [Component] {
     use Component::{Power, Slope, Transform};
     const fn transform(wavenumber: i32, separation: usize, order: usize) -> Component {
@@ -102,42 +131,56 @@ pub(crate) fn components(space: Space, multipole: u8) -> &'static [Component] {
     }
 }
 
-/// The weights of [`components`] for one pair: the multipole is Σ weight × component.
-///
-/// ξ₁ = ⟦Im P₁⟧₁, ξ₃ = −⟦Im P₃⟧₃, ξ₀ = ⟦P₀⟧₀, ξ₂ = −⟦P₂⟧₂, ξ₄ = ⟦P₄⟧₄ with ⟦g⟧ₗ(s) = ∫k²dk/2π² g(k) jₗ(ks); the
-/// terms with a factor s (or a derivative of P) follow the formulas quoted in `wide_angle` and `light_cone`.
-pub(crate) fn weights(space: Space, multipole: u8, pair: &PairState, effects: &Effects) -> [f64; MOST] {
-    if multipole.is_multiple_of(2) {
-        let value = even(pair)[usize::from(multipole) / 2];
-        let sign = if space == Space::Separation && multipole == 2 { -1.0 } else { 1.0 };
-        return [sign * value, 0.0, 0.0, 0.0, 0.0];
+/// The weights of all multipoles of one pair.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Weights {
+    even: [f64; 3],
+    amplitudes: Amplitudes,
+}
+
+impl Weights {
+    pub(crate) fn new(pair: &PairState, effects: &Effects) -> Weights {
+        let even = even(pair);
+        Weights { even, amplitudes: Amplitudes::new(pair, &even, effects) }
     }
-    let Amplitudes { inverse, linear, inverse_square, wide, cone } = Amplitudes::new(pair, effects);
-    let [quadrupole, hexadecapole] = wide;
-    let [a, b, n] = cone;
-    match (space, multipole) {
-        (Space::Separation, 1) => [inverse[0], linear[0], inverse_square[0], a, quadrupole - 0.4 * b],
-        (Space::Separation, _) => [
-            -inverse[1],
-            -linear[1],
-            -inverse_square[1],
-            -quadrupole - 0.6 * b,
-            hexadecapole + 32.0 / 315.0 * n,
-        ],
-        (Space::Fourier, 1) => [
-            inverse[0] + 3.0 * quadrupole - 1.2 * b,
-            linear[0],
-            inverse_square[0],
-            quadrupole - a - 0.4 * b,
-            0.0,
-        ],
-        (Space::Fourier, _) => [
-            inverse[1] + 2.0 * quadrupole - 5.0 * hexadecapole + 1.2 * b - 32.0 / 63.0 * n,
-            linear[1],
-            inverse_square[1],
-            -quadrupole - hexadecapole - 0.6 * b - 32.0 / 315.0 * n,
-            0.0,
-        ],
+
+    /// The weights of [`components`]: the multipole is Σ weight × component.
+    ///
+    /// ξ₁ = ⟦Im P₁⟧₁, ξ₃ = −⟦Im P₃⟧₃, ξ₀ = ⟦P₀⟧₀, ξ₂ = −⟦P₂⟧₂, ξ₄ = ⟦P₄⟧₄ with ⟦g⟧ₗ(s) = ∫k²dk/2π² g(k) jₗ(ks); the
+    /// terms with a factor s (or a derivative of P) follow the formulas quoted in `wide_angle` and `light_cone`.
+    pub(crate) fn of(&self, space: Space, multipole: u8) -> [f64; MOST] {
+        if multipole.is_multiple_of(2) {
+            let value = self.even[usize::from(multipole) / 2];
+            let sign = if space == Space::Separation && multipole == 2 { -1.0 } else { 1.0 };
+            return [sign * value, 0.0, 0.0, 0.0, 0.0];
+        }
+        let Amplitudes { inverse, linear, inverse_square, wide, cone } = self.amplitudes;
+        let [quadrupole, hexadecapole] = wide;
+        let [a, b, n] = cone;
+        match (space, multipole) {
+            (Space::Separation, 1) => [inverse[0], linear[0], inverse_square[0], a, quadrupole - 0.4 * b],
+            (Space::Separation, _) => [
+                -inverse[1],
+                -linear[1],
+                -inverse_square[1],
+                -quadrupole - 0.6 * b,
+                hexadecapole + 32.0 / 315.0 * n,
+            ],
+            (Space::Fourier, 1) => [
+                inverse[0] + 3.0 * quadrupole - 1.2 * b,
+                linear[0],
+                inverse_square[0],
+                quadrupole - a - 0.4 * b,
+                0.0,
+            ],
+            (Space::Fourier, _) => [
+                inverse[1] + 2.0 * quadrupole - 5.0 * hexadecapole + 1.2 * b - 32.0 / 63.0 * n,
+                linear[1],
+                inverse_square[1],
+                -quadrupole - hexadecapole - 0.6 * b - 32.0 / 315.0 * n,
+                0.0,
+            ],
+        }
     }
 }
 

@@ -109,7 +109,7 @@ fn first_order(order: u8, pair: &PairState, plus: Switches, minus: Switches) -> 
 }
 
 fn spike(order: u8, pair: &PairState, effects: &Effects) -> f64 {
-    let weights = weights(Space::Separation, order, pair, effects);
+    let weights = Weights::new(pair, effects).of(Space::Separation, order);
     let components = components(Space::Separation, order).iter().zip(weights);
     components
         .map(|(component, weight)| match *component {
@@ -233,8 +233,9 @@ fn fourier_and_separation_terms_are_transforms_of_each_other() {
     let panels: Vec<f64> = (0..=40).map(|i| 0.02 * f64::from(i)).collect();
     let rule = oddwell_cosmology::composite(&panels, 16);
     for order in [1_u8, 3] {
-        let separation = weights(Space::Separation, order, &pair(), &effects);
-        let fourier = weights(Space::Fourier, order, &pair(), &effects);
+        let weights = Weights::new(&pair(), &effects);
+        let separation = weights.of(Space::Separation, order);
+        let fourier = weights.of(Space::Fourier, order);
         let (mut direct, mut transformed) = (0.0, 0.0);
         for (&k, weight) in rule.nodes.iter().zip(&rule.weights) {
             let measure = weight * k * k / (2.0 * std::f64::consts::PI.powi(2));

@@ -4,7 +4,7 @@ use super::domain::Domain;
 use super::measurements::Measurements;
 use super::power_table::read_power_table;
 use super::projection::Projection;
-use crate::file::PowerChoice;
+use crate::file::{FiducialSection, PowerChoice};
 use crate::parameter_map::ParameterMap;
 use crate::resolve::{Hypothesis, Study};
 use crate::run_error::RunError;
@@ -55,12 +55,14 @@ pub(crate) fn model_setup(
     let file = &study.file;
     let mut bins = Vec::new();
     for survey in &file.surveys {
+        let fiducial = survey.fiducial.as_ref().map(FiducialSection::background).transpose()?;
         bins.extend(survey.bins.iter().map(|bin| BinSetup {
             survey: survey.name.value.clone(),
             name: bin.name.value.clone(),
             nodes: bin.weighted_nodes(),
             sight_line: survey.sight_line.value,
             growth_given: bin.growth_rate.is_some(),
+            fiducial,
         }));
     }
     let power = match &file.background.power.value {
