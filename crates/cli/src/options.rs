@@ -95,7 +95,7 @@ pub(crate) enum Command {
     #[command(
         after_help = "Example: oddwell predict study.toml --set departure.tau=3 --set larkfield.near.offset=10"
     )]
-    Predict(StudyArguments),
+    Predict(PredictArguments),
     /// Check study and measurements before a fit; samples nothing
     ///
     /// Reads everything, says what is wrong (error) or suspicious (warning) and what to do about it, then the data's own
@@ -211,6 +211,16 @@ const WHICH_TO_FIT: &str = "The hypothesis, by its name in the study, or `all` o
 
 const OUT_HELP: &str = "The run directory to make [default: runs/<title>-<hypothesis>]; with `--hypothesis all`, a folder \
                         in which each has its own";
+
+/// Options of `predict`.
+#[derive(Args, Debug)]
+pub(crate) struct PredictArguments {
+    #[command(flatten)]
+    pub(crate) study: StudyArguments,
+    /// Also print what each physical effect contributes: columns that add up to the prediction
+    #[arg(long)]
+    pub(crate) by_effect: bool,
+}
 
 /// Options of `fit`.
 #[derive(Args, Debug)]

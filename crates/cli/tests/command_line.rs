@@ -248,3 +248,32 @@ fn the_manual_lists_its_topics_and_prints_their_pages() {
         serde_json::from_str(&folder.run(&["manual", "step", "--json"]).out).expect("it is JSON");
     assert_eq!((&json["name"], &json["parameters"][1]["name"]), (&"step".into(), &"redshift".into()));
 }
+
+#[test]
+fn effects_are_columns_that_add_up_to_the_prediction() {
+    let folder = Folder::new();
+    let words = ["predict", "study.toml", "--quiet", "--set", "larkfield.near.offset=5"];
+    let plain = folder.run(&words);
+    let ran = folder.run(&[&words[..], &["--by-effect"]].concat());
+    assert_eq!((ran.status, ran.err.as_str()), (Some(0), ""));
+    let (plain, lines): (Vec<&str>, Vec<&str>) = (plain.out.lines().collect(), ran.out.lines().collect());
+    let names = "standard,doppler,acceleration,gravitational_redshift,offset,wide_angle,light_cone,lensing";
+    assert_eq!(lines[0], format!("{},{names}", plain[0]));
+    assert_eq!(lines.len(), plain.len());
+    for (line, plain) in lines.iter().zip(&plain).skip(1) {
+        let parts = line.strip_prefix(*plain).and_then(|rest| rest.strip_prefix(',')).expect("the same row");
+        let parts: Vec<f64> = parts.split(',').map(|cell| cell.parse().expect("a number")).collect();
+        let predicted: f64 = plain.rsplit(',').next().and_then(|cell| cell.parse().ok()).expect("a number");
+        let largest = parts.iter().fold(0.0_f64, |largest, part| largest.max(part.abs()));
+        // Sums of the same terms in another order.
+        assert!((parts.iter().sum::<f64>() - predicted).abs() < 1e-12 * largest, "{line}");
+        // The standard part has no odd multipole; of the acceleration and the redshift, which are the same for both
+        // tracers, the octupole has none.
+        let zeros = if line.contains(",first-second,1,") { vec![0] } else { vec![0, 2, 3] };
+        for (index, part) in parts.iter().enumerate() {
+            assert_eq!(*part == 0.0, zeros.contains(&index), "{line}");
+        }
+    }
+    let rows = folder.run(&[&words[..], &["--by-effect", "--json"]].concat()).json();
+    assert!(rows[0]["gravitational_redshift"].as_f64().is_some_and(|part| part != 0.0), "{rows}");
+}

@@ -15,6 +15,6 @@ pub use check::check_text;
 pub use closing::closing_summary;
 pub use manual::{manual_text, manual_topics};
 pub use numbers::{count, duration, signed, significant, whole};
-pub use prediction::{prediction_csv, prediction_json};
+pub use prediction::{EffectColumns, prediction_csv, prediction_json};
 pub use show::{show_json, show_table};
 pub use style::Style;

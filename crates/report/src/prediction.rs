@@ -18,11 +18,14 @@ impl Axes {
     }
 }
 
+/// What each effect contributes to each row: a column's name, and a number a row.
+pub type EffectColumns<'a> = &'a [(String, Vec<f64>)];
+
 /// A line a row under the header `survey,bin,pair,multipole,separation,measured,error,predicted`; `wavenumber` stands for
 /// `separation` in Fourier space, and both are there in a study of both. Separations in Mpc/h, wavenumbers in h/Mpc,
 /// multipoles without unit or in (Mpc/h)³. Numbers have the fewest digits that give the same number when read back;
-/// what a row does not have is empty.
-pub fn prediction_csv(rows: &[PredictedRow]) -> String {
+/// what a row does not have is empty. The columns of `effects`, if any, follow, and add up to `predicted`.
+pub fn prediction_csv(rows: &[PredictedRow], effects: EffectColumns<'_>) -> String {
     let axes = Axes::of(rows);
     let mut out = String::from("survey,bin,pair,multipole");
     for (there, name) in [(axes.separation, ",separation"), (axes.wavenumber, ",wavenumber")] {
@@ -30,8 +33,13 @@ pub fn prediction_csv(rows: &[PredictedRow]) -> String {
             out.push_str(name);
         }
     }
-    out.push_str(",measured,error,predicted\n");
-    for row in rows {
+    out.push_str(",measured,error,predicted");
+    for (name, _) in effects {
+        out.push(',');
+        out.push_str(name);
+    }
+    out.push('\n');
+    for (index, row) in rows.iter().enumerate() {
         let words = [&row.survey, &row.bin, &row.pair];
         let mut cells: Vec<String> = words.into_iter().map(|word| quoted(word)).collect();
         cells.push(row.multipole.to_string());
@@ -42,6 +50,7 @@ pub fn prediction_csv(rows: &[PredictedRow]) -> String {
         }
         cells.push(row.measured.map_or_else(String::new, number));
         cells.extend([row.error, row.predicted].map(number));
+        cells.extend(effects.iter().map(|(_, column)| number(column[index])));
         out.push_str(&cells.join(","));
         out.push('\n');
     }
@@ -49,10 +58,11 @@ pub fn prediction_csv(rows: &[PredictedRow]) -> String {
 }
 
 /// The same as a list of objects, with the CSV's columns as keys; what a row does not have is null.
-pub fn prediction_json(rows: &[PredictedRow]) -> Value {
+pub fn prediction_json(rows: &[PredictedRow], effects: EffectColumns<'_>) -> Value {
     let axes = Axes::of(rows);
     rows.iter()
-        .map(|row| {
+        .enumerate()
+        .map(|(index, row)| {
             let mut object = Map::new();
             object.insert("survey".to_owned(), row.survey.clone().into());
             object.insert("bin".to_owned(), row.bin.clone().into());
@@ -67,6 +77,9 @@ pub fn prediction_json(rows: &[PredictedRow]) -> Value {
             object.insert("measured".to_owned(), row.measured.into());
             object.insert("error".to_owned(), row.error.into());
             object.insert("predicted".to_owned(), row.predicted.into());
+            for (name, column) in effects {
+                object.insert(name.clone(), column[index].into());
+            }
             Value::Object(object)
         })
         .collect()
@@ -106,7 +119,7 @@ mod tests {
     #[test]
     fn separations_only() {
         assert_eq!(
-            prediction_csv(&[row(Some(28.0), None)]),
+            prediction_csv(&[row(Some(28.0), None)], &[]),
             "survey,bin,pair,multipole,separation,measured,error,predicted\n\
              larkfield,near,first-second,1,28.0,0.3333333333333333,2.5e-7,-0.001\n"
         );
@@ -115,7 +128,7 @@ mod tests {
     #[test]
     fn wavenumbers_only() {
         assert_eq!(
-            prediction_csv(&[row(None, Some(0.05))]),
+            prediction_csv(&[row(None, Some(0.05))], &[]),
             "survey,bin,pair,multipole,wavenumber,measured,error,predicted\n\
              larkfield,near,first-second,1,0.05,0.3333333333333333,2.5e-7,-0.001\n"
         );
@@ -123,14 +136,17 @@ mod tests {
 
     #[test]
     fn both_and_neither() {
-        let both = prediction_csv(&[row(Some(28.0), None), row(None, Some(0.05))]);
+        let both = prediction_csv(&[row(Some(28.0), None), row(None, Some(0.05))], &[]);
         assert_eq!(
             both,
             "survey,bin,pair,multipole,separation,wavenumber,measured,error,predicted\n\
              larkfield,near,first-second,1,28.0,,0.3333333333333333,2.5e-7,-0.001\n\
              larkfield,near,first-second,1,,0.05,0.3333333333333333,2.5e-7,-0.001\n"
         );
-        assert_eq!(prediction_csv(&[]), "survey,bin,pair,multipole,separation,measured,error,predicted\n");
+        assert_eq!(
+            prediction_csv(&[], &[]),
+            "survey,bin,pair,multipole,separation,measured,error,predicted\n"
+        );
     }
 
     #[test]
@@ -147,9 +163,21 @@ mod tests {
         let mut unknown = row(None, Some(0.05));
         unknown.error = f64::NAN;
         assert_eq!(
-            prediction_json(&[unknown]).to_string(),
+            prediction_json(&[unknown], &[]).to_string(),
             "[{\"survey\":\"larkfield\",\"bin\":\"near\",\"pair\":\"first-second\",\"multipole\":1,\"wavenumber\":0.05,\
              \"measured\":0.3333333333333333,\"error\":null,\"predicted\":-0.001}]"
         );
+    }
+
+    #[test]
+    fn effects_follow_the_prediction() {
+        let effects = [("doppler".to_owned(), vec![-0.0015]), ("offset".to_owned(), vec![0.0005])];
+        assert_eq!(
+            prediction_csv(&[row(Some(28.0), None)], &effects),
+            "survey,bin,pair,multipole,separation,measured,error,predicted,doppler,offset\n\
+             larkfield,near,first-second,1,28.0,0.3333333333333333,2.5e-7,-0.001,-0.0015,0.0005\n"
+        );
+        let json = prediction_json(&[row(Some(28.0), None)], &effects);
+        assert_eq!((&json[0]["doppler"], &json[0]["offset"]), (&(-0.0015).into(), &0.0005.into()));
     }
 }

@@ -121,7 +121,7 @@ tau = { uniform = [-30.0, 30.0] }
             show_table(&study, &study.hypotheses[1], Style::Plain),
             "\
 One invented survey
-hypothesis `constant`: departure constant, felt by light; 4 of 21 quantities inferred
+hypothesis `constant`: departure constant, felt by light; 4 of 22 quantities inferred
 
 quantity                             is        given in  value, prior or source
 background.omega_m                   held      line 3    0.31
@@ -133,6 +133,7 @@ background.omega_k                   held      default   0.0
 background.w0                        held      default   -1.0
 background.wa                        held      default   0.0
 prediction.damping                   held      default   0.5
+prediction.smearing                  held      default   0.0
 prediction.clock_distance            held      default   50.0
 larkfield.near.offset                held      --set     10.0
 larkfield.near.first.bias            held      line 14   2.1
@@ -153,7 +154,7 @@ departure.tau                        inferred  line 27   { uniform = [-30.0, 30.
     fn no_departure_is_said() {
         let study = study();
         let text = show_table(&study, &study.hypotheses[0], Style::Plain);
-        assert_eq!(text.lines().nth(1), Some("hypothesis `gr`: no departure; 3 of 20 quantities inferred"));
+        assert_eq!(text.lines().nth(1), Some("hypothesis `gr`: no departure; 3 of 21 quantities inferred"));
     }
 
     #[test]

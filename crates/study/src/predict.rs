@@ -1,9 +1,10 @@
 //! The prediction beside the measurements.
 
-use crate::assemble::{Posterior, read_measurements};
+use crate::assemble::{Measurements, Posterior, read_measurements};
 use crate::resolve::{Hypothesis, Study};
 use crate::run_error::RunError;
 use oddwell_likelihood::Axis;
+use oddwell_model::{EffectName, Workspace};
 use oddwell_sampler::Target;
 use serde::Serialize;
 
@@ -38,6 +39,33 @@ pub fn predict(study: &Study, hypothesis: &Hypothesis) -> Result<Vec<PredictedRo
     let measurements = read_measurements(study)?;
     let posterior = Posterior::new(study, hypothesis, &measurements)?;
     let prediction = posterior.predict(&hypothesis.start(), &mut posterior.scratch())?;
+    Ok(beside(study, &measurements, prediction))
+}
+
+/// As [`predict`], and what each physical effect contributes to each row: a name ([`EffectName::name`]) and a column in
+/// the order of the rows. The columns add up to the prediction; an effect that the study switches off is a column of zeros.
+///
+/// # Errors
+/// As [`predict`].
+///
+/// [`EffectName::name`]: oddwell_model::EffectName::name
+pub fn predict_by_effect(
+    study: &Study,
+    hypothesis: &Hypothesis,
+) -> Result<(Vec<PredictedRow>, Vec<(String, Vec<f64>)>), RunError> {
+    let measurements = read_measurements(study)?;
+    let posterior = Posterior::new(study, hypothesis, &measurements)?;
+    let values = posterior.values(&hypothesis.start());
+    let prediction = posterior.predict_values(&values, &mut posterior.scratch())?;
+    let effects = posterior.model.by_effect(&values, &mut Workspace::new())?;
+    // A window is linear, so it applies to each.
+    let measured = |(effect, predicted): (EffectName, Vec<f64>)| {
+        (effect.name().to_owned(), posterior.measured(&predicted))
+    };
+    Ok((beside(study, &measurements, prediction), effects.into_iter().map(measured).collect()))
+}
+
+fn beside(study: &Study, measurements: &Measurements, prediction: Vec<f64>) -> Vec<PredictedRow> {
     let mut predicted = prediction.into_iter();
     let mut rows = Vec::with_capacity(measurements.len());
     for survey in &measurements.surveys {
@@ -57,5 +85,5 @@ pub fn predict(study: &Study, hypothesis: &Hypothesis) -> Result<Vec<PredictedRo
             });
         }
     }
-    Ok(rows)
+    rows
 }

@@ -104,7 +104,20 @@ pub enum RunError {
         /// What to do.
         way_out: &'static str,
     },
-    /// A table whose numbers are no matter power spectrum, or do not reach as far as the prediction needs.
+    /// A table of the matter power spectrum that does not reach as far as the prediction needs.
+    #[error(
+        "{file}: the power spectrum is given from {} to {} h/Mpc, and is needed from {} to {} h/Mpc; give a table that covers that range",
+        .given.0, .given.1, .needed.0, .needed.1
+    )]
+    PowerRange {
+        /// The table.
+        file: String,
+        /// The wavenumbers that it covers, h/Mpc.
+        given: (f64, f64),
+        /// The wavenumbers that are needed, h/Mpc, rounded outwards to two digits.
+        needed: (f64, f64),
+    },
+    /// A table whose numbers are no matter power spectrum.
     #[error("{file}: {source}")]
     Power {
         /// The table.

@@ -61,6 +61,7 @@ fn table() -> Vec<Bad> {
         bad("h in km/s/Mpc", "h = 0.68", "h = 68.0", "study.toml:6:5: `background.h` must be above 0 and below 10, not 68.0; it is H0 in 100 km/s/Mpc, as in 0.68"),
         bad("sigma8 below zero", "sigma8 = { normal = [0.81, 0.01] }", "sigma8 = -0.8", "study.toml:8:10: `background.sigma8` must be above 0, not -0.8; it is the rms of matter in 8 Mpc/h, as in 0.81"),
         bad("negative damping", "damping = 0.5", "damping = -0.5", "study.toml:11:11: `prediction.damping` must be 0 or above, not -0.5; it is a length in Mpc/h, as in 0.5"),
+        bad("negative smearing", "damping = 0.5", "smearing = -3.0", "study.toml:11:12: `prediction.smearing` must be 0 or above, not -3.0; it is a length in Mpc/h, as in 5.0, or 0 for none"),
         bad("inferred clock distance", "damping = 0.5", "clock_distance = { uniform = [1.0, 50.0] }", "study.toml:11:18: `prediction.clock_distance` must be a number, not { uniform = [1.0, 50.0] }; it says what to report and cannot be inferred"),
         bad("redshift zero", "redshift = 0.35", "redshift = 0.0", "study.toml:21:12: `larkfield.near.redshift` must be above 0, not 0.0; give the pair-weighted mean redshift of the bin"),
         bad("two priors in one quantity", "offset = { normal = [0.0, 10.0] }", "offset = { normal = [0.0, 10.0], uniform = [-5.0, 5.0] }", "study.toml:22:44: `offset` has two priors, `normal` and `uniform`; keep one of them"),

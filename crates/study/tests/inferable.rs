@@ -98,6 +98,7 @@ fn cases() -> Vec<Case> {
         case("background.w0", "{ normal = [-1.0, 0.3] }", [-1.2, -0.8], true, None),
         case("background.wa", "{ normal = [0.0, 0.5] }", [-0.4, 0.4], true, None),
         case("prediction.damping", "{ normal = [0.5, 0.3] }", [0.3, 1.0], false, Some((-0.2, damping))),
+        case("prediction.smearing", "{ half_normal = 6.0 }", [3.0, 8.0], false, None),
         case("prediction.growth_index", "{ normal = [0.55, 0.1] }", [0.4, 0.7], true, None),
         case("s.near.growth_rate", "{ normal = [0.7, 0.1] }", [0.5, 0.9], true, None),
         case("s.near.growth_slope", "{ normal = [-0.3, 0.1] }", [-0.5, 0.1], true, None),
@@ -139,7 +140,9 @@ fn where_a_prior_reaches_nonsense_the_step_is_rejected() {
     let folder = Folder::new();
     folder.write("s.csv", TABLE);
     for Case { place, prior, outside, .. } in cases() {
-        let Some((value, said)) = outside else { continue };
+        let Some((value, said)) = outside else {
+            continue;
+        };
         let posterior = posterior(&folder.study(&text(place, prior)));
         let mut scratch = posterior.scratch();
         let centre = posterior.hypothesis.start();

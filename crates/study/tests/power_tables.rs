@@ -69,7 +69,7 @@ fn every_bad_table_says_what_is_wrong_in_full() {
         ),
         (
             table(1e-5, 0.3, header),
-            "power.csv: wavenumber 0.30023892437529937 h/Mpc: the power table covers 0.00001 to 0.3 h/Mpc only, and 0.00010022208620952149 to 8.599168275583665 h/Mpc is needed; give a table that covers that range",
+            "power.csv: the power spectrum is given from 0.00001 to 0.3 h/Mpc, and is needed from 0.0001 to 8.6 h/Mpc; give a table that covers that range",
         ),
         (
             "wavenumber,power\n".to_owned(),

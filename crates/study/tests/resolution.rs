@@ -34,7 +34,7 @@ fn quantities_follow_the_order_of_the_study() {
         .iter()
         .map(|key| format!("background.{key}"))
         .collect();
-    expected.extend(["prediction.damping".to_owned(), "prediction.clock_distance".to_owned()]);
+    expected.extend(["damping", "smearing", "clock_distance"].map(|key| format!("prediction.{key}")));
     for bin in ["larkfield.near", "larkfield.far"] {
         expected.push(format!("{bin}.offset"));
         expected.extend(tracer(&format!("{bin}.first")));
@@ -52,6 +52,7 @@ fn defaults_are_those_of_the_interface() {
         ("background.omega_k", 0.0),
         ("background.w0", -1.0),
         ("background.wa", 0.0),
+        ("prediction.smearing", 0.0),
         ("prediction.clock_distance", 50.0),
         ("larkfield.far.offset", 0.0),
         ("larkfield.near.first.bias_slope", 0.0),

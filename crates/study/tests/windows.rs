@@ -8,7 +8,7 @@ use common::{BACKGROUND, CONSTANT, Folder, survey};
 use nalgebra::DMatrix;
 use oddwell_sampler::Target;
 use oddwell_study::assemble::{Posterior, read_measurements};
-use oddwell_study::{Study, predict};
+use oddwell_study::{Study, predict, predict_by_effect};
 use std::fmt::Write;
 
 /// Multipoles 1 and 3 at these separations.
@@ -130,6 +130,22 @@ fn a_smoothing_window_is_a_convolution_compressed_or_not() {
         // QR of whitened kernels: 1e-15 times the squared norm of what it compresses, here up to some 1e3.
         assert!((plain - compressed).abs() < 1e-10 * plain.abs().max(1.0), "{plain} {compressed}");
     }
+}
+
+#[test]
+fn a_window_applies_to_each_effect() {
+    let folder = Folder::new();
+    let fine: Vec<f64> = (0..78).map(|step| 10.0 + 2.0 * f64::from(step)).collect();
+    folder.write("larkfield.csv", table(&SEPARATIONS));
+    folder.write("rows.csv", window_rows(&fine));
+    folder.write("window.csv", csv(&smoothing(&fine)));
+    let study = folder.study(&text(WINDOW));
+    let (rows, effects) = predict_by_effect(&study, study.default_hypothesis()).unwrap();
+    let predicted: Vec<f64> = rows.iter().map(|row| row.predicted).collect();
+    let sums: Vec<f64> = (0..10).map(|row| effects.iter().map(|(_, column)| column[row]).sum()).collect();
+    assert!(difference(&sums, &predicted) < 1e-11, "{sums:?} {predicted:?}");
+    let redshift = effects.iter().find(|(name, _)| name == "gravitational_redshift").unwrap();
+    assert!(redshift.1.iter().all(|value| *value != 0.0));
 }
 
 #[test]

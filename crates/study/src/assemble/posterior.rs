@@ -103,11 +103,26 @@ fn smallest_damping(hypothesis: &Hypothesis) -> Result<f64, RunError> {
 /// Says which table does not reach far enough.
 fn name_the_table(study: &Study, error: ModelError) -> RunError {
     match (error, &study.file.background.power.value) {
-        (ModelError::Cosmology(source @ CosmologyError::OutsideTable { .. }), PowerChoice::Table(path)) => {
-            RunError::Power { file: study.file.path_of(path).display().to_string(), source }
-        }
+        (
+            ModelError::Cosmology(CosmologyError::OutsideTable {
+                low, high, needed_low, needed_high, ..
+            }),
+            PowerChoice::Table(path),
+        ) => RunError::PowerRange {
+            file: study.file.path_of(path).display().to_string(),
+            given: (low, high),
+            needed: (two_digits(needed_low, f64::floor), two_digits(needed_high, f64::ceil)),
+        },
         (error, _) => error.into(),
     }
+}
+
+/// A number above 0, rounded to two significant digits.
+fn two_digits(value: f64, round: fn(f64) -> f64) -> f64 {
+    let place = 10f64.powi(value.log10().floor() as i32 - 1);
+    // Read back from its digits, so that it prints as they do.
+    let digits = round(value / place);
+    format!("{digits}e{}", place.log10().round()).parse().unwrap_or(value)
 }
 
 impl Posterior {
@@ -121,7 +136,8 @@ impl Posterior {
         hypothesis: &Hypothesis,
         measurements: &Measurements,
     ) -> Result<Posterior, RunError> {
-        let model = Model::new(model_setup(study, hypothesis, measurements.model_rows())?)?;
+        let setup = model_setup(study, hypothesis, measurements.model_rows())?;
+        let model = Model::new(setup).map_err(|error| name_the_table(study, error))?;
         let map = ParameterMap::new(hypothesis, model.layout().names())?;
         let domain = Domain::new(&map, model.layout());
         let priors = hypothesis.priors()?;

@@ -283,7 +283,9 @@ impl ClockContrasts {
 /// The bins at their mean redshifts, without rows.
 fn model_of(setup: &ModelSetup, bins: &[ClockBin]) -> Result<Model, ModelError> {
     let at = bins.iter().zip(&setup.bins);
-    let bins = at.map(|(at, bin)| BinSetup { nodes: vec![(at.redshift, 1.0)], ..bin.clone() }).collect();
+    let bins = at
+        .map(|(at, bin)| BinSetup { nodes: vec![(at.redshift, 1.0)], fiducial: None, ..bin.clone() })
+        .collect();
     // Its spectrum is never asked for; a table would have to reach where it need not.
     let power = PowerShape::EisensteinHuSmooth;
     Model::new(ModelSetup { bins, rows: Vec::new(), power, ..setup.clone() })

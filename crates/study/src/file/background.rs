@@ -98,6 +98,8 @@ pub struct PredictionSection {
     pub lensing: Located<bool>,
     /// Damping length, Mpc/h, default 0.5.
     pub damping: Located<Quantity>,
+    /// Σ, the length over which the acoustic peak is smeared, Mpc/h, default 0.
+    pub smearing: Located<Quantity>,
     /// γ of f = Ωm(a)^γ, in place of the growth equation.
     pub growth_index: Option<Located<Quantity>>,
     /// How far apart the clocks of the derived clock contrast stand, Mpc/h, default 50.
@@ -112,6 +114,7 @@ impl PredictionSection {
             light_cone: Located::default_of(true),
             lensing: Located::default_of(true),
             damping: Located::default_of(Quantity::Held(0.5)),
+            smearing: Located::default_of(Quantity::Held(0.0)),
             growth_index: None,
             clock_distance: Located::default_of(Quantity::Held(50.0)),
         }
@@ -122,6 +125,7 @@ impl PredictionSection {
         let light_cone = section.flag("light_cone", true);
         let lensing = section.flag("lensing", true);
         let damping = section.quantity_or("damping", 0.5);
+        let smearing = section.quantity_or("smearing", 0.0);
         let growth_index = section.quantity("growth_index");
         let clock_distance = section.quantity_or("clock_distance", 50.0);
         section.finish();
@@ -130,6 +134,7 @@ impl PredictionSection {
             light_cone: light_cone?,
             lensing: lensing?,
             damping: damping?,
+            smearing: smearing?,
             growth_index,
             clock_distance: clock_distance?,
         })

@@ -31,6 +31,7 @@ impl StudyFile {
         let prediction = &mut self.prediction;
         places.push(("prediction.damping".to_owned(), Given(&mut prediction.damping)));
         places.push(("prediction.growth_index".to_owned(), Optional(&mut prediction.growth_index)));
+        places.push(("prediction.smearing".to_owned(), Given(&mut prediction.smearing)));
         places.push(("prediction.clock_distance".to_owned(), Given(&mut prediction.clock_distance)));
         for survey in &mut self.surveys {
             for bin in &mut survey.bins {

@@ -148,7 +148,7 @@ fn unit_of(name: &str) -> Option<&'static str> {
     }
     match name.rsplit('.').next() {
         Some("offset") => Some("km/s"),
-        Some("damping" | "clock_distance") => Some("Mpc/h"),
+        Some("damping" | "smearing" | "clock_distance") => Some("Mpc/h"),
         Some("range") if name.starts_with("departure.") => Some("Mpc/h"),
         Some("crossover") => Some("c/H0"),
         _ => None,
