@@ -1,10 +1,12 @@
 //! Measured multipoles, their covariance and the likelihood of a prediction.
 //!
-//! What goes in: tables of measured numbers and covariances ([`read_multipoles`], [`read_covariance_csv`],
-//! [`keep_rows`]). What comes out: χ² and log-likelihood of a prediction, given number by number
-//! ([`SurveyLikelihood`], [`SurveySet`]) or as coefficients of fixed kernels ([`CompressedLikelihood`]), under a noise
-//! model ([`noise_families`]); the information about parameters ([`effective_parameters`]) and how surprising a χ² is
-//! ([`chi_squared_p_value`]).
+//! What goes in: tables of measured numbers ([`read_multipoles`], [`keep_rows`]) and their covariance, from a file
+//! ([`read_covariance`]; formats in [`array_formats`]) or from mock measurements ([`read_mocks`], [`read_mock_tables`]), with
+//! theory errors added ([`ExtraCovariance`]) and shrunk towards a model ([`MockSet::shrunk`]). What comes out: χ² and
+//! log-likelihood of a prediction, given number by number ([`SurveyLikelihood`], [`SurveySet`]) or as coefficients of fixed
+//! kernels ([`CompressedLikelihood`]), under a noise model ([`noise_families`]), templates integrated out
+//! ([`SurveyLikelihood::with_templates`]); the information about parameters ([`effective_parameters`]); how surprising a χ² is
+//! ([`chi_squared_p_value`]); and the data's own [`verdicts`].
 //!
 //! This crate knows no physics, no priors and no sampling: a prediction is a vector, or kernels and coefficients.
 

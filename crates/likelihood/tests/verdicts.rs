@@ -122,6 +122,10 @@ fn an_error_budget() {
     assert_relative(entries[0].standard_deviation, 0.8_f64.sqrt(), 1e-14, "b known");
     assert_relative(entries[0].share, 0.4, 1e-13, "share");
     assert_eq!(entries[1].standard_deviation, whole);
+    // Priors with a covariance of 1: b known leaves a the variance 4 − 1, then (1/3 + 1)⁻¹.
+    let common = DMatrix::from_row_slice(2, 2, &[4.0, 1.0, 1.0, 1.0]);
+    let (_, tied) = error_budget(&fisher, &common, 0, &[vec![1]]).unwrap();
+    assert_relative(tied[0].standard_deviation, 0.75_f64.sqrt(), 1e-14, "b known, and what is common");
     assert_eq!((entries[2].standard_deviation, entries[2].share), (0.0, 1.0));
     assert_eq!(
         error_budget(&fisher, &DMatrix::identity(3, 3), 0, &[]).unwrap_err().to_string(),
@@ -446,6 +450,25 @@ fn a_block_of_the_covariance_that_should_not_be_there_is_found() {
     assert_eq!(parity_block(&estimate, None, &first, &second, Some(10)).unwrap().p_value, None);
     let small = estimate.select(&first);
     assert!(parity_block(&estimate, Some(&small), &first, &second, Some(mocks)).is_err());
+}
+
+#[test]
+fn no_rows_at_all() {
+    let mut random = generator(311);
+    for mocks in [None, Some(30)] {
+        let world = World::new(5, 1.0, 2, 0.5, mocks, &mut random);
+        let nothing = world.comparison(&mut random).select(&[]);
+        let found = goodness(&nothing).unwrap();
+        assert_eq!((found.chi_squared, found.p_value), (0.0, None));
+        assert_eq!(covariance_scale(&nothing).unwrap(), None);
+        assert_eq!(normality(&nothing).unwrap(), None);
+        assert_eq!(row_order(&nothing).unwrap().p_value, 1.0);
+        assert_eq!(orientation(&nothing, &[]).unwrap().difference, 0.0);
+        assert_eq!(signal(&nothing).unwrap().signal_to_noise, 0.0);
+        let found = spectrum(nothing.noise(), 3, 3);
+        assert_eq!((found.eigenvalues.len(), found.condition), (0, 1.0));
+        assert!(amplitude(&nothing, &DVector::zeros(0)).is_err());
+    }
 }
 
 #[test]

@@ -48,7 +48,7 @@ pub use nearest::Nearest;
 pub use new_study::write_new_study;
 pub use oddwell_sampler::{Control, MAXIMUM_RHAT, Phase, Progress};
 pub use parameter_map::{ParameterMap, Term};
-pub use predict::{PredictedRow, predict, predict_by_effect};
+pub use predict::{EffectColumns, PredictedRow, predict, predict_by_effect};
 pub use resolve::{AffineForm, FreeParameter, FreePrior, Hypothesis, ResolvedQuantity, State, Study};
 pub use run_directory::{RunDirectory, read_summary};
 pub use run_error::RunError;

@@ -42,6 +42,9 @@ pub fn predict(study: &Study, hypothesis: &Hypothesis) -> Result<Vec<PredictedRo
     Ok(beside(study, &measurements, prediction))
 }
 
+/// What each physical effect contributes: its name, and a number a row.
+pub type EffectColumns = Vec<(String, Vec<f64>)>;
+
 /// As [`predict`], and what each physical effect contributes to each row: a name ([`EffectName::name`]) and a column in
 /// the order of the rows. The columns add up to the prediction; an effect that the study switches off is a column of zeros.
 ///
@@ -52,7 +55,7 @@ pub fn predict(study: &Study, hypothesis: &Hypothesis) -> Result<Vec<PredictedRo
 pub fn predict_by_effect(
     study: &Study,
     hypothesis: &Hypothesis,
-) -> Result<(Vec<PredictedRow>, Vec<(String, Vec<f64>)>), RunError> {
+) -> Result<(Vec<PredictedRow>, EffectColumns), RunError> {
     let measurements = read_measurements(study)?;
     let posterior = Posterior::new(study, hypothesis, &measurements)?;
     let values = posterior.values(&hypothesis.start());

@@ -2,6 +2,7 @@
 
 use nalgebra::{DMatrix, DVector};
 
+use super::conditioning::conditioned;
 use super::factored::Factored;
 use crate::covariance::{Covariance, CovarianceError};
 use crate::survey::{LikelihoodError, SurveyLikelihood};
@@ -229,12 +230,10 @@ impl Comparison {
         }
     }
 
-    /// With some parameters (columns of the Jacobian) known exactly.
+    /// With some parameters (columns of the Jacobian) known exactly, and with them whatever errors others have in
+    /// common with them.
     pub fn holding(mut self, parameters: &[usize]) -> Self {
-        for parameter in parameters {
-            self.prior_covariance.row_mut(*parameter).fill(0.0);
-            self.prior_covariance.column_mut(*parameter).fill(0.0);
-        }
+        self.prior_covariance = conditioned(&self.prior_covariance, parameters);
         self
     }
 

@@ -45,8 +45,8 @@ pub fn duplicate(
     let difference = nothing(first)?.select(&left).minus(nothing(second)?.select(&right));
     let factored = difference.factored()?;
     let chi_squared = factored.chi_squared(difference.data());
-    let lower =
-        tails(chi_squared, factored.degrees_of_freedom(), factored.mocks).map_or(1.0, |(lower, _)| lower);
+    let lower = tails(chi_squared, factored.degrees_of_freedom(), factored.noise_mocks)
+        .map_or(1.0, |(lower, _)| lower);
     Ok(Duplicate { rows, identical, chi_squared, p_value: lower })
 }
 

@@ -3,6 +3,7 @@
 use nalgebra::DMatrix;
 
 use super::comparison::VerdictError;
+use super::conditioning::conditioned;
 use crate::information::posterior_covariance;
 
 /// What a parameter's standard deviation would be with a group of others known.
@@ -16,7 +17,7 @@ pub struct BudgetEntry {
 }
 
 /// The expected standard deviation of `parameter`, and what it would be with each group of `groups` (positions of
-/// parameters) known exactly: (I + ΣF)⁻¹Σ with the rows and columns of the group set to zero in Σ.
+/// parameters) known exactly: (I + ΣF)⁻¹Σ with Σ conditioned on the group, so that an error which others have in common with it is known too.
 ///
 /// `fisher` is JᵀN⁻¹J of the data, `prior_covariance` Σ, both parameters × parameters. A group that holds `parameter`
 /// itself gives 0.
@@ -41,11 +42,7 @@ pub fn error_budget(
         }
     }
     let deviation = |held: &[usize]| {
-        let mut prior = prior_covariance.clone();
-        for index in held {
-            prior.row_mut(*index).fill(0.0);
-            prior.column_mut(*index).fill(0.0);
-        }
+        let prior = conditioned(prior_covariance, held);
         let variance =
             posterior_covariance(fisher, &prior).map(|covariance| covariance[(parameter, parameter)]);
         match variance {

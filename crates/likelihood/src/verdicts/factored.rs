@@ -52,7 +52,7 @@ impl Factored {
     /// −2 ln L up to a constant, as a function of χ²: of normal noise, or of a covariance from mocks integrated out
     /// (Sellentin & Heavens 2016).
     pub(super) fn badness(&self, chi_squared: f64) -> f64 {
-        match self.mocks {
+        match self.noise_mocks {
             None => chi_squared,
             Some(mocks) => mocks * (chi_squared / (mocks - 1.0)).ln_1p(),
         }

@@ -7,6 +7,7 @@
 
 mod amplitude;
 mod comparison;
+mod conditioning;
 mod deviate;
 mod duplicates;
 mod error_budget;

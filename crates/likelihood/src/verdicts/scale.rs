@@ -77,7 +77,7 @@ pub fn covariance_scale(comparison: &Comparison) -> Result<Option<CovarianceScal
     let log_factor = minimum(badness);
     let s = log_factor.exp();
     let information: f64 = widths.iter().map(|width| 0.5 * (s / (s + width)).powi(2)).sum();
-    let p_value = two_sided(&squares, &widths, factored.mocks);
+    let p_value = two_sided(&squares, &widths, factored.noise_mocks);
     Ok(Some(CovarianceScale { log_factor, log_error: information.sqrt().recip(), p_value }))
 }
 

@@ -27,6 +27,9 @@ pub struct Spectrum {
 /// The spectrum of a covariance's correlations (so that rows of different units compare), with the `modes` smallest modes
 /// and at most `rows_shown` rows of each. The matrix need not be definite.
 pub fn spectrum(covariance: &Covariance, modes: usize, rows_shown: usize) -> Spectrum {
+    if covariance.is_empty() {
+        return Spectrum { eigenvalues: Vec::new(), condition: 1.0, smallest: Vec::new() };
+    }
     let deviations = covariance.standard_deviations();
     let size = covariance.len();
     let matrix = covariance.matrix();
@@ -37,8 +40,7 @@ pub fn spectrum(covariance: &Covariance, modes: usize, rows_shown: usize) -> Spe
     let eigenvalues: Vec<f64> = order.iter().map(|mode| eigen.eigenvalues[*mode]).collect();
     let condition = match (eigenvalues.first(), eigenvalues.last()) {
         (Some(largest), Some(smallest)) if *smallest > 0.0 => largest / smallest,
-        (Some(_), _) => f64::INFINITY,
-        _ => 1.0,
+        _ => f64::INFINITY,
     };
     let mode = |index: &usize| {
         let share = |row: &usize| eigen.eigenvectors[(*row, *index)].powi(2);
