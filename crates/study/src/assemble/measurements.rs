@@ -10,7 +10,7 @@ use crate::run_error::RunError;
 use crate::warnings::Warning;
 use oddwell_likelihood::{
     Axis, Covariance, CovarianceRows, Keep, LengthUnit, MultipoleTable, NoiseChoice, SurveyLikelihood,
-    keep_rows, read_covariance_csv, read_covariance_rows, read_multipoles,
+    keep_rows, read_covariance as read_covariance_file, read_covariance_rows, read_multipoles,
 };
 use oddwell_model::{Pair, Row, Space};
 use std::collections::BTreeMap;
@@ -182,13 +182,13 @@ fn read_covariance(
     };
     let path = study.file.path_of(&covariance.value);
     let result = match &section.covariance_rows {
-        None => read_covariance_csv(&path, table.len())?,
+        None => read_covariance_file(&path, table.len())?,
         Some(names) => {
             let names_path = study.file.path_of(&names.value);
             let named: CovarianceRows = read_covariance_rows(&names_path, columns)?;
             inputs.add(&names_path, file_sha256(&names_path));
             let positions = named.positions(table)?;
-            read_covariance_csv(&path, named.len())?.select(&positions)
+            read_covariance_file(&path, named.len())?.select(&positions)
         }
     };
     inputs.add(&path, file_sha256(&path));

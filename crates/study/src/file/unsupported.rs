@@ -27,14 +27,10 @@ const fn value(
     Unsupported { section, key, value: Some(value), way_out }
 }
 
-const AS_CSV: &str = "write it as a square table of numbers in a .csv file";
-
 /// Everything that this version knows of and cannot do.
 pub(crate) const UNSUPPORTED: &[Unsupported] = &[
     key("study", "joint_covariance", "remove it, and leave out one of two surveys that share volume"),
     key("survey", "mocks", "remove it, and give the covariance estimated from them, with `mock_count`"),
-    value("survey", "covariance", ".npy", AS_CSV),
-    value("survey", "covariance", ".fits", AS_CSV),
     value("survey", "noise", "percival", "choose another noise model"),
     key(
         "tracer",
