@@ -17,13 +17,19 @@ fn main() {
     let mut numbers = vec![];
     for argument in std::env::args().skip(1).filter(|argument| !argument.starts_with("--")) {
         match argument.split_once('=') {
+            Some(("samples", number)) => {
+                settings.effective_samples = number.parse().unwrap();
+                settings.watched = vec![0];
+            }
+            Some(("rhat", number)) => settings.maximum_rhat = number.parse().unwrap(),
             Some((name, weight)) => settings.move_weights.push((name.to_owned(), weight.parse().unwrap())),
             None => numbers.push(argument.parse::<usize>().unwrap()),
         }
     }
     let dimension = numbers.first().copied().unwrap_or(10);
     let runs = numbers.get(1).copied().unwrap_or(40);
-    let gaussian = Gaussian::new(dimension, 1e2, 3);
+    // Of condition 1, so that the means of its coordinates are independent of each other.
+    let gaussian = Gaussian::new(dimension, 1.0, 3);
     let target =
         Simple { priors: flat(dimension, -30.0, 30.0), likelihood: |x: &[f64]| gaussian.log_density(x) };
     let (mut quoted, mut walkers, mut ensembles, mut count) = (0.0, 0.0, 0.0, 0.0);

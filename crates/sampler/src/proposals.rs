@@ -1,5 +1,6 @@
 //! The independence move's proposals in a run: fitted during warm-up, weighted by their quality, watched afterwards.
 
+use crate::diagnostics::Shape;
 use crate::moves::{Fit, Independence, Quality, quality};
 use crate::state::RunState;
 
@@ -29,7 +30,11 @@ impl RunState {
 
     /// A fit to the draws after the first `dropped` steps.
     fn fitted(&self, dropped: usize) -> Option<Fit> {
-        Fit::to_draws(self.fit.dimension(), self.history.draws(dropped).map(|(point, _)| point))
+        let draws = self.history.draws(dropped);
+        let shape = Shape { steps: self.history.steps() - dropped, ..self.history.shape() };
+        let heights: Vec<f64> = draws.clone().map(|(_, log_posterior)| log_posterior).collect();
+        let (effective, _) = shape.ensemble_route(&heights);
+        Fit::to_draws(self.fit.dimension(), draws.map(|(point, _)| point), effective)
     }
 
     /// Fits the independence move to the draws after the first `dropped` steps, and gives it the share that its quality

@@ -1,6 +1,6 @@
 //! Autocovariance and integrated autocorrelation time.
 
-use super::ranks::{mean, squares_about};
+use super::ranks::mean;
 
 /// Biased autocovariance Σ (xᵢ − m)(xᵢ₊ₜ − m) / n at lag `lag`, about the mean `centre`; 0 past the end.
 pub fn autocovariance(values: &[f64], centre: f64, lag: usize) -> f64 {
@@ -31,21 +31,22 @@ pub struct AutocorrelationTime {
 /// The autocovariances of all `series` (each of its own mean) are averaged before the sum, as for the means of several
 /// ensembles. Cost: length · window. Relative error: about √(2(2M + 1)/n) (the same). A constant series gives τ = n.
 pub fn integrated_autocorrelation_time<C: AsRef<[f64]>>(series: &[C]) -> AutocorrelationTime {
-    const WINDOW_FACTOR: f64 = 5.0;
     let centres: Vec<f64> = series.iter().map(|values| mean(values.as_ref())).collect();
+    autocorrelation_time_about(series, &centres)
+}
+
+/// The same about given means. With one mean for all series, series that have not met have a long memory, as they should;
+/// about its own mean each would look settled.
+pub(crate) fn autocorrelation_time_about<C: AsRef<[f64]>>(
+    series: &[C],
+    centres: &[f64],
+) -> AutocorrelationTime {
+    const WINDOW_FACTOR: f64 = 5.0;
     let length = series.iter().map(|values| values.as_ref().len()).min().unwrap_or(0);
     let at = |lag: usize| -> f64 {
-        series
-            .iter()
-            .zip(&centres)
-            .map(|(values, centre)| autocovariance(values.as_ref(), *centre, lag))
-            .sum()
+        series.iter().zip(centres).map(|(values, centre)| autocovariance(values.as_ref(), *centre, lag)).sum()
     };
-    let variance: f64 = series
-        .iter()
-        .zip(&centres)
-        .map(|(values, centre)| squares_about(values.as_ref(), *centre) / values.as_ref().len() as f64)
-        .sum();
+    let variance = at(0);
     if length == 0 || !(variance > 0.0) {
         return AutocorrelationTime { time: length as f64, window: 0, closed: false };
     }

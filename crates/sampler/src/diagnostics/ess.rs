@@ -56,18 +56,11 @@ pub(crate) fn indicator_ess(chains: &Chains, level: f64) -> f64 {
     effective_samples(&chains.with(indicator).split())
 }
 
-/// Effective samples S/τ of chains that are split already, with Geyer's (1992) initial monotone sequence of
-/// autocorrelation pairs (Vehtari et al. 2021, eqs. 10–13). τ is not let below 1/log10 S, which bounds what antithetic
-/// chains may claim. Lags are computed one after the other, as far as the sequence stays positive.
+/// Effective samples S/τ of chains that are split already (Vehtari et al. 2021, eqs. 10–13).
 pub(crate) fn effective_samples(chains: &Chains) -> f64 {
     let (length, count) = (chains.length, chains.count());
-    let total = (length * count) as f64;
-    let (low, high) = chains
-        .values
-        .iter()
-        .fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), value| (low.min(*value), high.max(*value)));
-    if length < 2 || high - low < 1e-15 {
-        return total;
+    if length < 2 || chains.is_constant() {
+        return (length * count) as f64;
     }
     let draws = length as f64;
     let means = chains.means();
@@ -78,8 +71,30 @@ pub(crate) fn effective_samples(chains: &Chains) -> f64 {
     if count > 1 {
         variance += squares_about(&means, mean(&means)) / (count as f64 - 1.0);
     }
-    let correlation = |lag: usize| 1.0 - (within - covariance(lag)) / variance;
+    initial_monotone(length, length * count, |lag| 1.0 - (within - covariance(lag)) / variance)
+}
 
+/// Effective samples S/τ of many chains about their common mean, with autocovariances divided by their number of terms.
+///
+/// Vehtari's estimator takes each chain about its own mean, which lowers every autocorrelation by about 1/n for chains of n
+/// draws; with hundreds of walkers of thirty steps that overstates the effective samples by 15 %. About the common mean
+/// there is no such loss, and chains that have not met show as a memory that does not end.
+pub(crate) fn pooled_effective_samples(chains: &Chains) -> f64 {
+    let (length, count) = (chains.length, chains.count());
+    if length < 2 || chains.is_constant() {
+        return (length * count) as f64;
+    }
+    let centred = chains.centred(&vec![mean(&chains.values); count]);
+    let variance = centred.autocovariance(0);
+    let unbiased = |lag: usize| length as f64 / (length - lag) as f64;
+    initial_monotone(length, length * count, |lag| centred.autocovariance(lag) * unbiased(lag) / variance)
+}
+
+/// Effective samples from autocorrelations, with Geyer's (1992, Stat. Sci. 7, 473, §3.3) initial monotone sequence of pairs.
+///
+/// τ is not let below 1/log10 S, which bounds what antithetic chains may claim. Lags are asked for one after the other, as
+/// far as the sequence stays positive.
+fn initial_monotone(length: usize, total: usize, correlation: impl Fn(usize) -> f64) -> f64 {
     // rho[t] up to where a pair's sum turns negative; a negative pair stays out, its even member may count once.
     let (mut even, mut odd) = (1.0, correlation(1));
     let mut rho = vec![even, odd];
@@ -109,5 +124,6 @@ pub(crate) fn effective_samples(chains: &Chains) -> f64 {
     }
     let cut = (last + 1) as usize;
     let time = -1.0 + 2.0 * rho[..cut].iter().sum::<f64>() + rho[cut];
+    let total = total as f64;
     total / time.max(total.log10().recip())
 }

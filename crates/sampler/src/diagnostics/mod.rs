@@ -12,11 +12,12 @@ mod ranks;
 mod rhat;
 mod tails;
 
+pub(crate) use autocorrelation::autocorrelation_time_about;
 pub use autocorrelation::{AutocorrelationTime, autocovariance, integrated_autocorrelation_time};
 pub use ensembles::{ParameterDiagnostics, diagnose_ensembles};
 pub(crate) use ensembles::{Shape, diagnose, split_walkers_rhat};
 pub use ess::{ess_bulk, ess_mean, ess_quantile, ess_tail, mcse_mean};
 pub use quantiles::{central_interval, median, quantile, quantile_of_sorted};
-pub(crate) use ranks::ScoreTable;
+pub(crate) use ranks::{ScoreTable, product_sum};
 pub use rhat::{rank_normalised_split_rhat, split_rhat};
 pub use tails::{Tail, TailSource, tail_of, tail_of_distance};

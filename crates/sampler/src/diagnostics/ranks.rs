@@ -145,6 +145,14 @@ impl Chains {
         self.values.len().checked_div(self.length).unwrap_or(0)
     }
 
+    /// Whether all values agree to 1e-15.
+    pub(crate) fn is_constant(&self) -> bool {
+        let range = (f64::INFINITY, f64::NEG_INFINITY);
+        let (low, high) =
+            self.values.iter().fold(range, |(low, high), value| (low.min(*value), high.max(*value)));
+        high - low < 1e-15
+    }
+
     /// Mean of every chain.
     pub(crate) fn means(&self) -> Vec<f64> {
         let mut means = Vec::with_capacity(self.count());
@@ -183,13 +191,13 @@ impl Chains {
     }
 }
 
-/// Σ aᵢ bᵢ in eight interleaved sums, which the processor can add side by side.
+/// Σ aᵢ bᵢ in four interleaved sums, which the processor can add side by side.
 pub(crate) fn product_sum(a: &[f64], b: &[f64]) -> f64 {
-    let mut sums = [0.0; 8];
-    let (a_chunks, b_chunks) = (a.chunks_exact(8), b.chunks_exact(8));
+    let mut sums = [0.0; 4];
+    let (a_chunks, b_chunks) = (a.chunks_exact(4), b.chunks_exact(4));
     let rest: f64 = a_chunks.remainder().iter().zip(b_chunks.remainder()).map(|(x, y)| x * y).sum();
     for (x, y) in a_chunks.zip(b_chunks) {
-        for lane in 0..8 {
+        for lane in 0..4 {
             sums[lane] += x[lane] * y[lane];
         }
     }
