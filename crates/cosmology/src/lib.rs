@@ -19,6 +19,7 @@
 pub mod background;
 pub mod bessel;
 pub mod clocks;
+mod elementary;
 pub mod epoch;
 pub mod errors;
 pub mod growth;

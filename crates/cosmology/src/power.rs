@@ -5,6 +5,7 @@ use std::f64::consts::PI;
 use std::sync::{Arc, LazyLock};
 
 use crate::bessel::spherical_bessel;
+use crate::elementary::exp;
 use crate::errors::CosmologyError;
 use crate::quadrature::{composite, even, geometric};
 use crate::transfer::{EisensteinHu, EisensteinHuSmooth, PowerShape, PowerTable};
@@ -133,7 +134,7 @@ impl RawPower {
             Shape::EisensteinHuSmooth(fit) => k.map(|k| fit.transfer(k)),
             Shape::Table(table) => return k.map(|k| table.power(k)),
         };
-        let primordial = log_k.map(|log_k| (self.spectral_index * log_k).exp());
+        let primordial = log_k.map(|log_k| exp(self.spectral_index * log_k));
         from_fn(|i| primordial[i] * transfer[i] * transfer[i])
     }
 

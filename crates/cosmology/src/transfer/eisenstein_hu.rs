@@ -4,6 +4,7 @@ use std::array::from_fn;
 use std::f64::consts::E;
 
 use super::{CMB_TEMPERATURE, check_densities};
+use crate::elementary::{exp, ln, sin};
 use crate::errors::CosmologyError;
 
 /// Eisenstein & Hu 1998 (Astrophys. J. 496, 605), equations 2 to 24, constants worked out once.
@@ -115,8 +116,7 @@ impl EisensteinHu {
     ///
     /// This runs for every wavenumber at every evaluation in which the background moves. So powers of k alone come from
     /// outside (a grid keeps them), fractions are brought to common denominators, and the steps go one at a time through
-    /// N values: a call to a logarithm or sine spills every register, which between the steps of one value costs as much
-    /// as the calls.
+    /// N values, without a call, so that the processor takes several at once.
     pub(crate) fn transfers<const N: usize>(
         &self,
         wavenumber: [f64; N],
@@ -126,16 +126,16 @@ impl EisensteinHu {
         let q = wavenumber.map(|k| k * self.scaled);
         let ks = wavenumber.map(|k| k * self.sound_horizon_scaled);
         let q_power = quotient_power.map(|power| power * self.scaled_power);
-        let log_dark = q.map(|q| (E + self.beta_dark * q).ln());
-        let log_plain = q.map(|q| (E + 1.8 * q).ln());
+        let log_dark = q.map(|q| ln(E + self.beta_dark * q));
+        let log_plain = q.map(|q| ln(E + 1.8 * q));
         // (k/k_silk)^1.4; beyond 80, e^(-damping) is lost in the rounding of what stands beside it.
         let damping = silk_power.map(|power| (power * self.silk_power).min(80.0));
-        let damped = damping.map(|damping| (-damping).exp());
+        let damped = damping.map(|damping| exp(-damping));
         // 1 + (beta_node/ks)³ to the power -1/3, by logarithm: half the price of a cube root.
-        let node = ks.map(|ks| 1.0 + self.node_cube / (ks * ks * ks)).map(|node| node.ln() * (-1.0 / 3.0));
-        let root = node.map(f64::exp);
+        let node = ks.map(|ks| 1.0 + self.node_cube / (ks * ks * ks)).map(|node| ln(node) * (-1.0 / 3.0));
+        let root = node.map(exp);
         let shifted: [f64; N] = from_fn(|i| ks[i] * root[i]);
-        let sine = shifted.map(f64::sin);
+        let sine = shifted.map(sin);
         from_fn(|i| {
             let q_square = q[i] * q[i];
             let ks_square = ks[i] * ks[i];
