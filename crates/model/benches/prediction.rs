@@ -6,7 +6,7 @@
 #![allow(missing_docs, clippy::unwrap_used, reason = "a benchmark stops at the first surprise")]
 
 use criterion::{Criterion, criterion_group, criterion_main};
-use oddwell_cosmology::PowerShape;
+use oddwell_cosmology::{Background, PowerShape};
 use oddwell_model::{
     BinSetup, Effects, FeltBy, Model, ModelSetup, Pair, Row, SightLine, Space, Workspace, departures,
 };
@@ -15,14 +15,19 @@ use std::hint::black_box;
 const REDSHIFTS: [f64; 3] = [0.35, 0.7, 1.1];
 const SHELLS: usize = 15;
 
-fn model(multipoles: &[u8], departure: &str, felt_by: FeltBy) -> (Model, Vec<f64>) {
+fn model(
+    multipoles: &[u8],
+    departure: &str,
+    felt_by: FeltBy,
+    fiducial: Option<Background>,
+) -> (Model, Vec<f64>) {
     let bins = REDSHIFTS.iter().enumerate().map(|(index, &redshift)| BinSetup {
         survey: "s".into(),
         name: format!("q{index}"),
         nodes: vec![(redshift, 1.0)],
         sight_line: SightLine::Midpoint,
         growth_given: false,
-        fiducial: None,
+        fiducial,
     });
     let mut rows = Vec::new();
     for bin in 0..REDSHIFTS.len() {
@@ -111,7 +116,7 @@ const NUISANCES: [&str; 6] = [
 fn predictions(criterion: &mut Criterion) {
     let mut group = criterion.benchmark_group("three bins, fifteen shells");
     for (name, multipoles) in [("dipole and octupole", &[1, 3][..]), ("five multipoles", &[0, 1, 2, 3, 4])] {
-        let (model, mut values) = model(multipoles, "constant", FeltBy::Light);
+        let (model, mut values) = model(multipoles, "constant", FeltBy::Light, None);
         let mut walk = Walk::new(&model, &values, &NUISANCES);
         let mut workspace = Workspace::new();
         let mut coefficients = vec![0.0; model.coefficient_count()];
@@ -125,6 +130,7 @@ fn predictions(criterion: &mut Criterion) {
     }
     for (name, departure, felt_by, parameters) in [
         ("background free", "constant", FeltBy::Light, &[("tau", 0.3)][..]),
+        ("background free, remapped", "constant", FeltBy::Light, &[("tau", 0.3)]),
         ("background and growth free", "constant", FeltBy::Everything, &[("tau", 0.1)]),
         (
             "background free, finite range felt by light",
@@ -140,7 +146,8 @@ fn predictions(criterion: &mut Criterion) {
         ),
         ("background free, f-of-r", "f-of-r", FeltBy::Everything, &[("log10_f_r0", -5.0)]),
     ] {
-        let (model, mut values) = model(&[0, 1, 2, 3, 4], departure, felt_by);
+        let fiducial = name.ends_with("remapped").then(|| Background::new(0.3, 0.0, -1.0, 0.0).unwrap());
+        let (model, mut values) = model(&[0, 1, 2, 3, 4], departure, felt_by, fiducial);
         let mut moving: Vec<String> = BACKGROUND.map(String::from).to_vec();
         if departure == "f-of-r" {
             moving.pop(); // it needs w0 = −1

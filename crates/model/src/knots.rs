@@ -14,22 +14,24 @@ use std::ops::Range;
 /// knots in a panel of that width.
 ///
 /// What decides is the acoustic feature: 100 Mpc/h and, at a tenth of the height, its harmonic. Silk damping ends most of
-/// it, but what of it comes from infall falls as k⁻² only and can be seen in ξ to k of 2. The widths are those of the
-/// fewest knots in all that follow the spectrum to 1e-8 of itself up to 0.6 h/Mpc and to 5e-8 (k/0.6)² above, where
-/// less and less comes from, for four backgrounds around ours (for half the matter the sound horizon is half as long
-/// again, and it is 1e-6). What scale-dependent growth adds is smooth over an e-fold.
+/// it, but what of it comes from infall falls as k⁻² only, and dipoles with a factor s see it to k of 3. With these knots
+/// (found by dynamic programming over ends, widths and numbers) a polynomial follows the spectrum to 3e-8 of itself up to
+/// 0.6 h/Mpc and to 1e-7 up to 3, in backgrounds around ours; half the matter makes the sound horizon half as long again,
+/// and it is 1e-5. What scale-dependent growth adds is smooth over an e-fold.
 const ZONES: [Zone; 6] = [
     Zone { end: 0.006, width: 4.1, logarithmic: true, knots: 20 },
     Zone { end: 0.08, width: 2.6, logarithmic: true, knots: 28 },
-    Zone { end: 0.4, width: 0.16, logarithmic: false, knots: 32 },
-    Zone { end: 0.6, width: 0.2, logarithmic: false, knots: 28 },
-    Zone { end: 2.2, width: 0.4, logarithmic: false, knots: 32 },
+    Zone { end: 0.4, width: 0.16, logarithmic: false, knots: 30 },
+    Zone { end: 0.6, width: 0.2, logarithmic: false, knots: 26 },
+    Zone { end: 3.0, width: 0.4, logarithmic: false, knots: 29 },
     Zone { end: f64::INFINITY, width: 0.8, logarithmic: true, knots: 12 },
 ];
 
-/// Where rows in Fourier space take dP/dk, which a polynomial follows three digits worse than P, there are this many times
-/// more knots: then it is as good as P without.
-const FOURIER_KNOTS: f64 = 1.4;
+/// In the range in which rows take dP/dk, which a polynomial follows three digits worse than P, there are this many times
+/// more knots: then it is as good as P without. And what is left of the acoustic feature is followed farther, to where it
+/// is 1e-5 of P: its slope still counts there.
+const SLOPE_KNOTS: f64 = 1.4;
+const SLOPE_END: f64 = 5.0;
 
 /// Knots of a panel cut narrower than its zone's width: at least this many, or this share.
 const FEWEST: usize = 10;
@@ -141,17 +143,17 @@ pub(crate) struct Knots {
 }
 
 impl Knots {
-    /// Knots for a shape between `low` and `high` (h/Mpc); `split` are wavenumbers at which a panel must end; `slopes`
-    /// tells whether derivatives are asked for.
+    /// Knots for a shape between `low` and `high` (h/Mpc); `split` are wavenumbers at which a panel must end; derivatives
+    /// are asked for in the range `slopes`.
     pub(crate) fn new(
         shape: &PowerShape,
         (low, high): (f64, f64),
         split: &[f64],
-        slopes: bool,
+        slopes: Option<(f64, f64)>,
     ) -> Result<Knots, ModelError> {
         let mut panels = match shape {
             PowerShape::Table(table) => table_panels(table, low, high, split),
-            _ => shape_panels(low, high, split, if slopes { FOURIER_KNOTS } else { 1.0 }),
+            _ => shape_panels(low, high, split, slopes),
         };
         let used = panels.len();
         if !matches!(shape, PowerShape::Table(_)) && high < TAIL_END {
@@ -320,14 +322,21 @@ fn pieces(
     (0..count).map(move |i| Panel::new(edge(i), edge(i + 1), logarithmic, knots))
 }
 
-fn shape_panels(low: f64, high: f64, split: &[f64], density: f64) -> Vec<Panel> {
+fn shape_panels(low: f64, high: f64, split: &[f64], slopes: Option<(f64, f64)>) -> Vec<Panel> {
     let ends = ZONES.iter().map(|zone| zone.end);
+    let ends = ends.chain(slopes.into_iter().flat_map(|(from, to)| [from, to, SLOPE_END]));
     let edges = with_splits(low, high, ends.chain(split.iter().copied()));
     let panels = edges.windows(2).flat_map(|pair| {
         let middle = 0.5 * (pair[0] + pair[1]);
-        let zone = ZONES.into_iter().find(|zone| middle < zone.end).unwrap_or(ZONES[ZONES.len() - 1]);
+        let sloped = slopes.is_some_and(|(from, to)| from < middle && middle < to);
+        let last = ZONES.len() - 1;
+        let mut index = ZONES.iter().position(|zone| middle < zone.end).unwrap_or(last);
+        if sloped && index == last && middle < SLOPE_END {
+            index = last - 1;
+        }
+        let zone = ZONES[index];
         let knots = move |share: f64| {
-            let full = zone.knots as f64 * density;
+            let full = zone.knots as f64 * if sloped { SLOPE_KNOTS } else { 1.0 };
             FEWEST.max((full * (SHARE + (1.0 - SHARE) * share)).ceil() as usize)
         };
         pieces(pair[0], pair[1], zone.width, zone.logarithmic, knots)
@@ -353,7 +362,7 @@ mod tests {
     use super::*;
     use oddwell_cosmology::LinearPower;
 
-    fn errors(densities: (f64, f64, f64), slopes: bool) -> Vec<(f64, f64, f64)> {
+    fn errors(densities: (f64, f64, f64), slopes: Option<(f64, f64)>) -> Vec<(f64, f64, f64)> {
         let shape = PowerShape::EisensteinHu;
         let knots = Knots::new(&shape, (1e-4, 8.6), &[], slopes).unwrap();
         let (omega_m, omega_b, h) = densities;
@@ -385,26 +394,32 @@ mod tests {
         for densities in
             [(0.31, 0.049, 0.68), (0.27, 0.0483, 0.704), (0.25, 0.055, 0.78), (0.36, 0.045, 0.62)]
         {
-            for (high, value, _) in errors(densities, false) {
-                let promised = 1e-8_f64.max(5e-8 * (high / 0.6).powi(2));
-                assert!(value < promised.min(4e-6), "{densities:?} to {high}: {value:e}");
+            for (high, value, _) in errors(densities, None) {
+                let promised = if high <= 0.6 {
+                    1e-7
+                } else if high <= 3.0 {
+                    3e-7
+                } else {
+                    4e-6
+                };
+                assert!(value < promised, "{densities:?} to {high}: {value:e}");
             }
-            for (high, value, slope) in errors(densities, true) {
+            for (high, value, slope) in errors(densities, Some((1e-4, 8.6))) {
                 assert!(
-                    high > 2.2 || value < 1e-10 && slope < 1e-6,
+                    high > 3.0 || value < 1e-9 && slope < 3e-6,
                     "{densities:?} to {high}: {value:e} {slope:e}"
                 );
             }
         }
         for densities in [(0.15, 0.04, 0.7), (0.6, 0.05, 0.6)] {
-            assert!(errors(densities, false).iter().all(|(high, value, _)| *high > 2.2 || *value < 1e-6));
+            assert!(errors(densities, None).iter().all(|(high, value, _)| *high > 3.0 || *value < 1e-5));
         }
     }
 
     /// Chebyshev sums at scaled places are the polynomial through the knots; clamped at the ends of the range.
     #[test]
     fn scaled_is_the_interpolation_elsewhere() {
-        let knots = Knots::new(&PowerShape::EisensteinHu, (1e-3, 5.0), &[0.3], false).unwrap();
+        let knots = Knots::new(&PowerShape::EisensteinHu, (1e-3, 5.0), &[0.3], None).unwrap();
         let reached = knots.reached();
         let wavenumbers = &knots.wavenumbers().values()[..reached];
         let values: Vec<f64> = wavenumbers.iter().map(|k| (3.0 * k.ln()).sin() + k * k).collect();
@@ -431,7 +446,7 @@ mod tests {
         let table = PowerShape::Table(std::sync::Arc::new(table.unwrap()));
         for shape in [PowerShape::EisensteinHu, table] {
             for range in [(1e-4, 8.6), (3e-4, 0.02), (0.099, 0.101), (1e-4, 40.0 / 2.0)] {
-                let knots = Knots::new(&shape, range, &[0.0123], false).unwrap();
+                let knots = Knots::new(&shape, range, &[0.0123], Some((0.005, 0.09))).unwrap();
                 assert_eq!(knots.range(), range);
                 for pair in knots.panels().windows(2) {
                     assert_eq!(pair[0].high, pair[1].low);

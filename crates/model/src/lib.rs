@@ -10,6 +10,8 @@
 //! Never here: reading or writing, measured data, statistics.
 
 mod abscissa;
+#[cfg(test)]
+mod accuracy;
 mod by_effect;
 mod check;
 mod coefficients;

@@ -32,9 +32,9 @@ const DAMPED: f64 = 4.3;
 /// Where [`Model::has_kernels`], `predict = kernels × coefficients`, and the kernels stay as they are as long as no slot
 /// for which [`Layout::changes_kernels`] moves.
 ///
-/// Accuracy: 1e-7 of each multipole's largest value against the same integrals on a grid twenty times as fine (1e-6 where
-/// growth depends on scale), for separations of 10 to 250 Mpc/h and backgrounds around the one we seem to live in; with
-/// half or twice its matter ten times less.
+/// Accuracy, for separations of 10 to 250 Mpc/h, against the same integrals done directly on a far finer grid: 5e-8 of each
+/// even multipole's largest value and 5e-7 of each odd one's for backgrounds around ours, growth that depends on scale
+/// included, and 1e-6 for half or twice its matter.
 #[derive(Debug)]
 pub struct Model {
     setup: ModelSetup,
@@ -61,26 +61,42 @@ pub(crate) fn end_of_integrals(damping: f64) -> f64 {
     (DAMPED / damping).min(LARGEST)
 }
 
-/// The wavenumbers (h/Mpc) from which to which knots are needed, and where integrals over separations end.
-fn range(setup: &ModelSetup, plan: &Plan) -> (f64, f64, f64) {
-    let separations = plan.abscissae.iter().any(|abscissa| abscissa.space == Space::Separation);
-    let end = end_of_integrals(setup.smallest_damping);
-    let (mut low, mut high) = if separations || !matches!(setup.power, PowerShape::Table(_)) {
-        (SMALLEST, end)
-    } else {
-        (f64::INFINITY, 0.0)
-    };
-    let remapped = setup.bins.iter().any(|bin| bin.fiducial.is_some());
-    let stretch = if remapped { LARGEST_STRETCH } else { 1.0 };
-    for abscissa in plan.abscissae.iter().filter(|abscissa| abscissa.space == Space::Fourier) {
-        low = low.min(abscissa.start() / stretch);
-        high = high.max(abscissa.end() * stretch);
+/// The wavenumbers (h/Mpc) that a model needs.
+#[derive(Clone, Copy, Debug)]
+struct Reach {
+    /// Where knots begin and end.
+    low: f64,
+    high: f64,
+    /// Where integrals over separations end.
+    end: f64,
+    /// Where rows in Fourier space stand, whose odd multipoles take dP/dk.
+    slopes: Option<(f64, f64)>,
+}
+
+impl Reach {
+    fn new(setup: &ModelSetup, plan: &Plan) -> Reach {
+        let separations = plan.abscissae.iter().any(|abscissa| abscissa.space == Space::Separation);
+        let end = end_of_integrals(setup.smallest_damping);
+        let remapped = setup.bins.iter().any(|bin| bin.fiducial.is_some());
+        // A table must reach no farther than it has to; else the knots are the same whether or not there is a fiducial.
+        let table = matches!(setup.power, PowerShape::Table(_));
+        let stretch = if remapped || !table { LARGEST_STRETCH } else { 1.0 };
+        let fourier = plan.abscissae.iter().filter(|abscissa| abscissa.space == Space::Fourier);
+        let slopes = fourier.fold(None, |range: Option<(f64, f64)>, abscissa| {
+            let (low, high) = (abscissa.start() / stretch, abscissa.end() * stretch);
+            Some(range.map_or((low, high), |(from, to)| (from.min(low), to.max(high))))
+        });
+        // One wavenumber is no panel yet.
+        let slopes =
+            slopes.map(|(low, high)| if low < high { (low, high) } else { (0.99 * low, 1.01 * high) });
+        // A table has no tail for σ8.
+        let (low, high) = match slopes {
+            Some(range) if table && !separations => range,
+            Some((low, high)) => (low.min(SMALLEST), high.max(end)),
+            None => (SMALLEST, end),
+        };
+        Reach { low, high, end, slopes }
     }
-    // One wavenumber, or none at all: still a panel.
-    if low >= high {
-        (low, high) = if high > 0.0 { (0.99 * high, 1.01 * high) } else { (SMALLEST, end) };
-    }
-    (low, high, end)
 }
 
 impl Model {
@@ -103,8 +119,7 @@ impl Model {
                 setup.bins[node.bin].fiducial.map(|background| background.epoch(node.redshift)).transpose()
             })
             .collect::<Result<_, _>>()?;
-        let (low, high, end) = range(&setup, &plan);
-        let slopes = setup.rows.iter().any(|row| row.space == Space::Fourier && row.multipole % 2 == 1);
+        let Reach { low, high, end, slopes } = Reach::new(&setup, &plan);
         let knots = Knots::new(&setup.power, (low, high), &[SMALLEST, end], slopes)?;
         let functionals = Functionals::new(&knots, &plan.abscissae, &plan.readings, end);
         let variance = match &setup.power {

@@ -186,6 +186,7 @@ impl Plan {
             }
         }
         let readings = builder.readings.items.into_iter();
+        let (kernels, links) = sorted(&builder.kernels.items, &builder.links);
         Plan {
             nodes,
             nodes_of_bin,
@@ -196,8 +197,8 @@ impl Plan {
             readings: readings.map(|(abscissa, readout)| Reading { abscissa, readout }).collect(),
             warps: builder.warps.items,
             vectors: builder.vectors.items,
-            kernels: builder.kernels.items,
-            links: builder.links,
+            kernels,
+            links,
             links_of_row,
             combinations: builder.combinations,
             wavenumbers,
@@ -206,6 +207,21 @@ impl Plan {
         }
     }
 }
+
+/// Kernels by functional, so that its weights are still at hand for the next; and the links to them.
+fn sorted(kernels: &[Pairing], links: &[Pairing]) -> (Vec<Pairing>, Vec<Pairing>) {
+    let mut order: Vec<usize> = (0..kernels.len()).collect();
+    order.sort_by_key(|&kernel| kernels[kernel]);
+    let mut place = vec![0; kernels.len()];
+    for (now, &before) in order.iter().enumerate() {
+        place[before] = now;
+    }
+    let links = links.iter().map(|&(coefficient, kernel)| (coefficient, place[kernel])).collect();
+    (order.into_iter().map(|kernel| kernels[kernel]).collect(), links)
+}
+
+/// Two indices that belong together.
+type Pairing = (usize, usize);
 
 struct Builder {
     abscissae: Vec<Abscissa>,

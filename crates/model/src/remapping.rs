@@ -61,10 +61,11 @@ pub(crate) struct Direction {
 }
 
 /// Rules of an even number of points, of which the positive half is used: with n of these, polynomials in ν of degree
-/// 4n − 1. Products of Legendre functions have degree 8. The rest resolves how fast the spectrum changes with q: an
-/// acoustic feature at k = 0.3 h/Mpc and 100 Mpc/h turns by 30 ln(α∥/α⊥) radians between ν = 0 and 1.
+/// 4n − 1. Products of Legendre functions have degree 8; the rest resolves how fast the spectrum changes with q: an
+/// acoustic feature at k = 0.3 h/Mpc and 100 Mpc/h turns by 30 ln(α∥/α⊥) radians between ν = 0 and 1. In
+/// Fourier space, where nothing else is that small, four points err by 4e-10 and the others by less than 1e-8.
 static RULES: LazyLock<Vec<(f64, GaussLegendre)>> = LazyLock::new(|| {
-    let sizes = [(0.02, 6), (0.08, 9), (0.2, 14), (f64::INFINITY, 24)];
+    let sizes = [(0.02, 4), (0.08, 6), (0.2, 9), (f64::INFINITY, 24)];
     sizes.map(|(anisotropy, half)| (anisotropy, gauss_legendre(2 * half))).into()
 });
 

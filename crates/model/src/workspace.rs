@@ -8,8 +8,9 @@ use crate::remapping::{Direction, Stretch};
 use oddwell_cosmology::{Background, Epoch};
 
 /// Reusable storage of one thread: backgrounds, growth, spectra and kernels of the last prediction, with the quantities
-/// they were made from. Stage after stage is recomputed only if a quantity it depends on has changed, and nothing is
-/// allocated once the first prediction has been made. A workspace serves one model.
+/// they were made from. Stage after stage is recomputed only if a quantity it depends on has changed, and once the first
+/// prediction has been made nothing is allocated (but by a growth index, a closed universe's check of its past, and growth
+/// that needs the adaptive solver). A workspace serves one model.
 #[derive(Clone, Debug, Default)]
 pub struct Workspace {
     background_key: Vec<f64>,

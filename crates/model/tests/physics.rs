@@ -193,6 +193,32 @@ proptest! {
     }
 }
 
+proptest! {
+    #![proptest_config(ProptestConfig { cases: 12, failure_persistence: None, ..ProptestConfig::default() })]
+
+    /// A field whose range is far beyond every scale is felt everywhere: the constant shape, through growth, T and the k
+    /// integrals alike. At the smallest wavenumber, 1e-4 h/Mpc, a²/(λk)² is 1e-16; what is left is the interpolation of a
+    /// table in k of numbers that are all the same.
+    #[test]
+    fn an_infinite_range_is_the_constant(draw in draws(), z in 0.15..1.4f64, tau in -0.3..0.8f64, line in 0..3usize) {
+        for felt_by in FeltBy::ALL {
+            let sight_line = SightLine::ALL[line];
+            let constant = Model::new(setup(z, sight_line, "constant", felt_by, Pair::FirstSecond)).unwrap();
+            let range = Model::new(setup(z, sight_line, "finite-range", felt_by, Pair::FirstSecond)).unwrap();
+            let expected = predict(&constant, &values(&constant, &draw, false, &[tau]));
+            let got = predict(&range, &values(&range, &draw, false, &[tau, 1e12]));
+            for ((got, expected_value), row) in got.iter().zip(&expected).zip(&constant.setup().rows) {
+                let scale = largest(&expected, &constant.setup().rows, row);
+                prop_assert!((got - expected_value).abs() < 1e-11 * scale, "{felt_by} {row:?}");
+            }
+            // And it is τ that does it.
+            let none = predict(&constant, &values(&constant, &draw, false, &[0.0]));
+            let moved = none.iter().zip(&expected).any(|(one, other)| one != other);
+            prop_assert!(moved || tau == 0.0, "{felt_by}");
+        }
+    }
+}
+
 /// McDonald 2009 (JCAP 11, 026): the gravitational-redshift term alone gives |Im P| = (3/2) Ωm (H/k) |b₁ − b₂| P for the
 /// coefficient of μ, with Ωm at the epoch, and P₃ none of it.
 #[test]

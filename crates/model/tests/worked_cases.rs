@@ -21,7 +21,7 @@ const TOLERANCE_SCALE_DEPENDENT: f64 = 1e-5;
 
 /// Where the reference remaps. It differs by 1.4e-7 from this crate in ξ₄ at the smallest separation and by some 1e-9 at the
 /// larger ones, as the end of an interpolation in separation would; the plain projection of `remapping.rs` agrees with this
-/// crate to 1e-8 there.
+/// crate to 5e-8 there.
 const TOLERANCE_REMAPPED: f64 = 3e-7;
 
 fn number(case: &Value, key: &str, default: f64) -> f64 {

@@ -84,6 +84,27 @@ fn f_of_r_falls_to_half_its_strength_at_the_compton_wavenumber() {
     assert!((shape.tau(&[field.log10()], &background, 1.0, 1e4 * mass) - 1.0 / 3.0).abs() < 1e-8);
 }
 
+/// The Compton wavelength of that model, 1/M today, is 32 Mpc √(|f_R0|/10⁻⁴) in a flat universe of Ωm = 0.24, h = 0.73: the
+/// value with which simulations of it are described (Hu & Sawicki 2007, PRD 76, 064004, for the model; the number from
+/// memory, as in Schmidt, Lima, Oyaizu & Hu 2009, PRD 79, 083518). Two digits: 2 %.
+#[test]
+fn f_of_r_has_the_published_compton_wavelength() {
+    let background = Background::new(0.24, 0.0, -1.0, 0.0).unwrap();
+    let shape = find("f-of-r").unwrap();
+    for field in [1e-4_f64, 1e-5, 1e-6] {
+        // Where half the force is left, by bisection: k = M.
+        let (mut low, mut high) = (1e-4_f64, 1e2_f64);
+        for _ in 0..100 {
+            let middle = (low * high).sqrt();
+            let tau = shape.tau(&[field.log10()], &background, 1.0, middle);
+            if tau < 1.0 / 6.0 { low = middle } else { high = middle }
+        }
+        let wavelength = 1.0 / low / 0.73;
+        let published = 32.0 * (field / 1e-4).sqrt();
+        assert!((wavelength / published - 1.0).abs() < 0.02, "{field:e}: {wavelength} Mpc, {published}");
+    }
+}
+
 /// β of the self-accelerating branch changes sign of the second term; on the normal branch with r_c = 1 and
 /// H = H0 today in a flat universe, β = 1 + 2 (1 − Ωm/2) (Koyama & Maartens 2006, JCAP 01, 016, eq. 2.18: 1 + Ḣ/3H²,
 /// with Ḣ/H² = −(3/2) Ωm for a cosmological-constant expansion).
