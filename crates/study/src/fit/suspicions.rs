@@ -16,6 +16,9 @@ use oddwell_sampler::{Chain, FailedTest, Prior, Test};
 const EDGE_DENSITY: f64 = 0.04;
 /// … measured in a strip of this share of the standard deviation.
 const EDGE_STRIP: f64 = 0.1;
+/// A nuisance that the data leave alone fills its prior to the edge, which is no pile-up: it must have this many times the
+/// prior's own probability in the strip.
+const EDGE_EXCESS: f64 = 1.5;
 /// A nuisance moved by more prior standard deviations than this.
 const MOVED: f64 = 2.0;
 /// A departure whose posterior is wider than this share of its prior was not tested.
@@ -90,15 +93,18 @@ fn edges(posterior: &Posterior, chain: &Chain) -> Vec<Warning> {
     let mut warnings = Vec::new();
     for &index in posterior.priors.independent() {
         let strip = EDGE_STRIP * chain.diagnostics[index].sd;
-        let edges = hard_edges(posterior.priors.marginal(index).as_ref());
+        let prior = posterior.priors.marginal(index);
+        let edges = hard_edges(prior.as_ref());
         if edges.is_empty() || !(strip > 0.0) {
             continue;
         }
+        let nuisance = !posterior.hypothesis.watched().contains(&index);
         let draws = chain.column(index);
         for edge in edges {
             let near = draws.iter().filter(|draw| (*draw - edge).abs() < strip).count();
-            let density = near as f64 / draws.len() as f64 / EDGE_STRIP;
-            if density > EDGE_DENSITY {
+            let share = near as f64 / draws.len() as f64;
+            let before = prior.cdf(edge + strip) - prior.cdf(edge - strip);
+            if share > EDGE_DENSITY * EDGE_STRIP && !(nuisance && share < EDGE_EXCESS * before) {
                 warnings.push(Warning::PriorEdge { parameter: posterior.map.names()[index].clone(), edge });
             }
         }
