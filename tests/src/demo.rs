@@ -1,8 +1,6 @@
-//! The demo data: two invented surveys drawn from a recorded truth with a recorded seed.
+//! The demo data: two invented surveys drawn by `oddwell simulate` from a recorded truth with a recorded seed.
 
-use oddwell_model::covariance::Sampling;
-use oddwell_study::simulate::{Design, simulate};
-use oddwell_study::{Override, RunError, Study};
+use oddwell_study::{Draw, Override, RunError, Study, Truth, simulate_study};
 use std::path::Path;
 
 /// The seed of the noise.
@@ -31,28 +29,16 @@ pub const TRUTH: &[(&str, f64)] = &[
     ("systematic.faint-luminosity-function", -0.6),
 ];
 
-/// Volume in (Mpc/h)³ and densities in (h/Mpc)³, by bin.
-pub const SAMPLINGS: [(f64, f64, f64); 5] = [
-    (1.5e9, 1.0e-3, 4.0e-3),
-    (3.5e9, 9.0e-4, 3.6e-3),
-    (6.0e9, 8.0e-4, 3.2e-3),
-    (1.2e10, 6.0e-4, 2.4e-3),
-    (1.6e10, 4.0e-4, 1.6e-3),
+/// The files that go beside the demo's study file.
+pub const FILES: [&str; 5] = [
+    "larkfield-multipoles.csv",
+    "larkfield-covariance.csv",
+    "northmoor-multipoles.csv",
+    "northmoor-covariance.csv",
+    "truth.csv",
 ];
 
-/// How the surveys are binned: shells of 8 Mpc/h from 24 to 144, dipole and octupole.
-#[must_use]
-pub fn design() -> Design {
-    Design {
-        multipoles: vec![1, 3],
-        edges: (0..=15).map(|i| 24.0 + 8.0 * f64::from(i)).collect(),
-        bins: SAMPLINGS
-            .map(|(volume, first_density, second_density)| Sampling { volume, first_density, second_density })
-            .to_vec(),
-    }
-}
-
-/// Name and content of each file that goes beside `study`, the demo's study file.
+/// Name and content of each of them, drawn for `study`, the demo's study file.
 ///
 /// # Errors
 /// [`RunError`] where the study can't be read or predicted.
@@ -61,35 +47,22 @@ pub fn files(study: &Path) -> Result<Vec<(String, String)>, RunError> {
         .iter()
         .map(|(name, value)| Override::parse(&format!("{name}={value}")))
         .collect::<Result<_, _>>()?;
-    let truth = Study::read(study, &overrides)?;
-    let fiducial = Study::read(study, &[])?;
-    let surveys = simulate(
-        &truth,
-        truth.hypothesis(Some(HYPOTHESIS))?,
-        (&fiducial, fiducial.hypothesis(Some("gr"))?),
-        &design(),
-        SEED,
-    )?;
-    let mut files = vec![("truth.toml".to_owned(), truth_text())];
-    for survey in surveys {
-        files.push((format!("{}-multipoles.csv", survey.name), survey.multipoles));
-        files.push((format!("{}-covariance.csv", survey.name), survey.covariance));
-    }
-    Ok(files)
-}
-
-/// The truth as a file.
-fn truth_text() -> String {
-    let mut text = format!(
-        "# What the invented measurements of this folder were drawn from. What is not named stands at the centre of its prior.\n\
-         hypothesis = \"{HYPOTHESIS}\"\nseed = {SEED}\n\n[values]\n"
-    );
-    for (name, value) in TRUTH {
-        text.push_str(&format!("\"{name}\" = {value:?}\n"));
-    }
-    text.push_str("\n# volume in (Mpc/h)^3, densities of the first and the second tracer in (h/Mpc)^3, by bin\n[design]\n");
-    for (index, (volume, first, second)) in SAMPLINGS.iter().enumerate() {
-        text.push_str(&format!("bin{} = [{volume:e}, {first:e}, {second:e}]\n", index + 1));
-    }
-    text
+    let study = Study::read(study, &overrides)?;
+    let unreadable = |path: &Path, error: std::io::Error| RunError::UnreadableRun {
+        path: path.to_owned(),
+        reason: error.to_string(),
+    };
+    let temporary = std::env::temp_dir();
+    let folder = tempfile::tempdir_in(&temporary).map_err(|error| unreadable(&temporary, error))?;
+    let drawn = folder.path().join("demo");
+    let draw = Draw { truth: Truth::Centre, seed: SEED, mocks: 0 };
+    simulate_study(&study, study.hypothesis(Some(HYPOTHESIS))?, draw, &drawn)?;
+    FILES
+        .iter()
+        .map(|name| {
+            let path = drawn.join(name);
+            let text = std::fs::read_to_string(&path).map_err(|error| unreadable(&path, error))?;
+            Ok(((*name).to_owned(), text))
+        })
+        .collect()
 }

@@ -117,12 +117,19 @@ Example: oddwell fit study.toml --hypothesis constant --out runs/first --seed 7
 Ctrl-C stops early and keeps what was sampled, marked as not converged; a second one ends at once.")]
     #[command(mut_arg("hypothesis", |argument| argument.help(WHICH_TO_FIT)))]
     Fit(FitArguments),
-    /// Draw synthetic measurements from the study's own model and covariance, as a complete study
+    /// Draw synthetic measurements from the study's own model, as a complete study
     ///
     /// Writes a folder with the study, its tables with drawn values, its covariances, and truth.csv. Inferred quantities
     /// stand at the centre of their priors, or where `--set` puts them, or are drawn from the priors with `--from-prior`.
-    /// The noise is normal with the covariance as given. Without `--hypothesis`, as `fit` chooses.
-    #[command(after_help = "Example: oddwell simulate study.toml --out drawn --set departure.tau=2 --seed 7")]
+    /// Without `--hypothesis`, as `fit` chooses.
+    ///
+    /// A survey with a [survey.design] (volumes or redshift edges, densities, shells) needs no measurements: its covariance is
+    /// that of Gaussian fields, cosmic variance and shot noise, in general relativity at the centre of the priors. Another
+    /// survey is drawn with its covariance as given. The noise is normal.
+    #[command(after_help = "\
+Examples:
+  oddwell simulate study.toml --out drawn --set departure.tau=2 --seed 7
+  oddwell simulate study.toml --out mocked --from-prior --mocks 600")]
     Simulate(SimulateArguments),
     /// Shift the measurements by a secret departure, so that nobody can steer the analysis
     ///
@@ -188,6 +195,9 @@ pub(crate) struct SimulateArguments {
     /// Draw the truth from the priors
     #[arg(long)]
     pub(crate) from_prior: bool,
+    /// Draw N mocks of each survey too; the written study estimates its covariances from them
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(2..))]
+    pub(crate) mocks: Option<u16>,
 }
 
 /// Which study, which hypothesis, and what to change in it.

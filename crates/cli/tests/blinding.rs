@@ -35,6 +35,15 @@ fn files(folder: &Path) -> Vec<PathBuf> {
     found
 }
 
+/// Which of some sizes stands in a text as a number, to this relative closeness.
+fn found_number(text: &str, sizes: &[f64], closeness: f64) -> Option<usize> {
+    let part = |letter: char| letter.is_ascii_digit() || ".eE+-".contains(letter);
+    let numbers = text.split(|letter| !part(letter)).filter_map(|word| word.parse::<f64>().ok());
+    numbers
+        .filter(|number| *number != 0.0)
+        .find_map(|number| sizes.iter().position(|size| (number.abs() / size - 1.0).abs() < closeness))
+}
+
 fn summary(run: &Path) -> Value {
     serde_json::from_str(&std::fs::read_to_string(run.join("summary.json")).unwrap()).unwrap()
 }
@@ -58,8 +67,9 @@ fn blinded_measurements_come_back_and_nothing_leaks_before() {
     std::fs::write(&path, text).unwrap();
 
     let blind = ["blind", "first/study.toml", "--phrase-file", "phrase.txt", "--out", "blinded"];
-    let (_, said) = succeed(folder, &blind);
+    let (shown, said) = succeed(folder, &blind);
     assert!(said.contains("BLINDED"), "{said}");
+    let said_blinding = shown + &said;
     let table = |folder_name: &str| folder.join(folder_name).join("windmere-multipoles.csv");
     let (original, shifted) = (values(&table("first")), values(&table("blinded")));
     let largest = |values: &[f64]| values.iter().fold(0.0_f64, |largest, value| largest.max(value.abs()));
@@ -67,7 +77,8 @@ fn blinded_measurements_come_back_and_nothing_leaks_before() {
     assert!(largest(&moved) > 1e-3 * largest(&original), "something was added");
 
     // A fit of the blinded study says nothing of where the departure lies, and one of general relativity is refused.
-    let (shown, _) = succeed(folder, &["fit", "blinded/study.toml", "--out", "run-blinded"]);
+    let (shown, said) = succeed(folder, &["fit", "blinded/study.toml", "--out", "run-blinded"]);
+    let said_fitting = shown.clone() + &said;
     assert!(shown.contains("BLINDED"), "{shown}");
     assert!(!shown.contains("General relativity lies"), "{shown}");
     let blinded = summary(&folder.join("run-blinded"));
@@ -89,6 +100,8 @@ fn blinded_measurements_come_back_and_nothing_leaks_before() {
     let (predicted, said) = succeed(folder, &["predict", "blinded/study.toml"]);
     assert!(said.contains("BLINDED"), "{said}");
     assert!(predicted.lines().nth(1).unwrap().contains(",,"), "the measured column is empty: {predicted}");
+    let (checked, also) = succeed(folder, &["check", "blinded/study.toml"]);
+    let said_predicting = predicted + &said + &checked + &also;
 
     // A wrong phrase is refused, and nothing is written.
     std::fs::write(folder.join("wrong.txt"), "nine herons over dry slate").unwrap();
@@ -122,17 +135,39 @@ fn blinded_measurements_come_back_and_nothing_leaks_before() {
     // Two runs, each with its Monte Carlo error: five of the sum of both.
     assert!((difference - secret).abs() < 10.0 * error, "{difference} {secret} ± {error}");
 
-    // The phrase stands in no file but its own, and neither the secret nor the shift in any written before the reveal.
-    let secret_text = format!("{:.6}", secret.abs());
+    // The phrase stands in no file but its own, nor in anything said; and no number written or said before the reveal is the
+    // secret, or what it moved a row by, to a part in 10⁷. (A hundred thousand unrelated numbers meet one of thirty so closely
+    // with a probability of a few in a thousand where they are of its size; a chain, with millions, is searched for all digits.)
+    let largest_shift = largest(&moved);
+    // A departure felt by light leaves octupoles alone.
+    let mut shifts: Vec<f64> =
+        moved.iter().map(|moved| moved.abs()).filter(|shift| *shift > 1e-6 * largest_shift).collect();
+    assert_eq!(shifts.len(), 30);
+    shifts.push(secret.abs());
+    let mut searched = 0;
     for file in files(folder) {
         if file.ends_with("phrase.txt") || file.starts_with(folder.join("revealed")) {
             continue;
         }
         let content = String::from_utf8_lossy(&std::fs::read(&file).unwrap()).into_owned();
         assert!(!content.contains(PHRASE), "{}", file.display());
-        let before = !file.starts_with(folder.join("run-revealed"));
-        assert!(!(before && content.contains(&secret_text)), "{}", file.display());
+        let before =
+            ["first", "blinded", "run-blinded"].iter().any(|name| file.starts_with(folder.join(name)));
+        if before {
+            let closeness = if file.ends_with("chain.csv") { 1e-13 } else { 1e-7 };
+            let found = found_number(&content, &shifts, closeness);
+            assert_eq!(found, None, "{}", file.display());
+            searched += 1;
+        }
     }
+    assert!(searched >= 8, "{searched}");
+    for said in [&said_blinding, &said_fitting, &said_predicting] {
+        assert!(!said.contains(PHRASE));
+        assert_eq!(found_number(said, &shifts, 1e-7), None, "{said}");
+    }
+    // The search finds what is there.
+    assert_eq!(found_number(&format!("tau = {:.8};", -secret), &shifts, 1e-7), Some(shifts.len() - 1));
+    assert_eq!(found_number(&told, &shifts, 1e-7), Some(shifts.len() - 1));
     let revealed_text = std::fs::read_to_string(folder.join("revealed/study.toml")).unwrap();
     assert!(!revealed_text.contains("[blinding]") && !revealed_text.contains(PHRASE));
 }

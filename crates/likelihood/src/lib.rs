@@ -38,7 +38,7 @@ mod triangle;
 mod units;
 pub mod verdicts;
 
-pub use arrays::{ArrayError, ArrayFormat, array_formats};
+pub use arrays::{ArrayError, ArrayFormat, array_formats, npy_bytes};
 pub use compressed::{CompressedLikelihood, LeastSquares};
 pub use covariance::{Covariance, CovarianceError, SYMMETRY_TOLERANCE};
 pub use covariance_file::{

@@ -8,6 +8,7 @@ use oddwell_likelihood::{Axis, LengthUnit, with_values};
 use std::collections::BTreeMap;
 use std::fs;
 use std::path::{Path, PathBuf};
+use toml_edit::{DocumentMut, Item, TableLike, TomlError, Value, value};
 
 /// What goes into the folder: names and contents, the study file first.
 #[derive(Clone, Debug, PartialEq)]
@@ -100,6 +101,61 @@ impl StudyCopy {
         name
     }
 
+    /// Gives keys of the survey of this index these texts for values, and removes others, wherever they stand in the copy's
+    /// study file.
+    ///
+    /// # Errors
+    /// [`RunError::UnreadableRun`] where the copy is no study file (never: its original was read).
+    pub(crate) fn edit_survey(
+        &mut self,
+        index: usize,
+        texts: &[(&str, String)],
+        remove: &[&str],
+    ) -> Result<(), RunError> {
+        let text = String::from_utf8_lossy(&self.files[0].1).into_owned();
+        let mut document: DocumentMut =
+            text.parse().map_err(|error: TomlError| unreadable(Path::new(STUDY_FILE), error.to_string()))?;
+        if let Some(survey) = survey_of(&mut document, index) {
+            for key in remove {
+                survey.remove(key);
+            }
+            let indent = survey.key("name").and_then(|key| key.leaf_decor().prefix().cloned());
+            for (key, text) in texts {
+                let known = survey.get(key).and_then(Item::as_str).map(str::to_owned);
+                if known.as_deref() == Some(text.as_str()) {
+                    continue;
+                }
+                survey.insert(key, value(text.as_str()));
+                if let (Some(mut key), Some(indent)) = (survey.key_mut(key), &indent) {
+                    // As the name is, but for notes in front of it.
+                    if indent.as_str().is_some_and(|indent| indent.trim().is_empty()) {
+                        key.leaf_decor_mut().set_prefix(indent.clone());
+                    }
+                }
+            }
+        }
+        self.files[0].1 = document.to_string().into_bytes();
+        Ok(())
+    }
+
+    /// Mocks of a survey in place of its covariance.
+    pub(crate) fn with_mocks(&mut self, index: usize, survey: &str, mocks: Vec<u8>) -> Result<(), RunError> {
+        let text = String::from_utf8_lossy(&self.files[0].1).into_owned();
+        let document: Option<DocumentMut> = text.parse().ok();
+        let covariance = document.and_then(|mut document| {
+            survey_of(&mut document, index)?.get("covariance")?.as_str().map(str::to_owned)
+        });
+        self.files.retain(|(name, _)| Some(name) != covariance.as_ref());
+        let name = self.add(&format!("{survey}-mocks.npy"), survey, mocks);
+        self.edit_survey(index, &[("mocks", name)], &["covariance", "covariance_rows", "mock_count"])
+    }
+
+    /// The text of a file of the copy.
+    pub(crate) fn text_of(&self, name: &str) -> String {
+        let file = self.files.iter().find(|(known, _)| known == name);
+        file.map_or_else(String::new, |(_, content)| String::from_utf8_lossy(content).into_owned())
+    }
+
     /// One more file of the copy.
     pub fn with_file(mut self, name: &str, content: Vec<u8>) -> StudyCopy {
         self.files.push((name.to_owned(), content));
@@ -134,6 +190,17 @@ impl StudyCopy {
             RunError::Unwritable { path: folder.to_owned(), reason: error.to_string() }
         })?;
         Ok(folder.join(STUDY_FILE))
+    }
+}
+
+/// A survey's table, however it is written.
+fn survey_of(document: &mut DocumentMut, index: usize) -> Option<&mut dyn TableLike> {
+    match document.get_mut("survey")? {
+        Item::ArrayOfTables(tables) => tables.get_mut(index).map(|table| table as &mut dyn TableLike),
+        Item::Value(Value::Array(array)) => {
+            array.get_mut(index).and_then(Value::as_inline_table_mut).map(|table| table as &mut dyn TableLike)
+        }
+        item => item.as_table_like_mut(),
     }
 }
 

@@ -147,6 +147,16 @@ pub enum Fault {
         /// What to do.
         way_out: &'static str,
     },
+    /// Two keys that do not go together.
+    #[error("`{other}` cannot stand beside `{one}`; {way_out}")]
+    Excluded {
+        /// One of the keys.
+        one: &'static str,
+        /// The other.
+        other: &'static str,
+        /// What to do.
+        way_out: &'static str,
+    },
     /// A fiducial background in which a bin's redshift has no distance.
     #[error("the fiducial background of survey `{survey}` gives no distance: {cause}")]
     Fiducial {

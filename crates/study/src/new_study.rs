@@ -3,9 +3,10 @@
 use crate::file::{Override, StudyFile};
 use crate::resolve::Study;
 use crate::run_error::RunError;
-use crate::simulate::{Design, simulate};
-use crate::template::{STUDY_FILE, TemplateData, study_text, write_template};
-use oddwell_model::covariance::Sampling;
+use crate::simulate::{Draw, Truth, drawn};
+use crate::template::{
+    COVARIANCE_FILE, MULTIPOLES_FILE, STUDY_FILE, TemplateData, study_text, write_template,
+};
 use std::path::{Path, PathBuf};
 
 /// What the invented measurements are drawn from, besides the centres of the priors.
@@ -23,31 +24,13 @@ const SEED: u64 = 1907;
 /// # Errors
 /// [`RunError::Study`] for a folder with something in it, or one that can't be written.
 pub fn write_new_study(folder: &Path) -> Result<Vec<PathBuf>, RunError> {
-    let resolve = |overrides: &[Override]| -> Result<Study, RunError> {
-        let file = StudyFile::parse(STUDY_FILE, study_text(), folder)?;
-        Ok(Study::resolve(file, overrides)?)
-    };
     let overrides: Vec<Override> = TRUTH.into_iter().map(Override::parse).collect::<Result<_, _>>()?;
-    let (truth, fiducial) = (resolve(&overrides)?, resolve(&[])?);
-    let design = Design {
-        multipoles: vec![1, 3],
-        edges: (0..=15).map(|i| 24.0 + 8.0 * f64::from(i)).collect(),
-        bins: vec![
-            Sampling { volume: 2.0e9, first_density: 8e-4, second_density: 3e-3 },
-            Sampling { volume: 5.0e9, first_density: 6e-4, second_density: 2e-3 },
-        ],
-    };
-    let drawn = simulate(
-        &truth,
-        truth.hypothesis(Some("constant"))?,
-        (&fiducial, fiducial.hypothesis(Some("gr"))?),
-        &design,
-        SEED,
-    )?;
-    // The template has one survey.
-    let (multipoles, covariance) = drawn.into_iter().next().map_or_else(Default::default, |survey| {
-        let note = "# Invented measurements of an invented survey.\n";
-        (format!("{note}{}", survey.multipoles), survey.covariance)
-    });
+    let file = StudyFile::parse(STUDY_FILE, study_text(), folder)?;
+    let study = Study::resolve(file, &overrides)?;
+    let draw = Draw { truth: Truth::Centre, seed: SEED, mocks: 0 };
+    let (drawn, _) = drawn(&study, study.hypothesis(Some("constant"))?, draw)?;
+    let multipoles =
+        format!("# Invented measurements of an invented survey.\n{}", drawn.text_of(MULTIPOLES_FILE));
+    let covariance = drawn.text_of(COVARIANCE_FILE);
     Ok(write_template(folder, &TemplateData { multipoles: &multipoles, covariance: &covariance })?)
 }

@@ -153,6 +153,34 @@ pub enum RunError {
         /// The path.
         path: PathBuf,
     },
+    /// A survey that is known by its design alone.
+    #[error(
+        "survey `{survey}` has a [survey.design] and no measurements yet; draw some with `oddwell simulate {study} --out DIR`, or give `multipoles`"
+    )]
+    NotMeasured {
+        /// The survey.
+        survey: String,
+        /// The study file.
+        study: String,
+    },
+    /// A design beside a window.
+    #[error(
+        "survey `{survey}` has a window, and a design is drawn without a mask; remove `window` and `window_rows`, or the [survey.design] to draw with the covariance as given"
+    )]
+    DesignWithWindow {
+        /// The survey.
+        survey: String,
+    },
+    /// Noise from mocks, without mocks.
+    #[error(
+        "survey `{survey}`: the noise model `{noise}` is for a covariance estimated from mocks, and a design gives an exact one; draw mocks too, with `--mocks N`, or choose `noise = \"gaussian\"`"
+    )]
+    NeedsMocks {
+        /// The survey.
+        survey: String,
+        /// The noise model.
+        noise: String,
+    },
     /// Blinded where it must not be, or not where it must.
     #[error("{what} is blinded; {way_out}")]
     Blinded {

@@ -1,6 +1,6 @@
 //! `oddwell simulate STUDY --out DIR`
 
-use oddwell_study::{Truth, simulate_study};
+use oddwell_study::{Draw, Truth, simulate_study};
 use serde_json::{Map, Value, json};
 
 use super::{choice, read_study};
@@ -15,7 +15,8 @@ pub(super) fn run(arguments: &SimulateArguments, output: &Output) -> Result<Stat
         output.notice(&choice("drawing from", &study, hypothesis));
     }
     let truth = if arguments.from_prior { Truth::Prior } else { Truth::Centre };
-    let drawn = simulate_study(&study, hypothesis, truth, arguments.seed, &arguments.out)?;
+    let draw = Draw { truth, seed: arguments.seed, mocks: usize::from(arguments.mocks.unwrap_or(0)) };
+    let drawn = simulate_study(&study, hypothesis, draw, &arguments.out)?;
     let path = drawn.study.display().to_string();
     if output.json {
         let truth: Map<String, Value> =

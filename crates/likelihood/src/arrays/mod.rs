@@ -11,6 +11,7 @@ use std::path::Path;
 use nalgebra::DMatrix;
 
 pub use error::ArrayError;
+pub use npy::npy_bytes;
 
 use crate::error::DataError;
 

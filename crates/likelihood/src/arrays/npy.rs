@@ -1,9 +1,9 @@
 //! NumPy's array files.
 
 use nalgebra::DMatrix;
-use ndarray::{ArrayD, Axis, Ix2};
+use ndarray::{Array2, ArrayD, Axis, Ix2};
 use ndarray_npy::npy::header::Header;
-use ndarray_npy::{ReadNpyError, ReadNpyExt, ReadableElement};
+use ndarray_npy::{ReadNpyError, ReadNpyExt, ReadableElement, WriteNpyExt};
 
 use super::{ArrayError, ArrayFormat, row_names, two_dimensions};
 use crate::error::DataError;
@@ -69,6 +69,19 @@ impl ArrayFormat for Npy {
         }
         .map_err(|error| malformed(error.to_string()))?;
         Ok((matrix, row_names(lines)))
+    }
+}
+
+/// The bytes of a NumPy array file of `float64` in C order: what [`array_formats`](super::array_formats) reads as `.npy`.
+///
+/// Empty where the numbers of lines and columns are such that no array can hold them (never: they are in memory).
+#[must_use]
+pub fn npy_bytes(matrix: &DMatrix<f64>) -> Vec<u8> {
+    let array = Array2::from_shape_fn(matrix.shape(), |place| matrix[place]);
+    let mut bytes = Vec::new();
+    match array.write_npy(&mut bytes) {
+        Ok(()) => bytes,
+        Err(_) => Vec::new(),
     }
 }
 

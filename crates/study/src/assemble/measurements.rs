@@ -2,7 +2,7 @@
 
 use super::window::{SurveyWindow, read_window};
 use crate::checksum::{InputHashes, file_sha256};
-use crate::file::{BinSection, KeepSection, SurveySection};
+use crate::file::{BinSection, KeepSection, Origin, SurveySection};
 use crate::nearest::Nearest;
 use crate::record::InputFile;
 use crate::resolve::Study;
@@ -118,6 +118,9 @@ fn read_survey(
     warnings: &mut Vec<Warning>,
 ) -> Result<SurveyMeasurements, RunError> {
     let name = section.name.value.clone();
+    if section.multipoles.origin == Origin::Default {
+        return Err(RunError::NotMeasured { survey: name, study: study.file.source.name().to_owned() });
+    }
     let path = study.file.path_of(&section.multipoles.value);
     let columns: BTreeMap<String, String> =
         section.columns.iter().map(|(ours, theirs)| (ours.clone(), theirs.value.clone())).collect();

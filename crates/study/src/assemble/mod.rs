@@ -1,6 +1,7 @@
 //! From a resolved study to something that can be evaluated: measurements read, model built, posterior ready.
 
 mod domain;
+mod elsewhere;
 mod matrix_file;
 mod measurements;
 mod posterior;
@@ -8,6 +9,7 @@ mod power_table;
 mod projection;
 mod window;
 
+pub(crate) use elsewhere::predict_elsewhere;
 pub use measurements::{Measurements, SurveyMeasurements, read_measurements};
 pub(crate) use posterior::model_setup;
 pub use posterior::{Posterior, PosteriorScratch};

@@ -1,12 +1,12 @@
 //! What a study expects of its measurements before a fit.
 
-use crate::assemble::{Measurements, Posterior, PosteriorScratch};
+use crate::assemble::{Measurements, Posterior, PosteriorScratch, predict_elsewhere};
 use crate::resolve::{Hypothesis, Study};
 use crate::run_error::RunError;
 use nalgebra::{DMatrix, DVector};
 use oddwell_likelihood::LikelihoodError;
 use oddwell_likelihood::verdicts::{Comparison, Expectation, VerdictError};
-use oddwell_model::{FeltBy, Model, ModelSetup, Workspace, departures};
+use oddwell_model::{FeltBy, ModelSetup, departures};
 use oddwell_sampler::Target;
 
 /// The prediction in general relativity at the centre of the priors, and its derivatives.
@@ -114,14 +114,9 @@ pub(super) fn predict_with(
     value: &dyn Fn(&str, f64) -> f64,
     values: &[f64],
 ) -> Result<Vec<f64>, RunError> {
-    let model = Model::new(setup)?;
-    let names = model.layout().names().iter();
-    let carried: Vec<f64> = names
-        .map(|name| value(name, posterior.model.layout().index(name).map_or(0.0, |slot| values[slot])))
-        .collect();
-    let mut rows = vec![0.0; model.setup().rows.len()];
-    model.predict(&carried, &mut Workspace::new(), &mut rows)?;
-    Ok(posterior.measured(&rows))
+    predict_elsewhere(posterior, setup, &|name| {
+        value(name, posterior.model.layout().index(name).map_or(0.0, |slot| values[slot]))
+    })
 }
 
 /// The change for a constant departure of 1 felt by light.

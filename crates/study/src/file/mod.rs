@@ -2,6 +2,7 @@
 
 mod background;
 mod blinding;
+mod design;
 mod fiducial;
 mod hypothesis;
 mod joint_prior;
@@ -22,6 +23,7 @@ use toml_edit::Document;
 
 pub use background::{BackgroundSection, PowerChoice, PredictionSection};
 pub use blinding::BlindingSection;
+pub use design::{BinDesignSection, DesignSection};
 pub use fiducial::FiducialSection;
 pub use hypothesis::{HypothesisSection, Shape};
 pub use joint_prior::JointPriorSection;

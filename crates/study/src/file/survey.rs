@@ -7,6 +7,7 @@ use oddwell_model::SightLine;
 
 use toml_edit::{Item, Value};
 
+use super::design::{BinDesignSection, DesignSection};
 use super::fiducial::FiducialSection;
 use super::keep::KeepSection;
 use super::quantity::Quantity;
@@ -19,7 +20,7 @@ use crate::fault::Fault;
 pub struct SurveySection {
     /// The first part of its parameters' names.
     pub name: Located<String>,
-    /// Path of the table of multipoles, as written.
+    /// Path of the table of multipoles, as written; where only a design is given, the name that `simulate` gives it.
     pub multipoles: Located<String>,
     /// Path of the covariance, as written; none: the table's `error` column.
     pub covariance: Option<Located<String>>,
@@ -41,6 +42,8 @@ pub struct SurveySection {
     pub window_rows: Option<Located<String>>,
     /// Rows that pass any entry are kept; empty: all of them.
     pub keep: Vec<KeepSection>,
+    /// `[survey.design]`: how the survey is made, for `simulate` to draw from.
+    pub design: Option<DesignSection>,
     /// `[survey.columns]`: our column name → the table's header.
     pub columns: BTreeMap<String, Located<String>>,
     /// The redshift bins.
@@ -61,6 +64,8 @@ pub struct BinSection {
     pub growth_rate: Option<Located<Quantity>>,
     /// df/dln a of this bin; given exactly where `growth_rate` is.
     pub growth_slope: Option<Located<Quantity>>,
+    /// How much of the bin is seen, and how densely; given where the survey has a design.
+    pub design: Option<BinDesignSection>,
     /// The first tracer.
     pub first: TracerSection,
     /// The second tracer.
@@ -88,7 +93,13 @@ const UNITS: [(&str, LengthUnit); 2] =
 impl SurveySection {
     pub(super) fn read(section: Section<'_>) -> Option<Self> {
         let name = section.required_text("name", "\"my-survey\"");
-        let multipoles = section.required_text("multipoles", "\"multipoles.csv\"");
+        let design = DesignSection::read(&section);
+        let multipoles = match (&name, &design, section.find("multipoles")) {
+            (Some(name), Some(Some(_)), None) => {
+                Some(Located::default_of(format!("{}-multipoles.csv", name.value)))
+            }
+            _ => section.required_text("multipoles", "\"multipoles.csv\""),
+        };
         let covariance = section.text("covariance", "\"covariance.csv\"");
         let covariance_rows = section.text("covariance_rows", "\"rows.csv\"");
         let mock_count = section.count("mock_count", (2, u64::from(u32::MAX)), "at least 2", "600");
@@ -144,6 +155,7 @@ impl SurveySection {
             window,
             window_rows,
             keep: keep.into_iter().collect::<Option<_>>()?,
+            design: design?,
             columns,
             bins: bins.into_iter().collect::<Option<_>>()?,
         })
@@ -166,6 +178,7 @@ impl BinSection {
         let offset = section.quantity_or("offset", 0.0);
         let growth_rate = section.quantity("growth_rate");
         let growth_slope = section.quantity("growth_slope");
+        let design = BinDesignSection::read(&section);
         let first = TracerSection::read(&section, "first");
         let second = TracerSection::read(&section, "second");
         section.finish();
@@ -175,6 +188,7 @@ impl BinSection {
             offset: offset?,
             growth_rate,
             growth_slope,
+            design: design?,
             first: first?,
             second: second?,
         })

@@ -3,6 +3,7 @@
 mod affine;
 mod checker;
 mod departure;
+mod design;
 mod hypothesis;
 mod link;
 mod names;

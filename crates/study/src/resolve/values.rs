@@ -4,6 +4,7 @@ use oddwell_likelihood::noise_families;
 
 use super::Entry;
 use super::checker::Checker;
+use super::design;
 use super::redshifts;
 use crate::fault::Fault;
 use crate::file::{Quantity, StudyFile};
@@ -92,6 +93,7 @@ pub(super) fn check_surveys(file: &StudyFile, checker: &mut Checker<'_>) {
             way_out,
         };
         redshifts::check(survey, checker);
+        design::check(survey, checker);
         let way_out =
             "the window's columns are predicted rows: give the table that names them, and the matrix";
         match (&survey.window, &survey.window_rows) {
