@@ -70,6 +70,11 @@ impl CompressedLikelihood {
         Ok(Self { blocks, floor, coefficients: kernels.ncols(), noise: survey.shared_noise() })
     }
 
+    /// The independent parts.
+    pub(crate) fn blocks(&self) -> &[Block] {
+        &self.blocks
+    }
+
     /// Number of coefficients, whether they matter or not.
     pub fn coefficients(&self) -> usize {
         self.coefficients

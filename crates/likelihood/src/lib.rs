@@ -22,6 +22,7 @@ mod fisher;
 mod goodness;
 mod header;
 mod information;
+mod integrated;
 mod joint;
 mod keep;
 mod mocks;
@@ -52,6 +53,7 @@ pub use header::IgnoredColumn;
 pub use information::{
     allowed_shift, inverse_information, posterior_covariance, share_of_effective_parameters,
 };
+pub use integrated::{IntegratedScratch, IntegratedSet, IntegrationError, LinearPrior};
 pub use joint::JointSurvey;
 pub use keep::{Keep, Kept, keep_rows};
 pub use mocks::{MockError, MockSet, MockTables, read_mock_tables, read_mocks};

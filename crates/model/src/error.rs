@@ -39,6 +39,14 @@ pub enum ModelError {
         /// Largest stretch, either way.
         limit: f64,
     },
+    /// A quantity that was to be taken as linear, and is not.
+    #[error(
+        "`{name}` does not enter the prediction linearly: only linear quantities can be integrated out; sample it"
+    )]
+    NotLinear {
+        /// The quantity.
+        name: String,
+    },
     /// A setup that can't be predicted.
     #[error("{what} = {value}: {rule}; {way_out}")]
     Setup {
@@ -67,6 +75,6 @@ impl ModelError {
     /// Whether another point of parameter space may well have a prediction: then a sampler rejects the step and goes on.
     #[must_use]
     pub fn is_recoverable(&self) -> bool {
-        !matches!(self, ModelError::Setup { .. })
+        !matches!(self, ModelError::Setup { .. } | ModelError::NotLinear { .. })
     }
 }

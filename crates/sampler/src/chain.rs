@@ -33,7 +33,8 @@ pub struct Chain {
     pub diagnostics: Vec<ParameterDiagnostics>,
     /// Proposals and acceptances of every move, after warm-up.
     pub acceptance: Vec<MoveAcceptance>,
-    /// Evaluations of the likelihood from the first to the last, peak search and warm-up included.
+    /// Evaluations of the likelihood from the first to the last, peak search and warm-up included; the completion of draws,
+    /// where quantities were integrated out, is not counted.
     pub evaluations: u64,
     /// Of these, evaluations of the peak search.
     pub peak_evaluations: u64,
@@ -45,9 +46,9 @@ pub struct Chain {
     pub threads: usize,
     /// Why the run ended, and what is still missing.
     pub outcome: Outcome,
-    /// The peak it started from.
+    /// The peak it started from; `None` where quantities were integrated out, or nothing was searched.
     pub peak: Option<Peak>,
-    /// The highest point that any walker visited, warm-up included.
+    /// The highest point that any walker visited, warm-up included; of completed draws, the highest draw.
     pub best: BestPoint,
 }
 

@@ -1,7 +1,11 @@
 //! What is remembered of a run: every step at first, every second, fourth, … once memory runs short.
 
 use crate::diagnostics::Shape;
-use crate::ensemble::Ensemble;
+use crate::ensemble::{Ensemble, Fatal};
+use crate::moves::Random;
+use crate::target::{EvaluationFailure, Target};
+use rand::SeedableRng;
+use rayon::prelude::*;
 use serde::{Deserialize, Serialize};
 
 /// The remembered steps of all ensembles.
@@ -11,6 +15,8 @@ use serde::{Deserialize, Serialize};
 #[derive(Debug, Clone, Serialize, Deserialize)]
 pub(crate) struct History {
     dimension: usize,
+    /// Numbers of a completed draw, where quantities were integrated out.
+    completed_dimension: Option<usize>,
     walkers: usize,
     maximum_draws: usize,
     pub(crate) thinning: u64,
@@ -21,6 +27,16 @@ pub(crate) struct History {
 /// The remembered steps of one ensemble, step after step, walker after walker.
 #[derive(Debug, Clone, Default, Serialize, Deserialize)]
 pub(crate) struct Record {
+    pub(crate) points: Vec<f64>,
+    pub(crate) log_prior: Vec<f64>,
+    pub(crate) log_likelihood: Vec<f64>,
+    /// The first steps' draws with the quantities that were integrated out drawn back.
+    pub(crate) completed: Completed,
+}
+
+/// Completed draws, row by row.
+#[derive(Debug, Clone, Default, Serialize, Deserialize)]
+pub(crate) struct Completed {
     pub(crate) points: Vec<f64>,
     pub(crate) log_prior: Vec<f64>,
     pub(crate) log_likelihood: Vec<f64>,
@@ -35,11 +51,65 @@ impl Record {
     }
 
     /// Keeps the steps whose index `keep` accepts; a step is `walkers` rows of `dimension` coordinates.
-    fn retain(&mut self, steps: usize, walkers: usize, dimension: usize, keep: impl Fn(usize) -> bool) {
+    fn retain(
+        &mut self,
+        steps: usize,
+        walkers: usize,
+        (dimension, completed_dimension): (usize, usize),
+        keep: impl Fn(usize) -> bool,
+    ) {
         retain_blocks(&mut self.points, steps, walkers * dimension, &keep);
         retain_blocks(&mut self.log_prior, steps, walkers, &keep);
         retain_blocks(&mut self.log_likelihood, steps, walkers, &keep);
+        let completed = &mut self.completed;
+        let steps = completed.log_prior.len() / walkers;
+        retain_blocks(&mut completed.points, steps, walkers * completed_dimension, &keep);
+        retain_blocks(&mut completed.log_prior, steps, walkers, &keep);
+        retain_blocks(&mut completed.log_likelihood, steps, walkers, &keep);
     }
+
+    /// Completes the steps that are not yet. A draw depends on the point, seed, ensemble, walker and step alone.
+    fn complete<T: Target>(
+        &mut self,
+        target: &T,
+        kept_steps: &[u64],
+        (walkers, dimension, completed_dimension): (usize, usize, usize),
+        (seed, ensemble): (u64, usize),
+        scratch: &mut T::Scratch,
+    ) -> Result<(), Fatal> {
+        let completed = &mut self.completed;
+        let done = completed.log_prior.len();
+        completed.points.resize(self.log_prior.len() * completed_dimension, 0.0);
+        let points = self.points.chunks_exact(dimension).skip(done);
+        let draws = completed.points.chunks_exact_mut(completed_dimension).skip(done);
+        for (row, (point, draw)) in (done..).zip(points.zip(draws)) {
+            let mut random = stream_of_draw(seed, ensemble, row % walkers, kept_steps[row / walkers]);
+            let (log_prior, log_likelihood) =
+                target.complete(point, &mut random, scratch, draw).map_err(|failure| match failure {
+                    EvaluationFailure::Rejected { reason } | EvaluationFailure::Fatal { reason } => {
+                        Fatal { reason, point: point.to_vec() }
+                    }
+                })?;
+            completed.log_prior.push(log_prior);
+            completed.log_likelihood.push(log_likelihood);
+        }
+        Ok(())
+    }
+}
+
+/// The random stream of one draw: so it does not matter when, nor whether others, are completed.
+pub(crate) fn stream_of_draw(seed: u64, ensemble: usize, walker: usize, step: u64) -> Random {
+    // Steele, Lea & Flood 2014 (OOPSLA): each stage is a bijection that spreads every bit.
+    let mix = |state: u64| {
+        let state = (state ^ (state >> 30)).wrapping_mul(0xbf58_476d_1ce4_e5b9);
+        let state = (state ^ (state >> 27)).wrapping_mul(0x94d0_49bb_1331_11eb);
+        state ^ (state >> 31)
+    };
+    let parts = [seed, ensemble as u64, walker as u64, step];
+    let key = parts.iter().fold(0x9e37_79b9_7f4a_7c15, |key: u64, part| {
+        mix(key.wrapping_add(*part).wrapping_add(0x9e37_79b9_7f4a_7c15))
+    });
+    Random::seed_from_u64(key)
 }
 
 fn retain_blocks(values: &mut Vec<f64>, blocks: usize, size: usize, keep: &impl Fn(usize) -> bool) {
@@ -55,15 +125,48 @@ fn retain_blocks(values: &mut Vec<f64>, blocks: usize, size: usize, keep: &impl 
 
 impl History {
     /// An empty history.
-    pub(crate) fn new(ensembles: usize, walkers: usize, dimension: usize, maximum_draws: usize) -> Self {
+    pub(crate) fn new(
+        ensembles: usize,
+        walkers: usize,
+        (dimension, completed_dimension): (usize, Option<usize>),
+        maximum_draws: usize,
+    ) -> Self {
         Self {
             dimension,
+            completed_dimension,
             walkers,
             maximum_draws,
             thinning: 1,
             kept_steps: vec![],
             records: vec![Record::default(); ensembles],
         }
+    }
+
+    /// Numbers a row: of a point, and of a completed draw.
+    fn sizes(&self) -> (usize, usize) {
+        (self.dimension, self.completed_dimension.unwrap_or(0))
+    }
+
+    /// Completes every draw that is not yet, where quantities were integrated out.
+    pub(crate) fn complete<T: Target>(
+        &mut self,
+        target: &T,
+        seed: u64,
+        scratches: &mut [T::Scratch],
+    ) -> Result<(), Fatal> {
+        let Some(completed_dimension) = self.completed_dimension else { return Ok(()) };
+        let sizes = (self.walkers, self.dimension, completed_dimension);
+        let kept_steps = &self.kept_steps;
+        let results: Vec<Result<(), Fatal>> = self
+            .records
+            .par_iter_mut()
+            .zip(scratches.par_iter_mut())
+            .enumerate()
+            .map(|(ensemble, (record, scratch))| {
+                record.complete(target, kept_steps, sizes, (seed, ensemble), scratch)
+            })
+            .collect();
+        results.into_iter().collect()
     }
 
     /// Number of remembered steps.
@@ -80,11 +183,12 @@ impl History {
     pub(crate) fn extend_to(&mut self, from: u64, to: u64) {
         self.kept_steps.extend((from + 1..=to).filter(|step| step.is_multiple_of(self.thinning)));
         while self.steps() * self.walkers * self.records.len() > self.maximum_draws && self.steps() > 8 {
+            let sizes = self.sizes();
             self.thinning *= 2;
             let (kept, thinning) = (std::mem::take(&mut self.kept_steps), self.thinning);
             for record in &mut self.records {
                 let keep = |index: usize| kept[index].is_multiple_of(thinning);
-                record.retain(kept.len(), self.walkers, self.dimension, keep);
+                record.retain(kept.len(), self.walkers, sizes, keep);
             }
             self.kept_steps = kept.into_iter().filter(|step| step.is_multiple_of(thinning)).collect();
         }
@@ -92,8 +196,9 @@ impl History {
 
     /// Forgets the first `count` remembered steps.
     pub(crate) fn drop_first(&mut self, count: usize) {
+        let sizes = self.sizes();
         for record in &mut self.records {
-            record.retain(self.kept_steps.len(), self.walkers, self.dimension, |index| index >= count);
+            record.retain(self.kept_steps.len(), self.walkers, sizes, |index| index >= count);
         }
         self.kept_steps.drain(..count);
     }
@@ -108,16 +213,20 @@ impl History {
         }
     }
 
-    /// Every parameter's values, and the log posterior's.
+    /// Every parameter's values, and the log posterior's: of the points, or where all of them are completed, of these draws.
     pub(crate) fn columns(&self) -> Columns {
         let shape = self.shape();
+        let completed = |record: &Record| record.completed.log_prior.len() == record.log_prior.len();
+        let completed = self.completed_dimension.filter(|_| self.records.iter().all(completed));
+        let dimension = completed.unwrap_or(self.dimension);
         let mut parameters: Vec<Vec<f64>> =
-            (0..self.dimension).map(|_| Vec::with_capacity(shape.rows())).collect();
+            (0..dimension).map(|_| Vec::with_capacity(shape.rows())).collect();
         for record in &self.records {
+            let points = if completed.is_some() { &record.completed.points } else { &record.points };
             // Row by row in blocks that stay in the fastest cache, rather than column by column across all memory.
-            for block in record.points.chunks(self.dimension * 64) {
+            for block in points.chunks(dimension * 64) {
                 for (at, values) in parameters.iter_mut().enumerate() {
-                    values.extend(block[at..].iter().step_by(self.dimension));
+                    values.extend(block[at..].iter().step_by(dimension));
                 }
             }
         }

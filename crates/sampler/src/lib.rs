@@ -5,6 +5,7 @@
 
 mod chain;
 pub mod diagnostics;
+mod direct;
 mod ensemble;
 mod error;
 mod history;

@@ -1,6 +1,7 @@
 //! The loop of a run: rounds, checks, and when to stop.
 
 use crate::chain::{Chain, StopReason};
+use crate::direct::draw_directly;
 use crate::ensemble::{Fatal, Lane};
 use crate::error::SamplerError;
 use crate::moves::Mixture;
@@ -36,6 +37,9 @@ const WARM_UP_GROWTH: f64 = 1.3;
 /// are made at lengths that grow geometrically. `priors` must be the prior of `target`: it gives scales, bounds and
 /// starting points, while the density that is sampled is `target`'s alone.
 ///
+/// Where the target has quantities integrated out, their draws are completed at the checks, and the tests and
+/// `settings.watched` are about completed draws. With nothing left to sample, the draws are independent ones.
+///
 /// # Errors
 /// [`SamplerError::Setting`], such as for 1 ensemble or 7 walkers; [`SamplerError::Dimension`]; [`SamplerError::NoStart`];
 /// [`SamplerError::Evaluation`] after a fatal failure, with the draws until then; [`SamplerError::Stopped`] if the
@@ -47,7 +51,10 @@ pub fn sample<T: Target>(
     callback: &mut dyn FnMut(&Progress) -> Control,
 ) -> Result<Chain, SamplerError> {
     let clock = Instant::now();
-    settings.check(priors.dimension())?;
+    if target.completed_dimension().is_some() && priors.dimension() == 0 {
+        return draw_directly(target, settings, clock, callback);
+    }
+    settings.check(priors.dimension(), target.completed_dimension())?;
     let mut report = Progress {
         phase: Phase::Peak,
         evaluations: 0,
@@ -85,6 +92,12 @@ impl RunState {
         let mut lanes: Vec<Vec<Lane<T::Scratch>>> = (0..self.ensembles.len())
             .map(|_| (0..lanes_each).map(|_| Lane::new(target.scratch(), dimension, moves)).collect())
             .collect();
+        let mut scratches: Vec<T::Scratch> = (0..self.ensembles.len()).map(|_| target.scratch()).collect();
+        let evaluation = |fatal: Fatal, partial: Option<Chain>| SamplerError::Evaluation {
+            reason: fatal.reason,
+            point: fatal.point,
+            partial: partial.map(Box::new),
+        };
         let mut round = 1;
         let mut last_check = None;
         let stopped_by = loop {
@@ -95,16 +108,19 @@ impl RunState {
             let count = round.min(self.next_check - self.steps).min(affordable);
             let began = Instant::now();
             if let Some(fatal) = self.advance(target, &mixture, &mut lanes, count) {
-                let Fatal { reason, point } = fatal;
+                let ending = (StopReason::Failure, None);
                 let partial = (self.history.steps() > 0)
-                    .then(|| Box::new(self.finish(StopReason::Failure, None, clock.elapsed().as_secs_f64())));
-                return Err(SamplerError::Evaluation { reason, point, partial });
+                    .then(|| self.finish(target, &mut scratches, ending, clock).ok())
+                    .flatten();
+                return Err(evaluation(fatal, partial));
             }
             let pace = began.elapsed().as_secs_f64() / count as f64;
             round = ((ROUND.as_secs_f64() / pace) as u64).clamp(1, (2 * round).max(16));
             last_check = None;
             if self.steps >= self.next_check {
-                let verdict = self.check(&mut report);
+                let verdict = self
+                    .check(target, &mut scratches, &mut report)
+                    .map_err(|fatal| evaluation(fatal, None))?;
                 mixture = Mixture::new(&self.fit, &self.weights)?;
                 let done = verdict.as_ref().is_some_and(|verdict| verdict.failing.is_empty());
                 last_check = verdict;
@@ -123,11 +139,20 @@ impl RunState {
         if self.history.steps() == 0 {
             return Err(SamplerError::Stopped);
         }
-        Ok(self.finish(stopped_by, last_check, clock.elapsed().as_secs_f64()))
+        self.finish(target, &mut scratches, (stopped_by, last_check), clock)
+            .map_err(|fatal| evaluation(fatal, None))
     }
 
     /// Looks for the end of warm-up, then applies the tests; sets the step of the next check. Depends on the chain alone.
-    fn check(&mut self, report: &mut Progress) -> Option<Verdict> {
+    fn check<T: Target>(
+        &mut self,
+        target: &T,
+        scratches: &mut [T::Scratch],
+        report: &mut Progress,
+    ) -> Result<Option<Verdict>, Fatal> {
+        if self.warm_up.is_some() {
+            self.history.complete(target, self.settings.seed, scratches)?;
+        }
         let mut columns = self.history.columns();
         match self.warm_up {
             Some(_) if self.proposals_went_wrong() => {
@@ -171,6 +196,6 @@ impl RunState {
             verdict = (self.history.steps() > 0).then_some(found);
         }
         self.next_check = (self.steps as f64 * growth).ceil() as u64;
-        verdict
+        Ok(verdict)
     }
 }

@@ -68,7 +68,8 @@ impl EnsembleSettings {
     }
 
     /// Refuses settings that cannot work for `dimension` coordinates.
-    pub(crate) fn check(&self, dimension: usize) -> Result<(), SamplerError> {
+    pub(crate) fn check(&self, dimension: usize, completed: Option<usize>) -> Result<(), SamplerError> {
+        let numbers = completed.unwrap_or(dimension);
         let wrong = |setting, rule: String, value: String, way_out| {
             Err(SamplerError::Setting { setting, rule, value, way_out })
         };
@@ -81,9 +82,9 @@ impl EnsembleSettings {
             let way_out = "leave it out to have it chosen from the dimension";
             return wrong("walkers", format!("even and at least {least}"), walkers.to_string(), way_out);
         }
-        if let Some(watched) = self.watched.iter().find(|watched| **watched >= dimension) {
+        if let Some(watched) = self.watched.iter().find(|watched| **watched >= numbers) {
             let way_out = "parameters are counted from 0";
-            return wrong("watched", format!("below {dimension}"), watched.to_string(), way_out);
+            return wrong("watched", format!("below {numbers}"), watched.to_string(), way_out);
         }
         if !(self.effective_samples > 0.0 && self.effective_samples.is_finite()) {
             let way_out = "a few thousand suffice for intervals";

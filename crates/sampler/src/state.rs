@@ -1,6 +1,6 @@
 //! The state of a run: everything that determines how it goes on, advanced in rounds.
 
-use crate::chain::{Chain, MoveAcceptance, Outcome, RejectedEvaluations, StopReason};
+use crate::chain::{BestPoint, Chain, MoveAcceptance, Outcome, RejectedEvaluations, StopReason};
 use crate::ensemble::{Ensemble, Fatal, Lane, height};
 use crate::error::SamplerError;
 use crate::history::History;
@@ -14,6 +14,7 @@ use crate::target::Target;
 use nalgebra::DMatrix;
 use rayon::prelude::*;
 use serde::{Deserialize, Serialize};
+use std::time::Instant;
 
 /// The first check of the stop rule comes after this many steps.
 const FIRST_CHECK: u64 = 24;
@@ -56,7 +57,12 @@ impl RunState {
         Ok(Self {
             settings: settings.clone(),
             walkers,
-            history: History::new(settings.ensembles, walkers, priors.dimension(), settings.draws_at_most()),
+            history: History::new(
+                settings.ensembles,
+                walkers,
+                (priors.dimension(), target.completed_dimension()),
+                settings.draws_at_most(),
+            ),
             peak,
             ensembles,
             fit,
@@ -150,28 +156,29 @@ impl RunState {
     }
 
     /// Hands the draws over; the history is empty afterwards.
-    pub(crate) fn finish(
+    ///
+    /// # Errors
+    /// A draw that could not be completed.
+    pub(crate) fn finish<T: Target>(
         &mut self,
-        stopped_by: StopReason,
-        verdict: Option<Verdict>,
-        wall_seconds: f64,
-    ) -> Chain {
+        target: &T,
+        scratches: &mut [T::Scratch],
+        (stopped_by, verdict): (StopReason, Option<Verdict>),
+        clock: Instant,
+    ) -> Result<Chain, Fatal> {
         let settled = self.warm_up.is_some();
         if !settled {
             self.drop_first(self.history.steps() / 2);
         }
+        self.history.complete(target, self.settings.seed, scratches)?;
         let kept = self.evaluations_kept();
         let verdict = match verdict {
             Some(verdict) if verdict.diagnostics.is_some() => verdict,
             _ => full_check(&self.history.columns(), &self.settings, kept),
         };
         let mut rejected = RejectedEvaluations::default();
-        let mut best = self.ensembles[0].best.clone();
         for ensemble in &self.ensembles {
             rejected.merge(&ensemble.counts.rejected);
-            if height(&ensemble.best) > height(&best) {
-                best.clone_from(&ensemble.best);
-            }
         }
         let acceptance = self
             .weights
@@ -184,13 +191,26 @@ impl RunState {
             })
             .collect();
         let (mut points, mut log_prior, mut log_likelihood) = (vec![], vec![], vec![]);
+        let completed = target.completed_dimension();
         for record in &mut self.history.records {
-            points.append(&mut record.points);
-            log_prior.append(&mut record.log_prior);
-            log_likelihood.append(&mut record.log_likelihood);
+            if completed.is_some() {
+                let draws = &mut record.completed;
+                points.append(&mut draws.points);
+                log_prior.append(&mut draws.log_prior);
+                log_likelihood.append(&mut draws.log_likelihood);
+            } else {
+                points.append(&mut record.points);
+                log_prior.append(&mut record.log_prior);
+                log_likelihood.append(&mut record.log_likelihood);
+            }
         }
-        Chain {
-            dimension: self.peak.point.len(),
+        let dimension = completed.unwrap_or(self.peak.point.len());
+        let best = match completed {
+            Some(_) => highest_row(dimension, &points, &log_prior, &log_likelihood),
+            None => self.highest_visited(),
+        };
+        Ok(Chain {
+            dimension,
             ensembles: self.ensembles.len(),
             walkers: self.walkers,
             steps: self.steps,
@@ -205,7 +225,7 @@ impl RunState {
             evaluations: self.evaluations(),
             peak_evaluations: self.peak.evaluations,
             rejected,
-            wall_seconds,
+            wall_seconds: clock.elapsed().as_secs_f64(),
             threads: rayon::current_num_threads(),
             outcome: Outcome {
                 converged: settled && verdict.failing.is_empty(),
@@ -213,9 +233,35 @@ impl RunState {
                 settled,
                 failing: verdict.failing,
             },
-            peak: Some(self.peak.clone()),
+            peak: completed.is_none().then(|| self.peak.clone()),
             best,
+        })
+    }
+
+    fn highest_visited(&self) -> BestPoint {
+        let mut best = &self.ensembles[0].best;
+        for ensemble in &self.ensembles {
+            if height(&ensemble.best) > height(best) {
+                best = &ensemble.best;
+            }
         }
+        best.clone()
+    }
+}
+
+/// The highest of completed draws, of which there is at least one.
+pub(crate) fn highest_row(
+    dimension: usize,
+    points: &[f64],
+    log_prior: &[f64],
+    log_likelihood: &[f64],
+) -> BestPoint {
+    let heights = log_prior.iter().zip(log_likelihood).map(|(prior, likelihood)| prior + likelihood);
+    let row = heights.enumerate().max_by(|a, b| a.1.total_cmp(&b.1)).map_or(0, |(row, _)| row);
+    BestPoint {
+        point: points[row * dimension..(row + 1) * dimension].to_vec(),
+        log_prior: log_prior[row],
+        log_likelihood: log_likelihood[row],
     }
 }
 

@@ -1,5 +1,6 @@
 //! What is sampled: a log prior and a log likelihood over points of a fixed dimension.
 
+use crate::moves::Random;
 use thiserror::Error;
 
 /// A posterior density to explore: prior times likelihood over `dimension()` real numbers.
@@ -28,6 +29,27 @@ pub trait Target: Sync {
     /// [`EvaluationFailure::Fatal`] where going on makes no sense. A returned NaN or +∞ counts as rejected; −∞ is a
     /// likelihood of zero.
     fn log_likelihood(&self, point: &[f64], scratch: &mut Self::Scratch) -> Result<f64, EvaluationFailure>;
+
+    /// Numbers of a completed draw, for a target with quantities integrated out that are drawn back for the chain; `None`
+    /// where a draw is the point itself.
+    fn completed_dimension(&self) -> Option<usize> {
+        None
+    }
+
+    /// Draws the quantities that were integrated out, given `point`, and writes the completed draw. Returns its own log prior
+    /// and log likelihood.
+    ///
+    /// # Errors
+    /// As [`Target::log_likelihood`]; by default always, since nothing was integrated out.
+    fn complete(
+        &self,
+        _point: &[f64],
+        _random: &mut Random,
+        _scratch: &mut Self::Scratch,
+        _draw: &mut [f64],
+    ) -> Result<(f64, f64), EvaluationFailure> {
+        Err(EvaluationFailure::Fatal { reason: "no quantity was integrated out".to_owned() })
+    }
 }
 
 /// Why an evaluation gave no likelihood.

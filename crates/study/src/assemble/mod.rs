@@ -2,6 +2,7 @@
 
 mod domain;
 mod elsewhere;
+mod integrated;
 mod matrix_file;
 mod measurements;
 mod posterior;
@@ -10,6 +11,7 @@ mod projection;
 mod window;
 
 pub(crate) use elsewhere::predict_elsewhere;
+pub use integrated::{IntegratedPosterior, IntegratedPosteriorScratch};
 pub use measurements::{Measurements, SurveyMeasurements, read_measurements};
 pub(crate) use posterior::model_setup;
 pub use posterior::{Posterior, PosteriorScratch};

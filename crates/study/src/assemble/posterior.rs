@@ -247,11 +247,41 @@ impl Posterior {
 
     fn any_log_likelihood(&self, point: &[f64], scratch: &mut PosteriorScratch) -> Result<f64, ModelError> {
         let Some(compressed) = &self.compressed else { return self.plain_log_likelihood(point, scratch) };
+        Ok(compressed.log_likelihood(self.fill_coefficients(point, scratch)?.coefficients))
+    }
+
+    /// The compressed data, where the kernels are fixed.
+    pub(super) fn compressed(&self) -> Option<&CompressedSet> {
+        self.compressed.as_ref()
+    }
+
+    /// The coefficients of the kernels at a point.
+    pub(super) fn fill_coefficients<'s>(
+        &self,
+        point: &[f64],
+        scratch: &'s mut PosteriorScratch,
+    ) -> Result<Coefficients<'s>, ModelError> {
         let PosteriorScratch { values, coefficients, workspace, .. } = scratch;
         self.map.fill(point, values);
         self.domain.check(values)?;
         self.model.coefficients(values, workspace, coefficients)?;
-        Ok(compressed.log_likelihood(coefficients))
+        Ok(Coefficients { coefficients, inputs: (values, workspace) })
+    }
+}
+
+/// Coefficients of the kernels, and the quantities and working memory that they were made with.
+pub(super) struct Coefficients<'s> {
+    pub(super) coefficients: &'s [f64],
+    pub(super) inputs: (&'s mut [f64], &'s Workspace),
+}
+
+/// What a sampler makes of a model that has no prediction.
+pub(super) fn failure(error: ModelError) -> EvaluationFailure {
+    let reason = error.to_string();
+    if error.is_recoverable() {
+        EvaluationFailure::Rejected { reason }
+    } else {
+        EvaluationFailure::Fatal { reason }
     }
 }
 
@@ -282,13 +312,6 @@ impl Target for Posterior {
         point: &[f64],
         scratch: &mut PosteriorScratch,
     ) -> Result<f64, EvaluationFailure> {
-        self.any_log_likelihood(point, scratch).map_err(|error| {
-            let reason = error.to_string();
-            if error.is_recoverable() {
-                EvaluationFailure::Rejected { reason }
-            } else {
-                EvaluationFailure::Fatal { reason }
-            }
-        })
+        self.any_log_likelihood(point, scratch).map_err(failure)
     }
 }

@@ -5,6 +5,7 @@ mod clocks;
 mod general_relativity;
 mod goodness;
 mod mimics;
+mod sampling;
 mod summary;
 mod suspicions;
 mod switched_off;
@@ -16,7 +17,7 @@ use crate::record::{Manifest, Summary};
 use crate::resolve::{Hypothesis, Study};
 use crate::run_directory::RunDirectory;
 use crate::run_error::RunError;
-use oddwell_sampler::{Control, EnsembleSettings, Progress, SamplerError, StopReason, Target, sample};
+use oddwell_sampler::{Control, EnsembleSettings, Progress, SamplerError, StopReason, Target};
 use std::path::{Path, PathBuf};
 use time::OffsetDateTime;
 use time::format_description::well_known::Rfc3339;
@@ -102,7 +103,7 @@ pub fn fit(
         ..EnsembleSettings::default()
     };
     let names = posterior.map.names().to_vec();
-    let chain = sample(&posterior, &posterior.priors, &settings, &mut |state| progress(state, &names))?;
+    let chain = sampling::chain_of(&posterior, &settings, &mut |state| progress(state, &names))?;
     let (mut summary, derived) = summary::summarise(study, &posterior, &measurements, &chain, settings.seed)?;
     if study.file.blinding.is_some() {
         withhold(&mut summary);

@@ -1,0 +1,26 @@
+//! From a posterior to its chain: with linear quantities integrated out where that pays.
+
+use crate::assemble::{IntegratedPosterior, Posterior};
+use crate::run_error::RunError;
+use oddwell_sampler::{
+    Chain, Control, EnsembleSettings, PeakSettings, Progress, Target, find_peak_with, sample,
+};
+
+/// Samples the posterior. The chain is one of all free parameters, each row with the log prior and log likelihood of its
+/// point, however it was drawn.
+pub(super) fn chain_of(
+    posterior: &Posterior,
+    settings: &EnsembleSettings,
+    progress: &mut dyn FnMut(&Progress) -> Control,
+) -> Result<Chain, RunError> {
+    let Some(integrated) = IntegratedPosterior::new(posterior)?.filter(IntegratedPosterior::pays) else {
+        return Ok(sample(posterior, &posterior.priors, settings, progress)?);
+    };
+    let mut chain = sample(&integrated, &integrated.priors, settings, progress)?;
+    // The highest point of the full posterior, from the highest draw.
+    let visited: Vec<f64> = integrated.sampled().iter().map(|&of| chain.best.point[of]).collect();
+    let start = integrated.most_probable(&visited, &mut integrated.scratch())?;
+    let near = PeakSettings { seed: settings.seed, draws: 0, climbs: 1, starting_points: vec![start] };
+    chain.peak = Some(find_peak_with(posterior, &posterior.priors, &near, &mut |_| Control::Continue)?);
+    Ok(chain)
+}
