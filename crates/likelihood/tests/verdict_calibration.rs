@@ -13,7 +13,7 @@ use common::generator;
 use oddwell_likelihood::Covariance;
 use oddwell_likelihood::verdicts::{
     Comparison, amplitude, covariance_scale, duplicate, goodness, normality, orientation, parity_block,
-    row_order, signal, whitened_residuals,
+    preference, row_order, signal, whitened_residuals,
 };
 use simulation::{World, binomial_error, distance_from_uniform, share_below};
 use statrs::distribution::{ContinuousCDF, Normal};
@@ -180,6 +180,31 @@ fn bounds_are_kept() {
     world.expectation.prediction *= (6.0 / apart).sqrt();
     let turned = over_draws(&world, 12, |comparison| orientation(comparison, &all).unwrap().p_value);
     assert!(share_below(&turned, 0.05) > 0.002 && share_below(&turned, 0.05) < 0.014);
+}
+
+/// Known covariance, nothing free: the difference is normal about the squared distance q with variance 4q, so the bound of
+/// 5 % is met with probability Φ(−(q + 6)/2√q) = Φ(−√6) = 0.7 % at q = 6.
+#[test]
+fn another_prediction_is_preferred_as_rarely_as_it_says() {
+    for (parameters, mocks) in [(0, None), (3, None), (2, Some(40))] {
+        let world = World::new(16, 0.8, parameters, 0.7, mocks, &mut generator(106));
+        let other = &world.expectation.prediction * 0.4;
+        let found = over_draws(&world, 107, |comparison| preference(comparison, &other).unwrap().p_value);
+        check_bound(&found, &format!("preference, {parameters}, {mocks:?}"));
+    }
+    let world = World::new(16, 1.0, 0, 0.0, None, &mut generator(108));
+    let apart =
+        preference(&world.comparison(&mut generator(109)), &(&world.expectation.prediction * 0.5)).unwrap();
+    let share = 1.0 - 0.5 * (6.0 / apart.expected).sqrt();
+    let other = &world.expectation.prediction * share;
+    let found = over_draws(&world, 110, |comparison| preference(comparison, &other).unwrap().p_value);
+    assert!(share_below(&found, 0.05) > 0.002 && share_below(&found, 0.05) < 0.014);
+    // Where the other is right it is preferred.
+    let other = &world.expectation.prediction * 3.0;
+    let mut random = generator(111);
+    let data = world.data(&mut random) + &other - &world.expectation.prediction;
+    let found = preference(&world.with(data, &mut random), &other).unwrap();
+    assert!(found.difference < -0.5 * found.expected && found.p_value < 1e-3, "{found:?}");
 }
 
 #[test]

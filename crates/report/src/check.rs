@@ -29,6 +29,8 @@ pub fn check_text(report: &CheckReport, style: Style) -> String {
             three_claims(verdicts, style),
             signals(verdicts, style),
             goodness(verdicts, style),
+            parity(verdicts, style),
+            redshifts(verdicts, style),
             budget(verdicts, style),
             equivalents(verdicts, style),
             limits(style),
@@ -101,6 +103,14 @@ fn amplitude(name: &str, verdict: &AmplitudeVerdict) -> String {
     wrapped("  ", 4, &format!("{name}: {value} ± {}{sigma}", two_digits(verdict.sd)))
 }
 
+/// `1.2 ± 3.4`, or the error alone while the value is withheld.
+fn short(verdict: &AmplitudeVerdict) -> String {
+    let error = two_digits(verdict.sd);
+    verdict
+        .value
+        .map_or_else(|| format!("± {error}"), |value| format!("{} ± {error}", rounded(value, verdict.sd)))
+}
+
 /// Three claims with three numbers: never one for another.
 fn three_claims(verdicts: &Verdicts, style: Style) -> String {
     let mut out = format!("{}\n", style.strong("Three claims, three numbers"));
@@ -131,16 +141,23 @@ fn three_claims(verdicts: &Verdicts, style: Style) -> String {
 }
 
 fn signals(verdicts: &Verdicts, style: Style) -> String {
-    let mut table = Table::new(&["", "rows", "signal-to-noise", "any signal"]);
-    for SignalVerdict { place, rows, signal_to_noise, sigma } in &verdicts.signals {
+    let mut table =
+        Table::new(&["", "rows", "signal-to-noise", "any signal", "gravitational redshift", "departure"]);
+    let known =
+        |verdict: &Option<AmplitudeVerdict>| verdict.as_ref().map_or_else(|| UNKNOWN.to_owned(), short);
+    for verdict in &verdicts.signals {
+        let SignalVerdict { place, rows, signal_to_noise, sigma, .. } = verdict;
         table.row(vec![
             place.clone(),
             count(*rows as u64),
             format!("{signal_to_noise:.1}"),
             deviations(*sigma),
+            known(&verdict.gravitational_redshift),
+            known(&verdict.departure),
         ]);
     }
-    let heading = style.strong("Signal, whatever it is");
+    let heading =
+        style.strong("Signal of each multipole of each bin: any, gravitational redshift, departure");
     format!("{heading}\n{}", table.render(|header| style.faint(header)))
 }
 
@@ -167,6 +184,67 @@ fn goodness(verdicts: &Verdicts, style: Style) -> String {
         )
     });
     format!("{heading}\n{}{normal}", table.render(|header| style.faint(header)))
+}
+
+/// Even multipoles where they do not belong.
+fn parity(verdicts: &Verdicts, style: Style) -> String {
+    if verdicts.leakage.is_empty() && verdicts.parity.is_empty() {
+        return String::new();
+    }
+    let mut out =
+        format!("{}\n", style.strong("Parity: even multipoles in odd ones, everything else marginalised"));
+    let mut table = Table::new(&["", "share", "from none"]);
+    for leak in &verdicts.leakage {
+        table.row(vec![
+            format!("{} multipole {} in {}", leak.bin, leak.from, leak.into),
+            short(&leak.share),
+            deviations(leak.share.sigma),
+        ]);
+    }
+    out.push_str(&table.render(|header| style.faint(header)));
+    for block in &verdicts.parity {
+        let difference = block.largest_difference.map_or_else(
+            || "what is expected is unknown without a [survey.design]".to_owned(),
+            |difference| format!("at most {difference:+.3} from what Gaussian fields would have"),
+        );
+        let p_value =
+            block.p_value.map_or_else(String::new, |p_value| format!(", p = {}", probability(p_value)));
+        let text = format!(
+            "correlations of odd with even multipoles in {}: {:+.3} at most ({} with {}), {difference}{p_value}",
+            block.bin, block.largest, block.rows[0], block.rows[1]
+        );
+        out.push_str(&wrapped("  ", 4, &text));
+    }
+    out
+}
+
+/// What each bin's redshift can stand for.
+fn redshifts(verdicts: &Verdicts, style: Style) -> String {
+    if verdicts.widths.is_empty() && verdicts.scale_factors.is_empty() {
+        return String::new();
+    }
+    let mut out = format!("{}\n", style.strong("Redshifts"));
+    let mut table = Table::new(&["", "one redshift will do up to a width of", "average over the bin"]);
+    for width in &verdicts.widths {
+        table.row(vec![
+            width.bin.clone(),
+            significant(width.widest, 2),
+            width.excess.map_or_else(|| UNKNOWN.to_owned(), |excess| format!("{:+.1} %", 100.0 * excess)),
+        ]);
+    }
+    if !verdicts.widths.is_empty() {
+        out.push_str(&table.render(|header| style.faint(header)));
+    }
+    let closest =
+        verdicts.scale_factors.iter().min_by(|one, other| one.difference.total_cmp(&other.difference));
+    if let Some(verdict) = closest {
+        let text = format!(
+            "were they scale factors: −2 ln L changes by {:+.1} or more ({}; about {:+.1} is expected of redshifts)",
+            verdict.difference, verdict.place, verdict.expected
+        );
+        out.push_str(&wrapped("  ", 4, &text));
+    }
+    out
 }
 
 fn budget(verdicts: &Verdicts, style: Style) -> String {
@@ -199,6 +277,7 @@ fn equivalents(verdicts: &Verdicts, style: Style) -> String {
 fn limits(style: Style) -> String {
     let text = "An odd signal is not gravitational redshift, and gravitational redshift is no departure from general \
                 relativity. A p-value says how often sound measurements would look like this, not how likely the \
-                measurements are sound. Nothing was sampled: numbers are linear about general relativity.";
+                measurements are sound. Nothing was sampled: numbers are linear about general relativity. What each warning \
+                looks at, and how often it arises where nothing is wrong: `oddwell manual check`.";
     format!("{}\n{}", style.strong("What this does not mean"), wrapped("  ", 2, text))
 }

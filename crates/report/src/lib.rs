@@ -13,7 +13,7 @@ mod text;
 
 pub use check::check_text;
 pub use closing::closing_summary;
-pub use manual::{manual_text, manual_topics};
+pub use manual::{manual_check, manual_text, manual_topics};
 pub use numbers::{count, duration, signed, significant, whole};
 pub use prediction::{EffectColumns, prediction_csv, prediction_json};
 pub use show::{show_json, show_table};

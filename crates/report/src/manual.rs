@@ -1,5 +1,6 @@
 //! The manual's pages as text.
 
+use oddwell_study::check::{KINDS, Rate, thresholds};
 use oddwell_study::{ManualPage, manual_pages};
 
 use crate::style::Style;
@@ -14,7 +15,25 @@ pub fn manual_topics(style: Style) -> String {
         let first = format!("  {}   ", padded(page.name, width));
         out.push_str(&wrapped(&first, width + 5, page.formula));
     }
+    out.push_str(&format!("\n{}\n", style.strong("Commands")));
+    out.push_str("  check   what each of its warnings looks at, and where it draws the line\n");
     out.push_str("\n`oddwell manual TOPIC` prints the page of one of them.\n");
+    out
+}
+
+/// The page of `check`: every kind of warning with its threshold.
+pub fn manual_check(style: Style) -> String {
+    let mut out = format!("{}\n\n{}", style.strong("oddwell check"), wrapped("  ", 2, &thresholds()));
+    for (rate, heading) in [
+        (Rate::Threshold, "As often as the threshold says, where nothing is wrong"),
+        (Rate::Below, "More rarely than the threshold says"),
+        (Rate::Never, "Never by chance"),
+    ] {
+        out.push_str(&format!("\n{}\n", style.strong(heading)));
+        for kind in KINDS.iter().filter(|kind| kind.rate == rate) {
+            out.push_str(&wrapped(&format!("  {}: ", kind.code), 4, kind.meaning));
+        }
+    }
     out
 }
 
@@ -94,6 +113,18 @@ mod tests {
             let widest = text.lines().chain(topics.lines()).map(UnicodeWidthStr::width).max();
             assert!(widest <= Some(PAGE), "{text}");
         }
+    }
+
+    #[test]
+    fn every_kind_of_warning_has_its_line() {
+        let text = manual_check(Style::Plain);
+        for kind in KINDS {
+            assert_eq!(text.matches(&format!("\n  {}: ", kind.code)).count(), 1, "{text}");
+        }
+        assert!(
+            text.contains("0.001") && text.lines().map(UnicodeWidthStr::width).max() <= Some(PAGE),
+            "{text}"
+        );
     }
 
     #[test]

@@ -1,7 +1,9 @@
 //! `oddwell manual [TOPIC]`
 
-use oddwell_report::{manual_text, manual_topics};
+use oddwell_report::{manual_check, manual_text, manual_topics};
+use oddwell_study::check::{KINDS, thresholds};
 use oddwell_study::{manual_page, manual_pages};
+use serde_json::{Value, json};
 
 use crate::ending::{Failure, Status};
 use crate::options::ManualArguments;
@@ -16,6 +18,16 @@ pub(super) fn run(arguments: &ManualArguments, output: &Output) -> Result<Status
         }
         return Ok(Status::Done);
     };
+    if topic == "check" {
+        if output.json {
+            let kinds: Vec<Value> =
+                KINDS.iter().map(|kind| json!({ "code": kind.code, "meaning": kind.meaning })).collect();
+            output.json_result(&json!({ "name": "check", "text": thresholds(), "warnings": kinds }))?;
+        } else {
+            output.result(&manual_check(output.style))?;
+        }
+        return Ok(Status::Done);
+    }
     let page = manual_page(topic)
         .map_err(|nearest| Failure::command_line(format!("the manual has no topic `{topic}`; {nearest}")))?;
     if output.json {

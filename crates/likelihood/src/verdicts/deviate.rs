@@ -28,6 +28,12 @@ pub(super) fn deviate_of_p(p: f64) -> f64 {
     }
 }
 
+/// The share of the standard normal distribution above `sigma`: the one-sided p-value of a number of standard deviations.
+#[must_use]
+pub fn upper_tail(sigma: f64) -> f64 {
+    Normal::standard().sf(sigma)
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -51,5 +57,7 @@ mod tests {
         }
         assert!((deviate_of_p(0.022750131948179195) - 2.0).abs() < 1e-12);
         assert_eq!(deviate_of_p(0.0), 38.0);
+        // SciPy too, to what the crate's complementary error function promises.
+        assert!((upper_tail(2.0) / 0.022750131948179195 - 1.0).abs() < 1e-9);
     }
 }

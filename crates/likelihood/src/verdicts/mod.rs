@@ -5,6 +5,7 @@
 //! Where a number is a p-value, it is uniform for sound data, or larger (said there); where it is a `sigma`, it is the
 //! standard normal deviate of such a p-value.
 
+mod alternative;
 mod amplitude;
 mod comparison;
 mod conditioning;
@@ -23,8 +24,10 @@ mod scale;
 mod signal;
 mod spectrum;
 
+pub use alternative::{Preference, preference};
 pub use amplitude::{Amplitude, amplitude, amplitude_error};
 pub use comparison::{Comparison, Expectation, VerdictError};
+pub use deviate::upper_tail;
 pub use duplicates::{Duplicate, duplicate};
 pub use error_budget::{BudgetEntry, error_budget};
 pub use goodness_of_fit::{Goodness, goodness};

@@ -62,8 +62,8 @@ const EFFECTS: [(&str, Switch); 3] = [
     ("lensing (switched off)", |effects| &mut effects.lensing),
 ];
 
-/// For each bin: what a unit, and a prior's standard deviation, of each nuisance and of each effect that is switched off is
-/// worth in τ felt by light: the projection of its change of the bin's rows on that of τ, in units of the noise.
+/// For each bin: what a unit, and a prior's standard deviation, of each nuisance (errors in common too) and of each effect that
+/// is switched off is worth in τ felt by light: the projection of its change of the bin's rows on that of τ, in units of the noise.
 pub(super) fn tau_equivalents(
     measurements: &Measurements,
     expected: &Expected,
@@ -118,6 +118,22 @@ pub(super) fn tau_equivalents(
             worths.push(TauEquivalent {
                 bin: path.clone(),
                 quantity: quantity.to_owned(),
+                per_unit,
+                per_prior_sd: (sd > 0.0).then_some(per_unit.abs() * sd),
+            });
+        }
+        // What is inferred and belongs to no bin: errors in common, background, growth.
+        for (parameter, name) in posterior.map.names().iter().enumerate() {
+            let of_a_bin = setup.bins.iter().any(|bin| name.starts_with(&format!("{}.", bin.path())));
+            if of_a_bin || expected.watched.contains(&parameter) {
+                continue;
+            }
+            let change: Vec<f64> = expected.expectation.jacobian.column(parameter).iter().copied().collect();
+            let Some(per_unit) = worth(&change) else { continue };
+            let sd = expected.expectation.prior_covariance[(parameter, parameter)].sqrt();
+            worths.push(TauEquivalent {
+                bin: path.clone(),
+                quantity: name.clone(),
                 per_unit,
                 per_prior_sd: (sd > 0.0).then_some(per_unit.abs() * sd),
             });

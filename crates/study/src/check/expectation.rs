@@ -6,7 +6,7 @@ use crate::run_error::RunError;
 use nalgebra::{DMatrix, DVector};
 use oddwell_likelihood::LikelihoodError;
 use oddwell_likelihood::verdicts::{Comparison, Expectation, VerdictError};
-use oddwell_model::{FeltBy, ModelSetup, departures};
+use oddwell_model::{FeltBy, Model, ModelSetup, Row, Workspace, departures};
 use oddwell_sampler::Target;
 
 /// The prediction in general relativity at the centre of the priors, and its derivatives.
@@ -18,6 +18,8 @@ pub(super) struct Expected {
     pub(super) expectation: Expectation,
     /// Measurements against that, with the departure held at general relativity.
     pub(super) comparison: Comparison,
+    /// The same with the departure as uncertain as its prior: for faults that a departure must not be taken for.
+    pub(super) open: Comparison,
     /// The change of the prediction for a constant departure of 1 felt by light: what gravitational redshift adds.
     pub(super) redshift: DVector<f64>,
     /// The departure's parameters.
@@ -59,10 +61,11 @@ impl Expected {
             prediction: DVector::from_vec(prediction),
             prior_covariance: prior_covariance(&posterior),
         };
-        let comparison = Comparison::new(&posterior.data, &expectation).map_err(in_all)?.holding(&watched);
+        let open = Comparison::new(&posterior.data, &expectation).map_err(in_all)?;
+        let comparison = open.clone().holding(&watched);
         let values = posterior.values(&centre);
         let redshift = DVector::from_vec(redshift_change(&posterior, &values)?);
-        Ok(Expected { posterior, values, expectation, comparison, redshift, watched })
+        Ok(Expected { posterior, values, expectation, comparison, open, redshift, watched })
     }
 }
 
@@ -117,6 +120,18 @@ pub(super) fn predict_with(
     predict_elsewhere(posterior, setup, &|name| {
         value(name, posterior.model.layout().index(name).map_or(0.0, |slot| values[slot]))
     })
+}
+
+/// The prediction of other rows by the same model, windows aside.
+pub(super) fn predict_rows(
+    posterior: &Posterior,
+    rows: Vec<Row>,
+    values: &[f64],
+) -> Result<Vec<f64>, RunError> {
+    let mut predicted = vec![0.0; rows.len()];
+    let model = Model::new(ModelSetup { rows, ..posterior.model.setup().clone() })?;
+    model.predict(values, &mut Workspace::new(), &mut predicted)?;
+    Ok(predicted)
 }
 
 /// The change for a constant departure of 1 felt by light.

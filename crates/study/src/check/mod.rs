@@ -6,15 +6,21 @@
 
 mod budget;
 mod expectation;
+mod kinds;
+mod parity;
+mod redshifts;
 mod suspicions;
 mod verdicts;
 
+pub use kinds::{KINDS, Kind, Rate, thresholds};
+pub use parity::{LeakageVerdict, ParityVerdict};
+pub use redshifts::{LARGEST_CURVATURE, ScaleFactorVerdict, WidthVerdict};
 pub use verdicts::{
     AmplitudeVerdict, BudgetLine, CovarianceVerdict, GoodnessVerdict, ModeVerdict, OrientationVerdict,
     SignalVerdict, SurveyVerdict, TauEquivalent, Verdicts,
 };
 
-use crate::assemble::read_measurements;
+use crate::assemble::{Measurements, read_measurements};
 use crate::record::WarningRecord;
 use crate::resolve::{Hypothesis, Study};
 use crate::run_error::RunError;
@@ -48,9 +54,22 @@ impl CheckReport {
 /// # Errors
 /// [`RunError`] where the study can't be read or predicted; turn it into [`CheckReport::of_errors`].
 pub fn check(study: &Study, hypothesis: &Hypothesis) -> Result<CheckReport, RunError> {
-    let measurements = read_measurements(study)?;
-    let expected = expectation::Expected::new(study, hypothesis, &measurements)?;
-    let verdicts = verdicts::verdicts(study, &measurements, &expected)?;
+    check_measurements(study, hypothesis, &read_measurements(study)?, ALARM)
+}
+
+/// Checks measurements that have been read, with another threshold than [`ALARM`]: a larger one finds more, and more often
+/// where nothing is.
+///
+/// # Errors
+/// [`RunError`] where the study can't be predicted.
+pub fn check_measurements(
+    study: &Study,
+    hypothesis: &Hypothesis,
+    measurements: &Measurements,
+    alarm: f64,
+) -> Result<CheckReport, RunError> {
+    let expected = expectation::Expected::new(study, hypothesis, measurements)?;
+    let verdicts = verdicts::verdicts(study, measurements, &expected)?;
     let mut warnings: Vec<WarningRecord> = measurements
         .warnings
         .iter()
@@ -60,6 +79,6 @@ pub fn check(study: &Study, hypothesis: &Hypothesis) -> Result<CheckReport, RunE
             place: warning.place().to_owned(),
         })
         .collect();
-    warnings.extend(suspicions::suspicions(study, &measurements, &expected, &verdicts)?);
+    warnings.extend(suspicions::suspicions(study, measurements, &expected, &verdicts, alarm)?);
     Ok(CheckReport { errors: Vec::new(), warnings, verdicts: Some(verdicts) })
 }

@@ -2,12 +2,15 @@
 
 use super::budget;
 use super::expectation::{Expected, in_all, in_survey};
+use super::parity::{LeakageVerdict, ParityVerdict, leakage_verdicts, parity_verdicts};
+use super::redshifts::{ScaleFactorVerdict, WidthVerdict, scale_factor_verdicts, width_verdicts};
 use crate::assemble::{Measurements, SurveyMeasurements};
 use crate::resolve::Study;
 use crate::run_error::RunError;
+use nalgebra::DVector;
 use oddwell_likelihood::verdicts::{
-    Comparison, Expectation, Goodness, amplitude, covariance_scale, goodness, mock_sufficiency, normality,
-    orientation, signal, spectrum,
+    Comparison, Expectation, Goodness, VerdictError, amplitude, covariance_scale, goodness, mock_sufficiency,
+    normality, orientation, signal, spectrum,
 };
 use serde::Serialize;
 
@@ -34,6 +37,14 @@ pub struct Verdicts {
     pub normality: Option<f64>,
     /// Whether the odd multipoles would fit better with the tracers swapped.
     pub orientation: Option<OrientationVerdict>,
+    /// Correlations between odd and even multipoles, by bin.
+    pub parity: Vec<ParityVerdict>,
+    /// Even multipoles in odd ones, by bin.
+    pub leakage: Vec<LeakageVerdict>,
+    /// Redshifts against scale factors, by bin and survey; empty while blinded.
+    pub scale_factors: Vec<ScaleFactorVerdict>,
+    /// The widths that bins may have, by bin.
+    pub widths: Vec<WidthVerdict>,
     /// The standard deviation of the departure that is expected from covariances and priors alone.
     pub expected_sd: Option<f64>,
     /// What it would be with each group of nuisances known.
@@ -94,6 +105,10 @@ pub struct SignalVerdict {
     pub signal_to_noise: f64,
     /// How surely there is anything, in standard deviations.
     pub sigma: Option<f64>,
+    /// Gravitational redshift in these rows alone, 1 in general relativity and 0 without; null where they do not see it.
+    pub gravitational_redshift: Option<AmplitudeVerdict>,
+    /// The departure in these rows alone, linear about general relativity; null where they do not see it.
+    pub departure: Option<AmplitudeVerdict>,
 }
 
 /// An amplitude with its error.
@@ -165,11 +180,34 @@ pub(super) fn verdicts(
     let places = places(measurements);
     let odd: Vec<usize> =
         (0..measurements.len()).filter(|&row| measurements.rows[row].multipole % 2 == 1).collect();
+    let sees_redshift = expected.redshift.iter().any(|change| *change != 0.0);
+    let without = comparison.clone().about(&expected.expectation.prediction - &expected.redshift);
+    let of_departure =
+        expected.watched.first().map(|&tau| expected.expectation.jacobian.column(tau).into_owned());
     let signal_of = |place: &str, rows: &[usize]| -> Result<SignalVerdict, RunError> {
-        let found = signal(&comparison.select(rows)).map_err(in_all)?;
-        let place = place.to_owned();
-        let signal_to_noise = found.signal_to_noise;
-        Ok(SignalVerdict { place, rows: rows.len(), signal_to_noise, sigma: found.sigma })
+        let selected = comparison.select(rows);
+        let found = signal(&selected).map_err(in_all)?;
+        // Rounding is no direction.
+        let part = |whole: &DVector<f64>| {
+            let part = whole.select_rows(rows);
+            (part.amax() > 1e-9 * whole.amax()).then_some(part)
+        };
+        let gravitational_redshift = match part(&expected.redshift) {
+            Some(direction) => amplitude_of(&without.select(rows), &direction, blinded)?,
+            None => None,
+        };
+        let departure = match of_departure.as_ref().and_then(part) {
+            Some(direction) => amplitude_of(&selected, &direction, blinded)?,
+            None => None,
+        };
+        Ok(SignalVerdict {
+            place: place.to_owned(),
+            rows: rows.len(),
+            signal_to_noise: found.signal_to_noise,
+            sigma: found.sigma,
+            gravitational_redshift,
+            departure,
+        })
     };
     let mut signals = Vec::new();
     for (place, rows) in places.iter().filter(|(place, _)| place.contains(" multipole ")) {
@@ -183,14 +221,9 @@ pub(super) fn verdicts(
             goodness_list.push(GoodnessVerdict { place, chi2: chi_squared, rows: rows.len(), p_value });
         }
     }
-    let sees_redshift = expected.redshift.iter().any(|change| *change != 0.0);
-    let without = comparison.clone().about(&expected.expectation.prediction - &expected.redshift);
     let redshift = if sees_redshift { amplitude_of(&without, &expected.redshift, blinded)? } else { None };
-    let departure = match expected.watched.first() {
-        Some(&tau) => {
-            let direction = expected.expectation.jacobian.column(tau).into_owned();
-            amplitude_of(comparison, &direction, blinded)?
-        }
+    let departure = match &of_departure {
+        Some(direction) => amplitude_of(comparison, direction, blinded)?,
         None => None,
     };
     let turned = if odd.is_empty() || blinded {
@@ -213,6 +246,10 @@ pub(super) fn verdicts(
         goodness: goodness_list,
         normality: normal.map(|normal| normal.p_value),
         orientation: turned,
+        parity: parity_verdicts(study, measurements, expected)?,
+        leakage: leakage_verdicts(measurements, expected, blinded)?,
+        scale_factors: if blinded { Vec::new() } else { scale_factor_verdicts(measurements, expected)? },
+        widths: width_verdicts(study, measurements, expected)?,
         expected_sd,
         error_budget,
         tau_equivalents: budget::tau_equivalents(measurements, expected)?,
@@ -238,15 +275,21 @@ pub(super) fn places(measurements: &Measurements) -> Vec<(String, Vec<usize>)> {
     places
 }
 
-fn amplitude_of(
+/// The amplitude of a direction, its value withheld while blinded; none for a direction that these rows do not see, or where
+/// there are too few mocks for it.
+pub(super) fn amplitude_of(
     comparison: &Comparison,
-    direction: &nalgebra::DVector<f64>,
+    direction: &DVector<f64>,
     blinded: bool,
 ) -> Result<Option<AmplitudeVerdict>, RunError> {
     if direction.iter().all(|change| *change == 0.0) {
         return Ok(None);
     }
-    let found = amplitude(comparison, direction).map_err(in_all)?;
+    let found = match amplitude(comparison, direction) {
+        Ok(found) => found,
+        Err(VerdictError::TooFewMocks { .. } | VerdictError::NoDirection { .. }) => return Ok(None),
+        Err(error) => return Err(in_all(error)),
+    };
     let shown = |value: f64| (!blinded).then_some(value);
     let sd = found.standard_deviation;
     Ok(Some(AmplitudeVerdict { value: shown(found.value), sd, sigma: shown(found.sigma_from(0.0)) }))

@@ -14,6 +14,7 @@ use oddwell_likelihood::npy_bytes;
 use oddwell_model::{FeltBy, ModelSetup, departures};
 use oddwell_sampler::Target;
 use planned::Plan;
+pub(crate) use planned::sampling;
 use rand::SeedableRng;
 use rand_distr::{Distribution, StandardNormal};
 use rand_xoshiro::Xoshiro256PlusPlus;

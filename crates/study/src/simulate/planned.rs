@@ -182,7 +182,7 @@ fn at_centre(study: &Study, hypothesis: &Hypothesis, rows: Vec<Row>) -> Result<(
 }
 
 /// Volume and densities of a bin; none for a bin without design (never: that is an error of the study).
-fn sampling(
+pub(crate) fn sampling(
     hypothesis: &Hypothesis,
     design: &DesignSection,
     bin: Option<&BinDesignSection>,
