@@ -327,7 +327,7 @@ keep = [{ separation = [100.0, 144.0] }]"#)],
         edits: &[Study(r#"covariance = "covariance.csv""#, r#"covariance = "covariance.csv"
 noise = "hartlap""#)],
         arguments: &["fit", "study.toml"],
-        message: r#"study.toml:14:9: `noise = "hartlap"` needs `mock_count` beside it; say how many mocks the covariance was estimated from, or choose `noise = "gaussian"`"#,
+        message: r#"study.toml:14:9: `noise = "hartlap"` needs `mock_count` beside it; say how many mocks the covariance was estimated from, give the `mocks` themselves, or choose `noise = "gaussian"`"#,
     },
     Case {
         what: "a file that is not TOML",

@@ -56,7 +56,7 @@ pub use information::{
 pub use integrated::{IntegratedScratch, IntegratedSet, IntegrationError, LinearPrior};
 pub use joint::JointSurvey;
 pub use keep::{Keep, Kept, keep_rows};
-pub use mocks::{MockError, MockSet, MockTables, read_mock_tables, read_mocks};
+pub use mocks::{MockError, MockSet, MockTables, mock_files, read_mock_tables, read_mocks};
 pub use noise::{NoiseChoice, NoiseError, NoiseFamily, NoiseInputs, NoiseModel, noise_families};
 pub use rewrite::with_values;
 pub use rows::{Axis, PAIRS};

@@ -161,7 +161,7 @@ impl SurveyLikelihood {
     }
 
     /// The covariance of the noise alone, without templates.
-    pub(crate) fn noise_covariance(&self) -> &Covariance {
+    pub fn noise_covariance(&self) -> &Covariance {
         self.marginal.as_ref().map_or(&self.covariance, |marginal| &marginal.base.covariance)
     }
 

@@ -27,6 +27,7 @@ fn model(
         nodes: vec![(redshift, 1.0)],
         sight_line: SightLine::Midpoint,
         growth_given: false,
+        observed_slopes: [false; 2],
         fiducial,
     });
     let mut rows = Vec::new();

@@ -69,6 +69,7 @@ fn build(case: &Case, space: Space) -> (Model, Vec<f64>) {
             nodes: vec![(0.55, 1.0)],
             sight_line: SightLine::First,
             growth_given: false,
+            observed_slopes: [false; 2],
             fiducial: None,
         }],
         rows: rows(space),

@@ -80,12 +80,14 @@ impl Model {
             growth
         };
         let (first, second) = Tracer::pair(values, start);
+        let epoch = workspace.epochs[node];
+        let [first_slope, second_slope] = definition.observed_slopes;
         BinState {
-            epoch: workspace.epochs[node],
+            epoch,
             growth,
             time_distortion,
-            first,
-            second,
+            first: first.with_slope(first_slope, &epoch),
+            second: second.with_slope(second_slope, &epoch),
             offset: values[start + slot::OFFSET],
             sight_line: definition.sight_line,
         }

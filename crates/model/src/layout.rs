@@ -57,7 +57,7 @@ pub(crate) mod slot {
 /// | slots | names |
 /// |---|---|
 /// | 0–10 | `background.*` (8), `prediction.damping`, `prediction.growth_index`, `prediction.smearing` |
-/// | 11 a bin | `SURVEY.BIN.offset`, `.growth_rate`, `.growth_slope`, then bias, magnification, evolution and bias_slope of `first` and of `second` |
+/// | 11 a bin | `SURVEY.BIN.offset`, `.growth_rate`, `.growth_slope`, then bias, magnification, evolution (or observed_density_slope) and bias_slope of `first` and of `second` |
 /// | the rest | `departure.*`; with `.SURVEY.BIN` or `.SURVEY` behind the parameter's name where each has its own |
 #[derive(Clone, Debug)]
 pub struct Layout {
@@ -72,7 +72,12 @@ impl Layout {
     pub(crate) fn new(bins: &[BinSetup], departure: &dyn Departure) -> Layout {
         let mut names: Vec<String> = slot::COMMON.iter().map(ToString::to_string).collect();
         for bin in bins {
-            names.extend(slot::BIN.iter().map(|quantity| format!("{}.{quantity}", bin.path())));
+            let renamed = |quantity: &str| match quantity {
+                "first.evolution" if bin.observed_slopes[0] => "first.observed_density_slope".to_owned(),
+                "second.evolution" if bin.observed_slopes[1] => "second.observed_density_slope".to_owned(),
+                other => other.to_owned(),
+            };
+            names.extend(slot::BIN.iter().map(|quantity| format!("{}.{}", bin.path(), renamed(quantity))));
         }
         let mut departure_of_bin = Vec::with_capacity(bins.len());
         let mut groups: Vec<(String, usize)> = Vec::new();

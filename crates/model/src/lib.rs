@@ -48,5 +48,5 @@ pub use model::Model;
 pub use rows::{Pair, Row, SightLine, Space};
 pub use setup::{BinSetup, Effects, ModelSetup};
 pub use state::{BinState, PairState};
-pub use tracer::Tracer;
+pub use tracer::{Tracer, evolution_bias_of_slope};
 pub use workspace::Workspace;

@@ -17,6 +17,10 @@ pub struct BinSetup {
     pub sight_line: SightLine,
     /// Whether f and f′ are quantities of the bin (`growth_rate`, `growth_slope`), in place of the growth equation.
     pub growth_given: bool,
+    /// Whether the slope of the density that the catalogue shows stands in place of the evolution bias (of the first, of the
+    /// second tracer): the quantity is then `observed_density_slope`, see
+    /// [`evolution_bias_of_slope`](crate::evolution_bias_of_slope).
+    pub observed_slopes: [bool; 2],
     /// The background with which the measurement turned redshifts and angles into separations (or wavenumbers), which the
     /// prediction is then remapped to (Alcock & Paczynski 1979). None: separations are true ones whatever the background,
     /// so that positions and shells move with it.

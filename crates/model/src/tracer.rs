@@ -17,7 +17,31 @@ pub struct Tracer {
     pub bias_slope: f64,
 }
 
+/// e_X = slope − 5 s_X (1 + 1/(r̃ H)): the evolution bias at fixed luminosity threshold, from the slope ∂ln n/∂ln a of the
+/// comoving density that a flux-limited catalogue shows. Dimensionless.
+///
+/// Along a flux limit the threshold in absolute magnitude moves by (5/ln 10)(1 + 1/(r̃ H)) d ln a, and with it ln n by
+/// 5 s_X (1 + 1/(r̃ H)) d ln a. K-corrections, which move the threshold as well, are left out.
+///
+/// Source: Challinor & Lewis 2011, PRD 84, 043516; Jeong, Schmidt & Hirata 2012, PRD 85, 023504.
+#[must_use]
+pub fn evolution_bias_of_slope(slope: f64, magnification_bias: f64, epoch: &Epoch) -> f64 {
+    slope - 5.0 * magnification_bias * (1.0 + 1.0 / (epoch.reduced_distance * epoch.conformal_hubble))
+}
+
 impl Tracer {
+    /// With what was given as the slope of the catalogue turned into the evolution bias.
+    pub(crate) fn with_slope(self, is_slope: bool, epoch: &Epoch) -> Tracer {
+        let Tracer { evolution_bias, magnification_bias, .. } = self;
+        match is_slope {
+            true => Tracer {
+                evolution_bias: evolution_bias_of_slope(evolution_bias, magnification_bias, epoch),
+                ..self
+            },
+            false => self,
+        }
+    }
+
     pub(crate) fn read(values: &[f64], start: usize) -> Tracer {
         Tracer {
             bias: values[start],

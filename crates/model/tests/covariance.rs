@@ -45,6 +45,7 @@ fn model_of(
             nodes: vec![(0.15, 1.0)],
             sight_line: SightLine::Midpoint,
             growth_given: false,
+            observed_slopes: [false; 2],
             fiducial: None,
         }],
         rows,

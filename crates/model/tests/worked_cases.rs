@@ -88,6 +88,7 @@ fn build(case: &Value) -> Case {
             sight_line: [SightLine::First, SightLine::Midpoint, SightLine::Second]
                 [(2.0 * number(case, "sight_line", 0.5)) as usize],
             growth_given: case.get("growth_rate").is_some(),
+            observed_slopes: [false; 2],
             fiducial: case.get("fiducial").map(|fiducial| {
                 let number = |key: &str| fiducial[key].as_f64().unwrap();
                 Background::new(number("omega_m"), number("omega_k"), number("w0"), number("wa")).unwrap()

@@ -1,4 +1,4 @@
-//! The resolved study as a table: every quantity, held, inferred or tied, with where it was given.
+//! The resolved study as a table: every quantity, held, inferred, tied or derived, with where it was given.
 
 use oddwell_study::{Hypothesis, Kind, Study, describe};
 
@@ -8,7 +8,7 @@ use crate::text::padded;
 /// The quantities of a hypothesis, a line each: name, held or inferred or tied, where it was given, and the value, prior
 /// or source with what systematics add to it. The value stands last because it may be long.
 pub fn show_table(study: &Study, hypothesis: &Hypothesis, style: Style) -> String {
-    let quantities = describe(hypothesis);
+    let quantities = describe(study, hypothesis);
     let cells =
         |name: &str, state: &str, origin: &str, value: &str| [name, state, origin, value].map(str::to_owned);
     let rows: Vec<(Kind, [String; 4])> = quantities
@@ -35,14 +35,14 @@ pub fn show_table(study: &Study, hypothesis: &Hypothesis, style: Style) -> Strin
         "{}\n{}; {inferred} of {} quantities inferred\n\n{}\n",
         style.strong(&study.file.title.value),
         who(hypothesis),
-        rows.len(),
+        rows.iter().filter(|(kind, _)| *kind != Kind::Derived).count(),
         style.strong(&line(&header)),
     );
     for (kind, row) in &rows {
         let line = line(row);
         out.push_str(&match kind {
             Kind::Inferred => line,
-            Kind::Held | Kind::Tied => style.faint(&line),
+            Kind::Held | Kind::Tied | Kind::Derived => style.faint(&line),
         });
         out.push('\n');
     }
@@ -50,8 +50,8 @@ pub fn show_table(study: &Study, hypothesis: &Hypothesis, style: Style) -> Strin
 }
 
 /// The same as JSON: a list of objects with `name`, `kind`, `value`, `line` (null for a default or `--set`), `origin`.
-pub fn show_json(hypothesis: &Hypothesis) -> serde_json::Value {
-    let quantities = describe(hypothesis);
+pub fn show_json(study: &Study, hypothesis: &Hypothesis) -> serde_json::Value {
+    let quantities = describe(study, hypothesis);
     quantities
         .iter()
         .map(|each| {
@@ -169,9 +169,9 @@ departure.tau                        inferred  line 27   { uniform = [-30.0, 30.
     #[test]
     fn json_says_the_same() {
         let study = study();
-        let json = show_json(&study.hypotheses[1]);
+        let json = show_json(&study, &study.hypotheses[1]);
         let list = json.as_array().expect("a list");
-        assert_eq!(list.len(), describe(&study.hypotheses[1]).len());
+        assert_eq!(list.len(), describe(&study, &study.hypotheses[1]).len());
         assert_eq!(
             list.iter().find(|each| each["name"] == "background.sigma8"),
             Some(&serde_json::json!({

@@ -2,9 +2,9 @@
 
 use crate::assemble::Measurements;
 use crate::file::{Located, Origin, PowerChoice};
-use crate::resolve::Study;
+use crate::resolve::{Study, is_pattern};
 use crate::run_error::RunError;
-use oddwell_likelihood::{Axis, LengthUnit, with_values};
+use oddwell_likelihood::{Axis, LengthUnit, mock_files, with_values};
 use std::collections::BTreeMap;
 use std::fs;
 use std::path::{Path, PathBuf};
@@ -58,12 +58,19 @@ impl StudyCopy {
                 .ok_or_else(|| unreadable(&path, "its lines have changed meanwhile".to_owned()))?;
             let name = copy.add(&section.multipoles.value, &section.name.value, text.into_bytes());
             edits.extend(edit(&section.multipoles, &name));
-            let others =
-                [&section.covariance, &section.covariance_rows, &section.window, &section.window_rows];
-            for other in others.into_iter().flatten() {
-                let content = read(&study.file.path_of(&other.value))?;
-                let name = copy.add(&other.value, &section.name.value, content);
-                edits.extend(edit(other, &name));
+            let own = section.covariance_keys();
+            let templates = section.templates.iter().map(|template| &template.file);
+            let of_window = [&section.window, &section.window_rows].into_iter().flatten();
+            for other in own.chain(of_window).chain(templates) {
+                edits.extend(copy.take(study, other, &section.name.value)?);
+            }
+            if let Some(mocks) = &section.mocks {
+                edits.extend(copy.take_mocks(study, mocks, &section.name.value)?);
+            }
+        }
+        for joint in &study.file.joint_covariances {
+            for other in joint.covariance_keys() {
+                edits.extend(copy.take(study, other, "joint")?);
             }
         }
         if let PowerChoice::Table(path) = &study.file.background.power.value {
@@ -81,6 +88,44 @@ impl StudyCopy {
         let separator = if appendix.is_empty() || text.ends_with('\n') { "" } else { "\n" };
         copy.files[0].1 = format!("{notes}{text}{separator}{appendix}").into_bytes();
         Ok(copy)
+    }
+
+    /// Takes a file in that the study refers to; where that stands, and what to put there.
+    fn take(
+        &mut self,
+        study: &Study,
+        written: &Located<String>,
+        owner: &str,
+    ) -> Result<Option<(usize, usize, String)>, RunError> {
+        let content = read(&study.file.path_of(&written.value))?;
+        let name = self.add(&written.value, owner, content);
+        Ok(edit(written, &name))
+    }
+
+    /// Takes mocks in: an array like any file, tables into a folder of their own, which holds nothing else.
+    fn take_mocks(
+        &mut self,
+        study: &Study,
+        written: &Located<String>,
+        survey: &str,
+    ) -> Result<Option<(usize, usize, String)>, RunError> {
+        if !is_pattern(&written.value) {
+            return self.take(study, written, survey);
+        }
+        let paths = mock_files(&study.file.folder, &written.value)?;
+        let base = |path: &PathBuf| path.file_name().unwrap_or_default().to_string_lossy().into_owned();
+        let mut names: Vec<String> = paths.iter().map(base).collect();
+        let distinct = names.iter().collect::<std::collections::BTreeSet<_>>().len();
+        if distinct < names.len() {
+            // Of different folders: numbered in the order of their paths.
+            names =
+                names.iter().enumerate().map(|(number, name)| format!("{:06}-{name}", number + 1)).collect();
+        }
+        let folder = format!("{survey}-mocks");
+        for (path, name) in paths.iter().zip(names) {
+            self.files.push((format!("{folder}/{name}"), read(path)?));
+        }
+        Ok(edit(written, &format!("{folder}/*")))
     }
 
     /// Takes a file in under its own name, or with `owner` in front where that is taken by another content.
@@ -101,21 +146,19 @@ impl StudyCopy {
         name
     }
 
-    /// Gives keys of the survey of this index these texts for values, and removes others, wherever they stand in the copy's
+    /// Gives keys of the survey of this name these texts for values, and removes others, wherever they stand in the copy's
     /// study file.
     ///
     /// # Errors
     /// [`RunError::UnreadableRun`] where the copy is no study file (never: its original was read).
     pub(crate) fn edit_survey(
         &mut self,
-        index: usize,
+        survey: &str,
         texts: &[(&str, String)],
         remove: &[&str],
     ) -> Result<(), RunError> {
-        let text = String::from_utf8_lossy(&self.files[0].1).into_owned();
-        let mut document: DocumentMut =
-            text.parse().map_err(|error: TomlError| unreadable(Path::new(STUDY_FILE), error.to_string()))?;
-        if let Some(survey) = survey_of(&mut document, index) {
+        let mut document = self.document()?;
+        if let Some(survey) = survey_of(&mut document, survey) {
             for key in remove {
                 survey.remove(key);
             }
@@ -139,15 +182,37 @@ impl StudyCopy {
     }
 
     /// Mocks of a survey in place of its covariance.
-    pub(crate) fn with_mocks(&mut self, index: usize, survey: &str, mocks: Vec<u8>) -> Result<(), RunError> {
+    pub(crate) fn with_mocks(&mut self, survey: &str, mocks: Vec<u8>) -> Result<(), RunError> {
         let text = String::from_utf8_lossy(&self.files[0].1).into_owned();
         let document: Option<DocumentMut> = text.parse().ok();
         let covariance = document.and_then(|mut document| {
-            survey_of(&mut document, index)?.get("covariance")?.as_str().map(str::to_owned)
+            survey_of(&mut document, survey)?.get("covariance")?.as_str().map(str::to_owned)
         });
         self.files.retain(|(name, _)| Some(name) != covariance.as_ref());
         let name = self.add(&format!("{survey}-mocks.npy"), survey, mocks);
-        self.edit_survey(index, &[("mocks", name)], &["covariance", "covariance_rows", "mock_count"])
+        self.edit_survey(survey, &[("mocks", name)], &["covariance", "covariance_rows", "mock_count"])
+    }
+
+    /// Every joint covariance is estimated from its surveys' mocks.
+    ///
+    /// # Errors
+    /// As [`StudyCopy::edit_survey`].
+    pub(crate) fn with_joint_mocks(&mut self) -> Result<(), RunError> {
+        let mut document = self.document()?;
+        let mut replaced = Vec::new();
+        for joint in tables_of(&mut document, "joint_covariance") {
+            let file = joint.remove("file");
+            replaced.extend(file.and_then(|file| file.as_str().map(str::to_owned)));
+            joint.remove("mock_count");
+        }
+        self.files[0].1 = document.to_string().into_bytes();
+        self.files.retain(|(name, _)| !replaced.contains(name));
+        Ok(())
+    }
+
+    fn document(&self) -> Result<DocumentMut, RunError> {
+        let text = String::from_utf8_lossy(&self.files[0].1);
+        text.parse().map_err(|error: TomlError| unreadable(Path::new(STUDY_FILE), error.to_string()))
     }
 
     /// The text of a file of the copy.
@@ -181,7 +246,11 @@ impl StudyCopy {
         let write = || -> std::io::Result<()> {
             fs::create_dir_all(&staging)?;
             for (name, content) in &self.files {
-                fs::write(staging.join(name), content)?;
+                let path = staging.join(name);
+                if let Some(folder) = path.parent() {
+                    fs::create_dir_all(folder)?;
+                }
+                fs::write(path, content)?;
             }
             fs::rename(&staging, folder)
         };
@@ -194,13 +263,24 @@ impl StudyCopy {
 }
 
 /// A survey's table, however it is written.
-fn survey_of(document: &mut DocumentMut, index: usize) -> Option<&mut dyn TableLike> {
-    match document.get_mut("survey")? {
-        Item::ArrayOfTables(tables) => tables.get_mut(index).map(|table| table as &mut dyn TableLike),
-        Item::Value(Value::Array(array)) => {
-            array.get_mut(index).and_then(Value::as_inline_table_mut).map(|table| table as &mut dyn TableLike)
+fn survey_of<'a>(document: &'a mut DocumentMut, survey: &str) -> Option<&'a mut dyn TableLike> {
+    tables_of(document, "survey")
+        .into_iter()
+        .find(|table| table.get("name").and_then(Item::as_str) == Some(survey))
+}
+
+/// The tables of a key that holds several, however they are written.
+fn tables_of<'a>(document: &'a mut DocumentMut, key: &str) -> Vec<&'a mut dyn TableLike> {
+    match document.get_mut(key) {
+        None => Vec::new(),
+        Some(Item::ArrayOfTables(tables)) => {
+            tables.iter_mut().map(|table| table as &mut dyn TableLike).collect()
         }
-        item => item.as_table_like_mut(),
+        Some(Item::Value(Value::Array(array))) => array
+            .iter_mut()
+            .filter_map(|value| value.as_inline_table_mut().map(|table| table as &mut dyn TableLike))
+            .collect(),
+        Some(item) => item.as_table_like_mut().into_iter().collect(),
     }
 }
 

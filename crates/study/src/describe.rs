@@ -2,7 +2,8 @@
 
 use serde::Serialize;
 
-use crate::resolve::{FreePrior, Hypothesis, ResolvedQuantity, State};
+use crate::evolution::derived_evolutions;
+use crate::resolve::{FreePrior, Hypothesis, ResolvedQuantity, State, Study};
 
 /// What a quantity is.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize)]
@@ -14,6 +15,8 @@ pub enum Kind {
     Inferred,
     /// Follows another quantity.
     Tied,
+    /// What the slope of a catalogue comes to.
+    Derived,
 }
 
 impl Kind {
@@ -23,6 +26,7 @@ impl Kind {
             Self::Held => "held",
             Self::Inferred => "inferred",
             Self::Tied => "tied",
+            Self::Derived => "derived",
         }
     }
 }
@@ -42,32 +46,47 @@ pub struct DescribedQuantity {
     pub origin: String,
 }
 
-/// Every quantity of a hypothesis, in the order of the study.
-pub fn describe(hypothesis: &Hypothesis) -> Vec<DescribedQuantity> {
-    hypothesis
-        .quantities
-        .iter()
-        .map(|quantity| {
-            let (kind, mut value) = state_of(hypothesis, quantity);
-            for each in &quantity.moves {
-                let amplitude = &hypothesis.quantities[each.amplitude].name;
-                let sign = if each.by < 0.0 { '-' } else { '+' };
-                value.push_str(&format!(" {sign} {:?} * {amplitude}", each.by.abs()));
-            }
-            DescribedQuantity {
-                name: quantity.name.clone(),
-                kind,
-                value,
-                line: quantity.given.origin.line(),
-                origin: quantity.given.origin.to_string(),
-            }
-        })
-        .collect()
+/// Every quantity of a hypothesis, in the order of the study; behind a slope that a catalogue shows, the evolution bias that
+/// it comes to at the centre of the priors.
+pub fn describe(study: &Study, hypothesis: &Hypothesis) -> Vec<DescribedQuantity> {
+    let evolutions = derived_evolutions(study, hypothesis);
+    let mut described = Vec::new();
+    for quantity in &hypothesis.quantities {
+        let (kind, mut value) = state_of(hypothesis, quantity);
+        for each in &quantity.moves {
+            let amplitude = &hypothesis.quantities[each.amplitude].name;
+            let sign = if each.by < 0.0 { '-' } else { '+' };
+            value.push_str(&format!(" {sign} {:?} * {amplitude}", each.by.abs()));
+        }
+        let origin = quantity.given.origin;
+        let row = DescribedQuantity {
+            name: quantity.name.clone(),
+            kind,
+            value,
+            line: origin.line(),
+            origin: origin.to_string(),
+        };
+        let tracer = row.name.strip_suffix(".observed_density_slope");
+        let evolution = evolutions.iter().find(|(path, _)| tracer == Some(path));
+        let derived = evolution.map(|(path, evolution)| DescribedQuantity {
+            name: format!("{path}.evolution"),
+            kind: Kind::Derived,
+            value: format!("{evolution:.4}, slope - 5 magnification (1 + 1/(r H))"),
+            ..row.clone()
+        });
+        described.push(row);
+        described.extend(derived);
+    }
+    described
 }
 
 fn state_of(hypothesis: &Hypothesis, quantity: &ResolvedQuantity) -> (Kind, String) {
     match &quantity.state {
         State::Held(value) => (Kind::Held, format!("{value:?}")),
+        State::IntegratedOut { mean, standard_deviation } => (
+            Kind::Inferred,
+            format!("{{ normal = [{mean:?}, {standard_deviation:?}] }}, integrated out exactly"),
+        ),
         State::Tied(source) => (Kind::Tied, format!("same as {}", hypothesis.quantities[*source].name)),
         State::Free(index) => match &hypothesis.free[*index].prior {
             FreePrior::Own(spec) => (Kind::Inferred, spec.to_string()),

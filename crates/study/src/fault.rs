@@ -26,14 +26,6 @@ pub enum Fault {
         /// What may have been meant.
         nearest: Nearest,
     },
-    /// A part of the language that this version cannot honour.
-    #[error("{what} is not supported by this version of oddwell; {way_out}")]
-    Unsupported {
-        /// The key, or key and value, in backquotes.
-        what: String,
-        /// What to do instead.
-        way_out: &'static str,
-    },
     /// A key that must be given is not.
     #[error("{section} needs `{key}`; add `{example}`")]
     MissingKey {
@@ -156,6 +148,34 @@ pub enum Fault {
         other: &'static str,
         /// What to do.
         way_out: &'static str,
+    },
+    /// A survey that says for itself what a joint covariance says.
+    #[error(
+        "`{key}` of survey `{survey}` stands beside a [[joint_covariance]] of that survey, which speaks for all its rows; give it there"
+    )]
+    SpokenForJointly {
+        /// The key.
+        key: &'static str,
+        /// The survey.
+        survey: String,
+    },
+    /// A survey in two joint covariances.
+    #[error(
+        "the survey `{survey}` has a [[joint_covariance]] already; name each survey once, those that share volume together"
+    )]
+    JointlyTwice {
+        /// The survey.
+        survey: String,
+    },
+    /// An empty block of a part with itself.
+    #[error(
+        "`empty_blocks` takes two parts that have no rows in common, not `{one}` and `{other}`; name the two whose covariance is nothing"
+    )]
+    BlockWithItself {
+        /// One part.
+        one: String,
+        /// The other.
+        other: String,
     },
     /// A fiducial background in which a bin's redshift has no distance.
     #[error("the fiducial background of survey `{survey}` gives no distance: {cause}")]

@@ -13,6 +13,7 @@ mod clocks;
 mod copy;
 mod describe;
 mod error;
+mod evolution;
 mod fault;
 mod fit;
 mod manual;

@@ -32,7 +32,8 @@ fn may_be_absent(slot: &str) -> bool {
 
 /// Quantities of a study that no model reads: amplitudes, and what only says what to report.
 fn beside_the_model(name: &str) -> bool {
-    name.starts_with("systematic.") || name == "prediction.clock_distance"
+    let of_template = || name.split('.').nth(1) == Some("template");
+    name.starts_with("systematic.") || name == "prediction.clock_distance" || of_template()
 }
 
 impl ParameterMap {

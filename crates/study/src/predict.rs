@@ -46,7 +46,7 @@ pub fn predict(study: &Study, hypothesis: &Hypothesis) -> Result<Vec<PredictedRo
 pub type EffectColumns = Vec<(String, Vec<f64>)>;
 
 /// As [`predict`], and what each physical effect contributes to each row: a name ([`EffectName::name`]) and a column in
-/// the order of the rows. The columns add up to the prediction; an effect that the study switches off is a column of zeros.
+/// the order of the rows, and `templates` where the study has any. The columns add up to the prediction; an effect that the study switches off is a column of zeros.
 ///
 /// # Errors
 /// As [`predict`].
@@ -63,9 +63,11 @@ pub fn predict_by_effect(
     let effects = posterior.model.by_effect(&values, &mut Workspace::new())?;
     // A window is linear, so it applies to each.
     let measured = |(effect, predicted): (EffectName, Vec<f64>)| {
-        (effect.name().to_owned(), posterior.measured(&predicted))
+        (effect.name().to_owned(), posterior.projected(&predicted))
     };
-    Ok((beside(study, &measurements, prediction), effects.into_iter().map(measured).collect()))
+    let mut columns: EffectColumns = effects.into_iter().map(measured).collect();
+    columns.extend(posterior.of_templates(&values).map(|added| ("templates".to_owned(), added)));
+    Ok((beside(study, &measurements, prediction), columns))
 }
 
 fn beside(study: &Study, measurements: &Measurements, prediction: Vec<f64>) -> Vec<PredictedRow> {

@@ -171,6 +171,14 @@ pub enum RunError {
         /// The survey.
         survey: String,
     },
+    /// A design of a survey that shares volume with another.
+    #[error(
+        "survey `{survey}` has a [[joint_covariance]], and a design is drawn as if it shared no volume; remove the [survey.design] to draw with the covariance as given, or the [[joint_covariance]]"
+    )]
+    DesignOfShared {
+        /// The survey.
+        survey: String,
+    },
     /// Noise from mocks, without mocks.
     #[error(
         "survey `{survey}`: the noise model `{noise}` is for a covariance estimated from mocks, and a design gives an exact one; draw mocks too, with `--mocks N`, or choose `noise = \"gaussian\"`"

@@ -68,6 +68,26 @@ pub enum Warning {
         /// Largest difference that averaging over shells as wide as the rows' spacing makes, relative to the multipole's largest value.
         difference: f64,
     },
+    /// An evolution bias that is hardly one.
+    LargeEvolution {
+        /// `SURVEY.BIN.first.evolution`, or `observed_density_slope` where that is given.
+        quantity: String,
+        /// The evolution bias.
+        evolution: f64,
+        /// Whether it comes from the slope of the catalogue.
+        slope: bool,
+    },
+    /// Realisations that the numbering of the mocks' files leads one to expect, and that are not there.
+    MissingMocks {
+        /// The survey.
+        survey: String,
+        /// The pattern, as it was given.
+        pattern: String,
+        /// How many there are.
+        found: usize,
+        /// The names that are missing.
+        missing: Vec<String>,
+    },
     /// A column of a table that nothing reads.
     IgnoredColumn {
         /// The file.
@@ -91,6 +111,8 @@ impl Warning {
             Self::Untested { .. } => "untested",
             Self::NotConverged { .. } => "not-converged",
             Self::UnaveragedShell { .. } => "unaveraged-shell",
+            Self::LargeEvolution { .. } => "large-evolution",
+            Self::MissingMocks { .. } => "missing-mocks",
             Self::IgnoredColumn { .. } => "ignored-column",
         }
     }
@@ -102,10 +124,11 @@ impl Warning {
             | Self::NuisanceMoved { parameter, .. }
             | Self::Untested { parameter, .. }
             | Self::NotConverged { parameter, .. } => parameter,
+            Self::LargeEvolution { quantity, .. } => quantity,
             Self::UnsharedError { departure, .. } => departure,
             Self::SmallSeparation { bins, .. } => bins.first().map_or("", |(bin, ..)| bin),
             Self::GrowthAssumed { hypothesis } => hypothesis,
-            Self::UnaveragedShell { survey, .. } => survey,
+            Self::UnaveragedShell { survey, .. } | Self::MissingMocks { survey, .. } => survey,
             Self::IgnoredColumn { file, .. } => file,
         }
     }
@@ -159,6 +182,23 @@ impl Warning {
                 "the rows of `{survey}` have no `low` and `high`: averaging over shells as wide as their spacing would change the prediction by up to {:.1} % of the multipole's largest value; add the two columns",
                 100.0 * difference
             ),
+            Self::LargeEvolution { quantity, evolution, slope: false } => format!(
+                "`{quantity}` is {evolution:.4}: evolution is at fixed luminosity threshold, e = slope observed − 5 s (1 + 1/(r H)); if it is the slope that a catalogue shows, give it as `observed_density_slope`"
+            ),
+            Self::LargeEvolution { quantity, evolution, slope: true } => format!(
+                "`{quantity}` comes to an evolution bias of {evolution:.4}, e = slope observed − 5 s (1 + 1/(r H)); check the slope, which is that of the comoving density with ln a, and the magnification bias"
+            ),
+            Self::MissingMocks { survey, pattern, found, missing } => {
+                let shown = missing.iter().take(10).map(String::as_str).collect::<Vec<_>>().join(", ");
+                let more = if missing.len() > 10 {
+                    format!(" and {} more", missing.len() - 10)
+                } else {
+                    String::new()
+                };
+                format!(
+                    "the mocks of `{survey}` are numbered with gaps: {found} match `{pattern}`, without {shown}{more}; if they failed for a reason that has to do with what they measure, those that are left are no fair sample"
+                )
+            }
             Self::IgnoredColumn { file, column, nearest } => {
                 let meant = nearest.as_ref().map_or_else(String::new, |name| {
                     format!("; if it is `{name}`, map it in [survey.columns]")

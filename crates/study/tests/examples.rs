@@ -224,6 +224,7 @@ fn a_study_with_everything_held_is_read_for_every_departure() {
                     nodes: vec![(1.09, 1.0)],
                     sight_line: study.file.surveys[0].sight_line.value,
                     growth_given: !growth.is_empty(),
+                    observed_slopes: [false; 2],
                     fiducial: None,
                 }],
                 rows: vec![Row {

@@ -265,7 +265,7 @@ fn what_is_set_takes_the_place_of_what_the_file_says() {
             "departure.tau"
         ]
     );
-    let shown = describe(hypothesis);
+    let shown = describe(&study, hypothesis);
     let bias = shown.iter().find(|row| row.name == "larkfield.near.second.bias").unwrap();
     assert_eq!(
         (bias.value.as_str(), bias.origin.as_str(), bias.line),
@@ -283,7 +283,7 @@ fn an_unknown_hypothesis_is_named_with_the_nearest() {
 fn a_hypothesis_is_described_row_by_row() {
     let text = changed("[sampling]", JOINT).replace("tau = { uniform = [-30.0, 30.0] }", "tau = 0.5");
     let study = study(&text);
-    let rows = describe(study.default_hypothesis());
+    let rows = describe(&study, study.default_hypothesis());
     let row = |name: &str| {
         let row = rows.iter().find(|row| row.name == name).unwrap();
         (row.kind, row.value.clone(), row.origin.clone())

@@ -51,7 +51,7 @@ fn every_optional_block_makes_a_study_when_uncommented() {
         blocks += 1;
         start += length;
     }
-    assert_eq!(blocks, 9);
+    assert_eq!(blocks, 11);
 }
 
 #[test]

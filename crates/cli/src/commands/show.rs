@@ -11,7 +11,7 @@ pub(super) fn run(arguments: &StudyArguments, output: &Output) -> Result<Status,
     let study = read_study(arguments)?;
     let hypothesis = study.hypothesis(arguments.hypothesis.as_deref())?;
     if output.json {
-        output.json_result(&show_json(hypothesis))?;
+        output.json_result(&show_json(&study, hypothesis))?;
     } else {
         output.result(&show_table(&study, hypothesis, output.style))?;
     }

@@ -8,7 +8,7 @@ use std::path::Path;
 use nalgebra::{DMatrix, DVector};
 
 pub use error::MockError;
-pub use tables::{MockTables, read_mock_tables};
+pub use tables::{MockTables, mock_files, read_mock_tables};
 
 use crate::arrays::{ArrayFormat, NumberArray, file_bytes, format_of, parse_array};
 use crate::covariance::Covariance;

@@ -38,7 +38,7 @@ pub fn read_mock_tables(
     columns: &BTreeMap<String, String>,
     table: &MultipoleTable,
 ) -> Result<MockTables, DataError> {
-    let mut files = matching(folder, pattern)?;
+    let mut files = mock_files(folder, pattern)?;
     let numbers = numbered(&files);
     if let Some(numbering) = &numbers {
         let mut order: Vec<usize> = (0..files.len()).collect();
@@ -89,8 +89,11 @@ fn at_most_ten(names: impl Iterator<Item = String>, count: usize) -> String {
     list
 }
 
-/// The files that a pattern matches, sorted by name.
-fn matching(folder: &Path, pattern: &str) -> Result<Vec<PathBuf>, DataError> {
+/// The files that a pattern matches, sorted by name; it counts from `folder`.
+///
+/// # Errors
+/// A pattern that is none or that no file matches; a folder that can't be read.
+pub fn mock_files(folder: &Path, pattern: &str) -> Result<Vec<PathBuf>, DataError> {
     // The folder's own name may hold characters that mean something in a pattern.
     let whole = match Path::new(pattern).is_absolute() {
         true => pattern.to_owned(),

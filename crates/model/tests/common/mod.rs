@@ -17,6 +17,7 @@ pub(crate) fn setup(redshift: f64, rows: Vec<Row>) -> ModelSetup {
             nodes: vec![(redshift, 1.0)],
             sight_line: SightLine::Midpoint,
             growth_given: false,
+            observed_slopes: [false; 2],
             fiducial: None,
         }],
         rows,

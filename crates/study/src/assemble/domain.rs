@@ -16,7 +16,7 @@ pub(super) struct Domain {
 impl Domain {
     pub(super) fn new(map: &ParameterMap, layout: &Layout) -> Domain {
         let moves = |slot: &usize| !map.is_held(*slot);
-        let inferred = (0..map.slots()).filter(moves);
+        let inferred = (0..layout.len()).filter(moves);
         let rules = inferred.filter_map(|slot| Some((slot, rule_of(&layout.names()[slot])?))).collect();
         let densities = layout.index("background.omega_m").zip(layout.index("background.omega_b"));
         let densities = densities.filter(|(matter, baryons)| moves(matter) || moves(baryons));

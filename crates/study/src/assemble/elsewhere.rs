@@ -4,7 +4,8 @@ use super::posterior::Posterior;
 use crate::run_error::RunError;
 use oddwell_model::{Model, ModelSetup, Workspace};
 
-/// The prediction of the posterior's measured rows by another model of the same rows, whose quantities `value` gives by name.
+/// The prediction of the posterior's measured rows by another model of the same rows, whose quantities `value` gives by name,
+/// amplitudes of templates too.
 ///
 /// # Errors
 /// [`RunError::Model`] where there is no such model, or it has no prediction.
@@ -17,5 +18,6 @@ pub(crate) fn predict_elsewhere(
     let values: Vec<f64> = model.layout().names().iter().map(|name| value(name)).collect();
     let mut rows = vec![0.0; model.setup().rows.len()];
     model.predict(&values, &mut Workspace::new(), &mut rows)?;
-    Ok(posterior.measured(&rows))
+    let amplitudes: Vec<f64> = posterior.template_names().map(value).collect();
+    Ok(posterior.measured(&rows, &amplitudes))
 }

@@ -251,8 +251,10 @@ fn choose(posterior: &Posterior) -> Choice {
     let linear = |parameter: usize| {
         let mut terms = posterior.map.terms().iter().filter(|term| term.parameter == parameter);
         terms.all(|term| {
-            let name = &model.layout().names()[term.slot];
-            model.enters_linearly(term.slot) && rule_of(name).is_none()
+            // Amplitudes of templates, which stand behind the model's quantities, are integrated out by the likelihood itself
+            // where they can be.
+            let name = model.layout().names().get(term.slot);
+            name.is_some_and(|name| model.enters_linearly(term.slot) && rule_of(name).is_none())
         })
     };
     let priors = &posterior.priors;

@@ -1,19 +1,19 @@
 //! Reads what a study measured.
 
+use super::covariances::{CovarianceKeys, Member, Noisy, read_noise};
+use super::survey_rows::SurveyRows;
 use super::window::{SurveyWindow, read_window};
 use crate::checksum::{InputHashes, file_sha256};
-use crate::file::{BinSection, KeepSection, Origin, SurveySection};
+use crate::file::{BinSection, JointCovarianceSection, SurveySection, template_name};
 use crate::nearest::Nearest;
 use crate::record::InputFile;
 use crate::resolve::Study;
 use crate::run_error::RunError;
 use crate::warnings::Warning;
-use oddwell_likelihood::{
-    Axis, Covariance, CovarianceRows, Keep, LengthUnit, MultipoleTable, NoiseChoice, SurveyLikelihood,
-    keep_rows, read_covariance as read_covariance_file, read_covariance_rows, read_multipoles,
-};
+use nalgebra::{DMatrix, DVector};
+use oddwell_likelihood::{Axis, Covariance, MultipoleTable, NoiseChoice, SurveyLikelihood, read_template};
 use oddwell_model::{Pair, Row, Space};
-use std::collections::BTreeMap;
+use std::ops::Range;
 
 /// One survey's kept rows and their likelihood.
 #[derive(Clone, Debug)]
@@ -24,7 +24,8 @@ pub struct SurveyMeasurements {
     pub table: MultipoleTable,
     /// Rows that `keep` cut.
     pub cut: usize,
-    /// Data, covariance and noise model of the kept rows.
+    /// Data, covariance and noise model of the kept rows by themselves: of a survey that shares volume with others, by its
+    /// own block of their covariance.
     pub likelihood: SurveyLikelihood,
     /// Each kept row's index among the study's bins.
     pub bins: Vec<usize>,
@@ -32,6 +33,17 @@ pub struct SurveyMeasurements {
     pub h: Option<f64>,
     /// What turns predictions into the kept rows, where the survey has a window.
     pub window: Option<SurveyWindow>,
+    /// Shapes with amplitudes of their own.
+    pub templates: Vec<SurveyTemplate>,
+}
+
+/// A template's shape over the kept rows of its survey.
+#[derive(Clone, Debug, PartialEq)]
+pub struct SurveyTemplate {
+    /// The dotted name of its amplitude.
+    pub name: String,
+    /// One number a kept row, in the unit of the measured values.
+    pub shape: DVector<f64>,
 }
 
 impl SurveyMeasurements {
@@ -42,11 +54,27 @@ impl SurveyMeasurements {
     }
 }
 
+/// Surveys whose noise is one: a single survey, or those of a [[joint_covariance]].
+#[derive(Clone, Debug)]
+pub struct NoiseGroup {
+    /// Which surveys, by index.
+    pub surveys: Range<usize>,
+    /// Data, covariance and noise model of all their kept rows. Noise `percival` that leaves n_θ to be counted is `t` here,
+    /// until [`Posterior::new`](crate::assemble::Posterior::new) has counted.
+    pub likelihood: SurveyLikelihood,
+    /// Noise `percival`, where n_θ is still to be counted.
+    pub to_be_counted: Option<NoiseChoice>,
+    /// The share of the model in the covariance, where an estimate from mocks was shrunk towards one.
+    pub shrinkage: Option<f64>,
+}
+
 /// Everything a study measured.
 #[derive(Clone, Debug)]
 pub struct Measurements {
     /// By survey, in the study's order.
     pub surveys: Vec<SurveyMeasurements>,
+    /// The same rows by what shares a noise, in the same order.
+    pub groups: Vec<NoiseGroup>,
     /// All kept rows, survey after survey: what each measured number is.
     pub rows: Vec<Row>,
     /// Checksums of the files read, the study file first.
@@ -61,13 +89,20 @@ impl Measurements {
     #[must_use]
     pub fn model_rows(&self) -> Vec<Row> {
         let mut rows = Vec::new();
-        let mut first = 0;
-        for survey in &self.surveys {
+        for (first, survey) in self.with_offsets() {
             let own = &self.rows[first..first + survey.table.len()];
-            first += own.len();
             rows.extend(survey.window.as_ref().map_or(own, |window| &window.rows[..]));
         }
         rows
+    }
+
+    /// Each survey with the position of its first row.
+    pub fn with_offsets(&self) -> impl Iterator<Item = (usize, &SurveyMeasurements)> {
+        self.surveys.iter().scan(0, |first, survey| {
+            let offset = *first;
+            *first += survey.table.len();
+            Some((offset, survey))
+        })
     }
 
     /// How many numbers are kept.
@@ -89,113 +124,216 @@ impl Measurements {
 /// [`RunError`] for a file that can't be read or breaks a rule, for rows without a bin and bins without a row, and where
 /// the covariance does not go with the rows.
 pub fn read_measurements(study: &Study) -> Result<Measurements, RunError> {
+    read(study, true)
+}
+
+/// As [`read_measurements`], with a unit covariance in the place of every one: for predictions of rows whose covariance is
+/// of no concern, and may not exist.
+///
+/// # Errors
+/// As [`read_measurements`], covariances and mocks excepted.
+pub(crate) fn read_rows_only(study: &Study) -> Result<Measurements, RunError> {
+    read(study, false)
+}
+
+fn read(study: &Study, with_covariances: bool) -> Result<Measurements, RunError> {
     let mut inputs = InputHashes::new(study);
     let mut warnings = Vec::new();
-    let (mut surveys, mut rows) = (Vec::new(), Vec::new());
-    let mut first_bin = 0;
+    let mut tables = Vec::new();
     for section in &study.file.surveys {
-        let survey = read_survey(study, section, first_bin, &mut inputs, &mut warnings)?;
-        for (row, &bin) in survey.table.rows.iter().zip(&survey.bins) {
-            // The table's reader has checked the pair.
-            let pair = Pair::parse(&row.pair).unwrap_or(Pair::FirstSecond);
-            let space = match row.axis {
-                Axis::Separation => Space::Separation,
-                Axis::Wavenumber => Space::Fourier,
-            };
-            rows.push(Row { bin, pair, multipole: row.multipole, space, at: row.at, edges: row.edges });
-        }
-        first_bin += section.bins.len();
-        surveys.push(survey);
+        tables.push(SurveyRows::read(study, section, &mut inputs, &mut warnings)?);
     }
-    Ok(Measurements { surveys, rows, inputs: inputs.finish(), warnings })
+    let mut groups = Vec::new();
+    let mut surveys = Vec::new();
+    let mut first_bin = 0;
+    for range in ranges(study) {
+        let sections = &study.file.surveys[range.clone()];
+        let joint = study.file.joint_covariance_of(&sections[0].name.value);
+        let noisy = match with_covariances {
+            true => noise_of(study, range.clone(), joint, &tables, &mut inputs, &mut warnings)?,
+            false => unit_noise(&tables[range.clone()])?,
+        };
+        let name =
+            sections.iter().map(|section| section.name.value.as_str()).collect::<Vec<_>>().join("` with `");
+        let group = NoiseGroup::new(range.clone(), &name, &tables[range.clone()], &noisy)?;
+        let mut first = 0;
+        for (section, rows) in sections.iter().zip(&tables[range]) {
+            let own: Vec<usize> = (first..first + rows.kept.len()).collect();
+            first += rows.kept.len();
+            let likelihood = match sections {
+                [_] => group.likelihood.clone(),
+                _ => {
+                    likelihood(
+                        &section.name.value,
+                        rows.kept_table().values(),
+                        noisy.covariance.select(&own),
+                        &noisy.noise,
+                    )?
+                    .0
+                }
+            };
+            surveys.push(survey(study, (section, rows, likelihood), first_bin, &mut inputs)?);
+            first_bin += section.bins.len();
+        }
+        groups.push(group);
+    }
+    let rows = surveys.iter().flat_map(model_rows_of).collect();
+    Ok(Measurements { surveys, groups, rows, inputs: inputs.finish(), warnings })
 }
 
-fn read_survey(
+/// Surveys that share a noise stand together ([`Study::resolve`] sees to it).
+fn ranges(study: &Study) -> Vec<Range<usize>> {
+    let mut ranges: Vec<Range<usize>> = Vec::new();
+    let surveys = &study.file.surveys;
+    for (index, survey) in surveys.iter().enumerate() {
+        let joint = study.file.joint_covariance_of(&survey.name.value);
+        match ranges.last_mut() {
+            Some(last)
+                if joint
+                    .is_some_and(|joint| joint.surveys.value.contains(&surveys[last.start].name.value)) =>
+            {
+                last.end = index + 1;
+            }
+            _ => ranges.push(index..index + 1),
+        }
+    }
+    ranges
+}
+
+fn noise_of(
     study: &Study,
-    section: &SurveySection,
-    first_bin: usize,
+    range: Range<usize>,
+    joint: Option<&JointCovarianceSection>,
+    tables: &[SurveyRows],
     inputs: &mut InputHashes,
     warnings: &mut Vec<Warning>,
-) -> Result<SurveyMeasurements, RunError> {
-    let name = section.name.value.clone();
-    if section.multipoles.origin == Origin::Default {
-        return Err(RunError::NotMeasured { survey: name, study: study.file.source.name().to_owned() });
-    }
-    let path = study.file.path_of(&section.multipoles.value);
-    let columns: BTreeMap<String, String> =
-        section.columns.iter().map(|(ours, theirs)| (ours.clone(), theirs.value.clone())).collect();
-    let mut table = read_multipoles(&path, &columns)?;
-    inputs.add(&path, file_sha256(&path));
-    for ignored in &table.ignored_columns {
-        warnings.push(Warning::IgnoredColumn {
-            file: table.file.clone(),
-            column: ignored.name.clone(),
-            nearest: ignored.resembles.clone(),
+) -> Result<Noisy, RunError> {
+    let Some(joint) = joint else {
+        let (section, rows) = (&study.file.surveys[range.start], &tables[range.start]);
+        let keys = CovarianceKeys::of_survey(section);
+        return read_noise(
+            study,
+            &keys,
+            (&[Member { section, rows, present: true }], &[0]),
+            inputs,
+            warnings,
+        );
+    };
+    // Surveys that a restriction leaves out still take their place in the arrays.
+    let mut absent: Vec<Option<(&SurveySection, SurveyRows)>> = Vec::new();
+    for name in &joint.surveys.value {
+        let section = study.absent().iter().find(|section| section.name.value == *name);
+        absent.push(match section {
+            Some(section) => Some((section, SurveyRows::read(study, section, inputs, warnings)?)),
+            None => None,
         });
     }
-    let h = (section.unit.value == LengthUnit::Megaparsec).then(|| conversion_h(study, section));
-    let mut factors = None;
-    if let Some(h) = h {
-        factors = Some(table.value_factors(h));
-        table = table.from_megaparsec(h)?;
+    let mut members = Vec::new();
+    let mut order: Vec<(usize, usize)> = Vec::new();
+    for (name, absent) in joint.surveys.value.iter().zip(&absent) {
+        if let Some((section, rows)) = absent {
+            members.push(Member { section, rows, present: false });
+            continue;
+        }
+        let here = range.clone().find(|&index| study.file.surveys[index].name.value == *name);
+        if let Some(index) = here {
+            order.push((index, members.len()));
+            members.push(Member { section: &study.file.surveys[index], rows: &tables[index], present: true });
+        }
     }
-    let keep: Vec<Keep> = section.keep.iter().map(criteria).collect();
-    let kept = keep_rows(&table, &keep)?;
-    let whole = read_covariance(study, section, &table, &columns, inputs)?;
-    let whole = match factors {
-        Some(factors) if section.covariance.is_some() => whole.scaled(&factors),
-        _ => whole,
+    order.sort_unstable();
+    let order: Vec<usize> = order.into_iter().map(|(_, member)| member).collect();
+    read_noise(study, &CovarianceKeys::of_joint(joint), (&members, &order), inputs, warnings)
+}
+
+fn unit_noise(tables: &[SurveyRows]) -> Result<Noisy, RunError> {
+    let rows = tables.iter().map(|rows| rows.kept.len()).sum();
+    let covariance = Covariance::new(DMatrix::identity(rows, rows), "unit covariance")
+        .map_err(|error| RunError::Likelihood { survey: "all".to_owned(), source: error.into() })?;
+    Ok(Noisy { covariance, noise: NoiseChoice::gaussian(), shrinkage: None })
+}
+
+/// A likelihood; where its noise waits for n_θ, with noise `t` meanwhile, and the noise that is waited for.
+fn likelihood(
+    name: &str,
+    values: DVector<f64>,
+    covariance: Covariance,
+    noise: &NoiseChoice,
+) -> Result<(SurveyLikelihood, Option<NoiseChoice>), RunError> {
+    let waits = (noise.family.name == "percival" && noise.determined.is_none()).then_some(*noise);
+    let meanwhile = match waits {
+        Some(_) => NoiseChoice::new("t", noise.mock_count)
+            .map_err(|source| RunError::Noise { survey: name.to_owned(), source })?,
+        None => *noise,
     };
-    let covariance = whole.with_labels(table.row_labels()).select(&kept.rows);
-    let rows = (&table, &kept.rows[..]);
-    let window = read_window(study, section, rows, first_bin, h, &columns, inputs)?;
-    let cut = kept.cut.len();
-    let all_bins: Vec<String> = table.bins().iter().map(ToString::to_string).collect();
-    let table = table.select(&kept.rows);
+    let likelihood = SurveyLikelihood::from_covariance(values, covariance, &meanwhile)
+        .map_err(|source| RunError::Likelihood { survey: name.to_owned(), source })?;
+    Ok((likelihood, waits))
+}
+
+impl NoiseGroup {
+    fn new(
+        surveys: Range<usize>,
+        name: &str,
+        tables: &[SurveyRows],
+        noisy: &Noisy,
+    ) -> Result<NoiseGroup, RunError> {
+        let values: Vec<f64> = tables
+            .iter()
+            .flat_map(|rows| rows.kept_table().values().iter().copied().collect::<Vec<_>>())
+            .collect();
+        let (likelihood, to_be_counted) =
+            likelihood(name, DVector::from_vec(values), noisy.covariance.clone(), &noisy.noise)?;
+        Ok(NoiseGroup { surveys, likelihood, to_be_counted, shrinkage: noisy.shrinkage })
+    }
+}
+
+fn survey(
+    study: &Study,
+    (section, rows, likelihood): (&SurveySection, &SurveyRows, SurveyLikelihood),
+    first_bin: usize,
+    inputs: &mut InputHashes,
+) -> Result<SurveyMeasurements, RunError> {
+    let kept = (&rows.table, &rows.kept[..]);
+    let window = read_window(study, section, kept, first_bin, rows.h, &rows.columns, inputs)?;
+    let all_bins: Vec<String> = rows.table.bins().iter().map(ToString::to_string).collect();
+    let table = rows.kept_table();
     let bins = bins_of_rows(section, &table, first_bin)?;
     check_every_bin_has_rows(study, section, &table, &all_bins)?;
-    let mock_count = section.mock_count.as_ref().map(|count| count.value as usize);
-    let noise = NoiseChoice::new(section.noise.value, mock_count)
-        .map_err(|source| RunError::Noise { survey: name.clone(), source })?;
-    let likelihood = SurveyLikelihood::from_covariance(table.values(), covariance, &noise)
-        .map_err(|source| RunError::Likelihood { survey: name.clone(), source })?;
-    Ok(SurveyMeasurements { name, h, table, cut, likelihood, bins, window })
-}
-
-/// The h of lengths in Mpc: of the background that made them, else the one that is held (checked when the study was
-/// resolved).
-fn conversion_h(study: &Study, section: &SurveySection) -> f64 {
-    if let Some(h) = section.fiducial.as_ref().and_then(|fiducial| fiducial.h.as_ref()) {
-        return h.value;
+    let factors = rows.factors();
+    let mut templates = Vec::new();
+    for template in &section.templates {
+        let path = study.file.path_of(&template.file.value);
+        let shape = read_template(&path, rows.table.len())?.select_rows(&rows.kept);
+        inputs.add(&path, file_sha256(&path));
+        let shape = DVector::from_fn(shape.len(), |row, _| shape[row] * factors[row]);
+        let name = template_name(&section.name.value, &template.name.value);
+        templates.push(SurveyTemplate { name, shape });
     }
-    study.default_hypothesis().quantity("background.h").map_or(f64::NAN, |h| h.form.constant)
+    let cut = rows.table.len() - rows.kept.len();
+    Ok(SurveyMeasurements {
+        name: section.name.value.clone(),
+        h: rows.h,
+        table,
+        cut,
+        likelihood,
+        bins,
+        window,
+        templates,
+    })
 }
 
-/// The covariance of all rows of the table, in the table's order.
-fn read_covariance(
-    study: &Study,
-    section: &SurveySection,
-    table: &MultipoleTable,
-    columns: &BTreeMap<String, String>,
-    inputs: &mut InputHashes,
-) -> Result<Covariance, RunError> {
-    let in_survey = |source| RunError::Likelihood { survey: section.name.value.clone(), source };
-    let Some(covariance) = &section.covariance else {
-        return Covariance::from_errors(table).map_err(|error| in_survey(error.into()));
-    };
-    let path = study.file.path_of(&covariance.value);
-    let result = match &section.covariance_rows {
-        None => read_covariance_file(&path, table.len())?,
-        Some(names) => {
-            let names_path = study.file.path_of(&names.value);
-            let named: CovarianceRows = read_covariance_rows(&names_path, columns)?;
-            inputs.add(&names_path, file_sha256(&names_path));
-            let positions = named.positions(table)?;
-            read_covariance_file(&path, named.len())?.select(&positions)
-        }
-    };
-    inputs.add(&path, file_sha256(&path));
-    Ok(result)
+fn model_rows_of(survey: &SurveyMeasurements) -> Vec<Row> {
+    let rows = survey.table.rows.iter().zip(&survey.bins).map(|(row, &bin)| {
+        // The table's reader has checked the pair.
+        let pair = Pair::parse(&row.pair).unwrap_or(Pair::FirstSecond);
+        let space = match row.axis {
+            Axis::Separation => Space::Separation,
+            Axis::Wavenumber => Space::Fourier,
+        };
+        Row { bin, pair, multipole: row.multipole, space, at: row.at, edges: row.edges }
+    });
+    rows.collect()
 }
 
 fn bins_of_rows(
@@ -242,16 +380,5 @@ fn check_every_bin_has_rows(
             file: table.file.clone(),
             after_keep: if before_keep.contains(&bin.name.value) { " that passes `keep`" } else { "" },
         }),
-    }
-}
-
-fn criteria(keep: &KeepSection) -> Keep {
-    let KeepSection { separation, wavenumber, multipoles, bins, pairs } = keep;
-    Keep {
-        separation: separation.as_ref().map(|range| range.value),
-        wavenumber: wavenumber.as_ref().map(|range| range.value),
-        multipoles: multipoles.as_ref().map(|list| list.value.clone()),
-        bins: bins.as_ref().map(|list| list.value.clone()),
-        pairs: pairs.as_ref().map(|list| list.value.iter().map(ToString::to_string).collect()),
     }
 }

@@ -1,15 +1,17 @@
 //! One hypothesis of a study, ready to be evaluated.
 
+use super::determined::count_determined;
 use super::domain::Domain;
 use super::measurements::Measurements;
 use super::power_table::read_power_table;
 use super::projection::Projection;
+use super::templates::{Templates, integrated_out};
 use crate::file::{FiducialSection, PowerChoice};
 use crate::parameter_map::ParameterMap;
 use crate::resolve::{Hypothesis, Study};
 use crate::run_error::RunError;
 use oddwell_cosmology::{CosmologyError, PowerShape};
-use oddwell_likelihood::{CompressedSet, SurveySet};
+use oddwell_likelihood::{CompressedSet, NoiseChoice, NoiseError, SurveySet};
 use oddwell_model::{BinSetup, Effects, Model, ModelError, ModelSetup, Row, Workspace};
 use oddwell_sampler::{EvaluationFailure, PriorSet, Target};
 use std::sync::Arc;
@@ -28,9 +30,11 @@ pub struct Posterior {
     pub map: ParameterMap,
     /// The prior of the free parameters.
     pub priors: PriorSet,
-    /// The kept measurements.
+    /// The kept measurements: a likelihood for each group of surveys with one noise, templates integrated out where the
+    /// hypothesis says so.
     pub data: SurveySet,
     projection: Projection,
+    templates: Templates,
     domain: Domain,
     compressed: Option<CompressedSet>,
 }
@@ -62,6 +66,7 @@ pub(crate) fn model_setup(
             nodes: bin.weighted_nodes(),
             sight_line: survey.sight_line.value,
             growth_given: bin.growth_rate.is_some(),
+            observed_slopes: [&bin.first, &bin.second].map(|tracer| tracer.observed_density_slope.is_some()),
             fiducial,
         }));
     }
@@ -138,30 +143,60 @@ impl Posterior {
     ) -> Result<Posterior, RunError> {
         let setup = model_setup(study, hypothesis, measurements.model_rows())?;
         let model = Model::new(setup).map_err(|error| name_the_table(study, error))?;
-        let map = ParameterMap::new(hypothesis, model.layout().names())?;
+        let templates = Templates::new(measurements, model.layout().len());
+        let slots: Vec<&str> =
+            model.layout().names().iter().map(String::as_str).chain(templates.names()).collect();
+        let map = ParameterMap::new(hypothesis, &slots)?;
         let domain = Domain::new(&map, model.layout());
         let priors = hypothesis.priors()?;
-        let surveys = measurements.surveys.iter().map(|survey| survey.likelihood.clone()).collect();
+        let mut groups = Vec::new();
+        for group in &measurements.groups {
+            let integrated = integrated_out(hypothesis, measurements, group);
+            let likelihood = group.likelihood.clone().with_templates(&integrated).map_err(|source| {
+                let survey = measurements.surveys[group.surveys.start].name.clone();
+                RunError::Likelihood { survey, source }
+            })?;
+            groups.push(likelihood);
+        }
         let mut posterior = Posterior {
             hypothesis: hypothesis.clone(),
             model,
             map,
             priors,
-            data: SurveySet::new(surveys),
+            data: SurveySet::new(groups),
             projection: Projection::new(&measurements.surveys),
+            templates,
             domain,
             compressed: None,
         };
         let start = hypothesis.start();
         let mut scratch = posterior.scratch();
         posterior.predict(&start, &mut scratch).map_err(|error| name_the_table(study, error))?;
-        if posterior.has_fixed_kernels() {
-            let kernels = posterior.model.kernels(&scratch.values, &mut scratch.workspace)?;
-            let compressed = posterior.data.compress(&posterior.projection.of_kernels(&kernels.matrix));
-            posterior.compressed =
-                Some(compressed.map_err(|source| RunError::Likelihood { survey: "all".into(), source })?);
-        }
+        posterior.compress()?;
+        count_determined(&mut posterior, measurements)?;
         Ok(posterior)
+    }
+
+    /// Compresses the data, where that is exact.
+    pub(super) fn compress(&mut self) -> Result<(), RunError> {
+        if !self.has_fixed_kernels() {
+            return Ok(());
+        }
+        let values = self.values(&self.hypothesis.start());
+        let kernels = self.model.kernels(&values, &mut Workspace::new())?;
+        let kernels = self.templates.beside(self.projection.of_kernels(&kernels.matrix));
+        let compressed = self.data.compress(&kernels);
+        self.compressed =
+            Some(compressed.map_err(|source| RunError::Likelihood { survey: "all".into(), source })?);
+        Ok(())
+    }
+
+    /// Changes the noise of a group of surveys; [`Posterior::compress`] must follow.
+    pub(super) fn set_noise(&mut self, group: usize, noise: &NoiseChoice) -> Result<(), NoiseError> {
+        let mut groups = self.data.surveys().to_vec();
+        groups[group] = groups[group].clone().with_noise(noise)?;
+        self.data = SurveySet::new(groups);
+        Ok(())
     }
 
     /// Whether the kernels stay as they are while the parameters move.
@@ -171,7 +206,7 @@ impl Posterior {
         self.model.has_kernels() && self.map.terms().iter().all(|term| !layout.changes_kernels(term.slot))
     }
 
-    /// The model's quantities at a point.
+    /// The model's quantities at a point, and behind them the amplitudes of templates.
     #[must_use]
     pub fn values(&self, point: &[f64]) -> Vec<f64> {
         let mut values = vec![0.0; self.map.slots()];
@@ -204,13 +239,44 @@ impl Posterior {
 
     /// One number a measured row, from a prediction of the model's rows: the same but where a survey has a window.
     #[must_use]
-    pub fn measured(&self, predicted: &[f64]) -> Vec<f64> {
+    pub fn projected(&self, predicted: &[f64]) -> Vec<f64> {
         if self.projection.is_identity() {
             return predicted.to_vec();
         }
         let mut measured = vec![0.0; self.data.rows()];
         self.projection.apply(predicted, &mut measured);
         measured
+    }
+
+    /// As [`Posterior::projected`], with templates of these amplitudes added: what another model than this one's says of
+    /// the measured rows.
+    #[must_use]
+    pub fn measured(&self, predicted: &[f64], amplitudes: &[f64]) -> Vec<f64> {
+        let mut measured = self.projected(predicted);
+        self.templates.add(amplitudes, &mut measured);
+        measured
+    }
+
+    /// The dotted names of the amplitudes of templates, which stand behind the model's quantities in
+    /// [`Posterior::values`].
+    pub fn template_names(&self) -> impl Iterator<Item = &str> {
+        self.templates.names()
+    }
+
+    /// Where [`Posterior::values`] has the quantity of this dotted name, a template's amplitude included.
+    #[must_use]
+    pub fn slot(&self, name: &str) -> Option<usize> {
+        let of_template = || self.templates.names().position(|known| known == name);
+        let layout = self.model.layout();
+        layout.index(name).or_else(|| Some(layout.len() + of_template()?))
+    }
+
+    /// What templates add to the prediction of the measured rows; none where the study has no template.
+    #[must_use]
+    pub fn of_templates(&self, values: &[f64]) -> Option<Vec<f64>> {
+        let mut added = vec![0.0; self.data.rows()];
+        self.templates.add(self.templates.amplitudes(values), &mut added);
+        (self.templates.len() > 0).then_some(added)
     }
 
     /// Predicts the model's rows, and from them one number a measured row.
@@ -222,10 +288,12 @@ impl Posterior {
         measured: &mut [f64],
     ) -> Result<(), ModelError> {
         if self.projection.is_identity() {
-            return self.model.predict(values, workspace, measured);
+            self.model.predict(values, workspace, measured)?;
+        } else {
+            self.model.predict(values, workspace, predicted)?;
+            self.projection.apply(predicted, measured);
         }
-        self.model.predict(values, workspace, predicted)?;
-        self.projection.apply(predicted, measured);
+        self.templates.add(self.templates.amplitudes(values), measured);
         Ok(())
     }
 
@@ -264,7 +332,9 @@ impl Posterior {
         let PosteriorScratch { values, coefficients, workspace, .. } = scratch;
         self.map.fill(point, values);
         self.domain.check(values)?;
-        self.model.coefficients(values, workspace, coefficients)?;
+        let (of_model, of_templates) = coefficients.split_at_mut(self.model.coefficient_count());
+        self.model.coefficients(values, workspace, of_model)?;
+        of_templates.copy_from_slice(self.templates.amplitudes(values));
         Ok(Coefficients { coefficients, inputs: (values, workspace) })
     }
 }
@@ -295,7 +365,7 @@ impl Target for Posterior {
     fn scratch(&self) -> PosteriorScratch {
         PosteriorScratch {
             values: vec![0.0; self.map.slots()],
-            coefficients: vec![0.0; self.model.coefficient_count()],
+            coefficients: vec![0.0; self.model.coefficient_count() + self.templates.len()],
             predicted: vec![0.0; self.projection.predicted()],
             measured: vec![0.0; self.data.rows()],
             workspace: Workspace::new(),

@@ -2,7 +2,7 @@
 
 use super::frozen::{FROZEN_FILE, Frozen, FrozenRow};
 use super::secret::{Phrase, fresh_salt};
-use crate::assemble::{Measurements, Posterior, PosteriorScratch, read_measurements};
+use crate::assemble::{Measurements, Posterior, PosteriorScratch, read_measurements, read_rows_only};
 use crate::checksum::sha256;
 use crate::copy::StudyCopy;
 use crate::resolve::{Hypothesis, Study};
@@ -48,7 +48,7 @@ pub fn blind(study: &Study, phrase_file: &Path, folder: &Path) -> Result<Blinded
     }
     let kept = read_measurements(study)?;
     let expected = expected_deviation(study, hypothesis, &kept)?;
-    let measurements = read_measurements(&without_keep(study))?;
+    let measurements = read_rows_only(&without_keep(study))?;
     let posterior = Posterior::new(study, hypothesis, &measurements)?;
     let values = posterior.values(&hypothesis.start());
     let changes = change_per_tau(&posterior, &values)?;
@@ -142,7 +142,7 @@ fn change_per_tau(posterior: &Posterior, values: &[f64]) -> Result<Vec<f64>, Run
     let mut predict = |values: &[f64]| -> Result<Vec<f64>, RunError> {
         let mut rows = vec![0.0; model.setup().rows.len()];
         model.predict(values, &mut workspace, &mut rows)?;
-        Ok(posterior.measured(&rows))
+        Ok(posterior.projected(&rows))
     };
     let Some(tau) = model.layout().index("departure.tau") else { return Ok(Vec::new()) };
     carried[tau] = 0.0;

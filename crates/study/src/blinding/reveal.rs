@@ -4,7 +4,7 @@ use super::blind::NOTE_START;
 use super::blind::without_keep;
 use super::frozen::Frozen;
 use super::secret::Phrase;
-use crate::assemble::read_measurements;
+use crate::assemble::read_rows_only;
 use crate::checksum::sha256;
 use crate::copy::{STUDY_FILE, StudyCopy};
 use crate::file::Source;
@@ -48,7 +48,7 @@ pub fn reveal(blinded: &Path, phrase_file: &Path, folder: &Path) -> Result<Revea
     }
     let secret = phrase.departure(&blinding.salt.value, blinding.width.value);
     let frozen = Frozen::read(&study.file.path_of(&blinding.frozen.value))?;
-    let measurements = read_measurements(&without_keep(&study))?;
+    let measurements = read_rows_only(&without_keep(&study))?;
     let changes = frozen.changes(&measurements).map_err(|row| RunError::NotFrozen { row })?;
     let measured =
         measurements.surveys.iter().flat_map(|survey| survey.table.rows.iter().map(|row| row.value));

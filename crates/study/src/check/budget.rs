@@ -12,7 +12,7 @@ use oddwell_model::{Effects, ModelSetup};
 const GROUPS: [(&str, &[&str]); 7] = [
     ("bias", &[".bias", ".bias_slope"]),
     ("magnification", &[".magnification"]),
-    ("evolution", &[".evolution"]),
+    ("evolution", &[".evolution", ".observed_density_slope"]),
     ("offset", &[".offset"]),
     ("systematics", &["systematic."]),
     ("growth", &[".growth_rate", ".growth_slope", "prediction.growth_index"]),
@@ -82,8 +82,9 @@ pub(super) fn tau_equivalents(
         let path = bin.path();
         let worth = |change: &[f64]| -> Option<f64> {
             let (mut overlap, mut own) = (0.0, 0.0);
-            for ((first, survey), measured) in posterior.data.with_offsets().zip(&measurements.surveys) {
-                let rows = measured.rows_of(index);
+            for (first, survey) in posterior.data.with_offsets() {
+                let rows: Vec<usize> =
+                    (0..survey.rows()).filter(|row| measurements.rows[first + row].bin == index).collect();
                 if rows.is_empty() {
                     continue;
                 }

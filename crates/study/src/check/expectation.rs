@@ -118,7 +118,7 @@ pub(super) fn predict_with(
     values: &[f64],
 ) -> Result<Vec<f64>, RunError> {
     predict_elsewhere(posterior, setup, &|name| {
-        value(name, posterior.model.layout().index(name).map_or(0.0, |slot| values[slot]))
+        value(name, posterior.slot(name).map_or(0.0, |slot| values[slot]))
     })
 }
 

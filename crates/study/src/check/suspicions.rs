@@ -3,6 +3,7 @@
 use super::expectation::{Expected, in_all};
 use super::verdicts::{Verdicts, places};
 use crate::assemble::{Measurements, SurveyMeasurements};
+use crate::evolution::large_evolution;
 use crate::record::WarningRecord;
 use crate::resolve::Study;
 use crate::run_error::RunError;
@@ -10,8 +11,6 @@ use oddwell_likelihood::verdicts::{Swap, duplicate, row_order, upper_tail};
 
 /// A correlation between odd and even multipoles that is off by more than this is no matter of how it was computed.
 const LARGEST_CORRELATION: f64 = 0.2;
-/// An evolution bias beyond this is more likely a slope of observed counts.
-const LARGE_EVOLUTION: f64 = 5.0;
 /// Mocks that make errors larger than this are too few.
 const ERROR_GROWTH: f64 = 1.2;
 
@@ -70,7 +69,8 @@ pub(super) fn suspicions(
         warnings.extend(disorder(measurements, expected, alarm)?);
     }
     warnings.extend(duplicates(measurements, alarm)?);
-    warnings.extend(large_evolution(expected));
+    let large = large_evolution(&expected.posterior, &expected.values)?;
+    warnings.extend(large.iter().map(|each| warning(each.code(), each.place(), each.text())));
     Ok(warnings)
 }
 
@@ -202,7 +202,13 @@ fn duplicates(measurements: &Measurements, alarm: f64) -> Result<Vec<WarningReco
     let mut warnings = Vec::new();
     let pairs: Vec<(usize, usize)> =
         (0..surveys.len()).flat_map(|second| (0..second).map(move |first| (first, second))).collect();
+    let together =
+        |survey: usize| measurements.groups.iter().position(|group| group.surveys.contains(&survey));
     for &(first, second) in &pairs {
+        // Surveys with a joint covariance are known to have measured much the same.
+        if together(first) == together(second) {
+            continue;
+        }
         let (one, other) = (&surveys[first], &surveys[second]);
         let found = duplicate(&one.likelihood, &other.likelihood, &matched(one, other)).map_err(in_all)?;
         let same = found.rows > 0 && found.identical == found.rows;
@@ -230,17 +236,4 @@ fn matched(one: &SurveyMeasurements, other: &SurveyMeasurements) -> Vec<(usize, 
         );
     }
     pairs
-}
-
-fn large_evolution(expected: &Expected) -> Vec<WarningRecord> {
-    let names = expected.posterior.model.layout().names().iter();
-    names
-        .zip(&expected.values)
-        .filter(|(name, value)| name.ends_with(".evolution") && value.abs() > LARGE_EVOLUTION)
-        .map(|(name, value)| {
-            warning("large-evolution", name, format!(
-                "`{name}` is {value}: evolution is at fixed luminosity threshold, e = slope observed − 5 s (1 + 1/(r H)); the slope that a catalogue shows is not it"
-            ))
-        })
-        .collect()
 }

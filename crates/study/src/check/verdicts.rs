@@ -9,8 +9,8 @@ use crate::resolve::Study;
 use crate::run_error::RunError;
 use nalgebra::DVector;
 use oddwell_likelihood::verdicts::{
-    Comparison, Expectation, Goodness, VerdictError, amplitude, covariance_scale, goodness, mock_sufficiency,
-    normality, orientation, signal, spectrum,
+    Comparison, Goodness, VerdictError, amplitude, covariance_scale, goodness, mock_sufficiency, normality,
+    orientation, signal, spectrum,
 };
 use serde::Serialize;
 
@@ -300,24 +300,19 @@ fn survey_verdicts(
     expected: &Expected,
     blinded: bool,
 ) -> Result<Vec<SurveyVerdict>, RunError> {
+    // The departure's own prior stays in: a departure is no reason to doubt a covariance.
+    let all = Comparison::new(&expected.posterior.data, &expected.expectation).map_err(in_all)?;
     let mut surveys = Vec::new();
-    let mut first = 0;
-    for survey in &measurements.surveys {
-        let rows = survey.table.len();
-        let expectation = Expectation {
-            prediction: expected.expectation.prediction.rows(first, rows).into_owned(),
-            jacobian: expected.expectation.jacobian.rows(first, rows).into_owned(),
-            prior_covariance: expected.expectation.prior_covariance.clone(),
-        };
-        first += rows;
-        surveys.push(survey_verdict(survey, &expectation, expected, blinded)?);
+    for (first, survey) in measurements.with_offsets() {
+        let rows: Vec<usize> = (first..first + survey.table.len()).collect();
+        surveys.push(survey_verdict(survey, &all.select(&rows), expected, blinded)?);
     }
     Ok(surveys)
 }
 
 fn survey_verdict(
     survey: &SurveyMeasurements,
-    expectation: &Expectation,
+    comparison: &Comparison,
     expected: &Expected,
     blinded: bool,
 ) -> Result<SurveyVerdict, RunError> {
@@ -327,9 +322,7 @@ fn survey_verdict(
     let determined = expected.posterior.map.dimension().min(survey.table.len());
     let error_growth =
         mocks.map(|mocks| mock_sufficiency(mocks, survey.table.len(), determined).error_growth);
-    // The departure's own prior stays in: a departure is no reason to doubt a covariance.
-    let comparison = Comparison::of_survey(likelihood, expectation).map_err(in_all)?;
-    let scale = if blinded { None } else { covariance_scale(&comparison).map_err(in_all)? };
+    let scale = if blinded { None } else { covariance_scale(comparison).map_err(in_all)? };
     let labels = survey.table.row_labels();
     let named = |(row, share): (usize, f64)| (labels[row].clone(), share);
     likelihood.covariance().check_definite().map_err(|error| in_survey(&survey.name, error.into()))?;

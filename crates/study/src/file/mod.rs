@@ -2,9 +2,11 @@
 
 mod background;
 mod blinding;
+mod covariance;
 mod design;
 mod fiducial;
 mod hypothesis;
+mod joint_covariance;
 mod joint_prior;
 mod keep;
 mod overrides;
@@ -15,7 +17,7 @@ mod section;
 mod source;
 mod survey;
 mod systematic;
-mod unsupported;
+mod template;
 
 use std::path::{Path, PathBuf};
 
@@ -23,18 +25,21 @@ use toml_edit::Document;
 
 pub use background::{BackgroundSection, PowerChoice, PredictionSection};
 pub use blinding::BlindingSection;
+pub use covariance::EmptyBlock;
 pub use design::{BinDesignSection, DesignSection};
 pub use fiducial::FiducialSection;
 pub use hypothesis::{HypothesisSection, Shape};
+pub use joint_covariance::JointCovarianceSection;
 pub use joint_prior::JointPriorSection;
 pub use keep::KeepSection;
 pub use overrides::Override;
-pub(crate) use places::QuantityPlace;
+pub(crate) use places::{QuantityPlace, template_name};
 pub use quantity::{PriorSpec, Quantity};
 pub use sampling::SamplingSection;
 pub use source::{Located, Origin, Place, Source};
 pub use survey::{BinSection, SurveySection, TracerSection};
 pub use systematic::{MoveEntry, SystematicSection};
+pub use template::TemplateSection;
 
 use crate::error::StudyError;
 use crate::fault::Fault;
@@ -55,6 +60,8 @@ pub struct StudyFile {
     pub prediction: PredictionSection,
     /// `[[survey]]`, at least one.
     pub surveys: Vec<SurveySection>,
+    /// `[[joint_covariance]]`.
+    pub joint_covariances: Vec<JointCovarianceSection>,
     /// `[[systematic]]`.
     pub systematics: Vec<SystematicSection>,
     /// `[[joint_prior]]`.
@@ -117,6 +124,7 @@ impl StudyFile {
             background,
             prediction,
             surveys,
+            joint_covariances,
             systematics,
             joint_priors,
             hypotheses,
@@ -130,12 +138,24 @@ impl StudyFile {
             background,
             prediction,
             surveys,
+            joint_covariances,
             systematics,
             joint_priors,
             hypotheses,
             sampling,
             blinding,
         })
+    }
+
+    /// The joint covariance that speaks for a survey.
+    pub fn joint_covariance_of(&self, survey: &str) -> Option<&JointCovarianceSection> {
+        self.joint_covariances.iter().find(|joint| joint.surveys.value.iter().any(|name| name == survey))
+    }
+
+    /// The noise model of a survey's rows: its own, or that of the surveys that it shares volume with.
+    pub fn noise_of(&self, survey: &SurveySection) -> &'static str {
+        let joint = self.joint_covariance_of(&survey.name.value);
+        joint.map_or(survey.noise.value, |joint| joint.noise.value)
     }
 
     /// Where a path that is written in the study leads.
@@ -150,6 +170,7 @@ struct Parts {
     background: BackgroundSection,
     prediction: PredictionSection,
     surveys: Vec<SurveySection>,
+    joint_covariances: Vec<JointCovarianceSection>,
     systematics: Vec<SystematicSection>,
     joint_priors: Vec<JointPriorSection>,
     hypotheses: Vec<HypothesisSection>,
@@ -184,6 +205,8 @@ impl Parts {
             None => Some(PredictionSection::defaults()),
         };
         let surveys = all(&root, "survey", "[[survey]]", SurveySection::read);
+        let joint_covariances =
+            all(&root, "joint_covariance", "[[joint_covariance]]", JointCovarianceSection::read);
         let systematics = all(&root, "systematic", "[[systematic]]", SystematicSection::read);
         let joint_priors = all(&root, "joint_prior", "[[joint_prior]]", JointPriorSection::read);
         let hypotheses = all(&root, "hypothesis", "[[hypothesis]]", HypothesisSection::read);
@@ -206,6 +229,7 @@ impl Parts {
             background: background?,
             prediction: prediction?,
             surveys: surveys?,
+            joint_covariances: joint_covariances?,
             systematics: systematics?,
             joint_priors: joint_priors?,
             hypotheses: hypotheses?,
@@ -234,7 +258,6 @@ fn stem(name: &str) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
-    use unsupported::UNSUPPORTED;
 
     /// Every (section, key) that is read.
     fn asked(text: &str) -> std::collections::BTreeSet<(&'static str, String)> {
@@ -243,16 +266,6 @@ mod tests {
         let document = Document::parse(source.text()).unwrap();
         Parts::read(Section::new(&reader, document.as_table(), None, "study", "the study file"), &source);
         reader.asked.take()
-    }
-
-    /// What is supported may not stay in the table, nor may a value of a key that is not.
-    #[test]
-    fn the_table_of_unsupported_keys_agrees_with_what_is_read() {
-        let asked = asked(&crate::template::study_text());
-        for entry in UNSUPPORTED {
-            let read = asked.contains(&(entry.section, entry.key.to_owned()));
-            assert_eq!(read, entry.value.is_some(), "`{}` of {}", entry.key, entry.section);
-        }
     }
 
     #[test]

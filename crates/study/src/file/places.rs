@@ -42,6 +42,10 @@ impl StudyFile {
                 add_tracer(&mut places, &format!("{path}.first"), &mut bin.first);
                 add_tracer(&mut places, &format!("{path}.second"), &mut bin.second);
             }
+            for template in &mut survey.templates {
+                let name = template_name(&survey.name.value, &template.name.value);
+                places.push((name, Given(&mut template.amplitude)));
+            }
         }
         for systematic in &mut self.systematics {
             let name = format!("systematic.{}", systematic.name.value);
@@ -51,12 +55,19 @@ impl StudyFile {
     }
 }
 
+/// The dotted name of a template's amplitude.
+pub(crate) fn template_name(survey: &str, template: &str) -> String {
+    format!("{survey}.template.{template}")
+}
+
 fn add_tracer<'a>(places: &mut Vec<(String, QuantityPlace<'a>)>, path: &str, tracer: &'a mut TracerSection) {
-    let quantities = [
-        ("bias", &mut tracer.bias),
-        ("magnification", &mut tracer.magnification),
-        ("evolution", &mut tracer.evolution),
-        ("bias_slope", &mut tracer.bias_slope),
-    ];
-    places.extend(quantities.map(|(key, place)| (format!("{path}.{key}"), QuantityPlace::Given(place))));
+    let mut add = |key: &str, place: Option<&'a mut Located<Quantity>>| {
+        places.extend(place.map(|place| (format!("{path}.{key}"), QuantityPlace::Given(place))));
+    };
+    add("bias", Some(&mut tracer.bias));
+    add("magnification", Some(&mut tracer.magnification));
+    // One of the two.
+    add("evolution", tracer.evolution.as_mut());
+    add("observed_density_slope", tracer.observed_density_slope.as_mut());
+    add("bias_slope", Some(&mut tracer.bias_slope));
 }

@@ -6,7 +6,6 @@ use std::ops::Range;
 use toml_edit::{Item, Key, TableLike, Value};
 
 use super::source::{Located, Origin, Source};
-use super::unsupported::{Unsupported, unsupported_key, unsupported_value};
 use crate::error::{Location, Problem};
 use crate::fault::Fault;
 use crate::nearest::Nearest;
@@ -70,7 +69,8 @@ pub(crate) struct Section<'a> {
     pub(crate) reader: &'a Reader<'a>,
     table: &'a dyn TableLike,
     span: Option<Range<usize>>,
-    /// The name that the table of unsupported keys knows it by.
+    /// What kind of section it is, for the test that the template explains every key.
+    #[cfg_attr(not(test), allow(dead_code, reason = "only tests ask"))]
     kind: &'static str,
     /// How errors speak of it, as `[background]`.
     label: String,
@@ -145,22 +145,12 @@ impl<'a> Section<'a> {
         self.reader.fault(span.or_else(|| self.span.clone()), fault);
     }
 
-    /// Records that a value of a key is not supported by this version.
-    fn unsupported(&self, key: &str, entry: &Unsupported, typed: Option<&str>) {
-        let what = typed.map_or_else(|| format!("`{key}`"), |value| format!("`{key} = \"{value}\"`"));
-        self.fault_at(key, Fault::Unsupported { what, way_out: entry.way_out });
-    }
-
     pub(crate) fn text(&self, key: &str, example: &'static str) -> Option<Located<String>> {
         let (_, item) = self.find(key)?;
         let Some(text) = item.as_str() else {
             self.wrong_type(key, "a text in quotes", item, example);
             return None;
         };
-        if let Some(entry) = unsupported_value(self.kind, key, text) {
-            self.unsupported(key, entry, Some(text));
-            return None;
-        }
         if text.trim().is_empty() {
             let fault = Fault::OutOfRange {
                 name: key.to_owned(),
@@ -319,18 +309,13 @@ impl<'a> Section<'a> {
             if known.iter().any(|each| each == name) || elsewhere.contains(&name) {
                 continue;
             }
-            let fault = match unsupported_key(self.kind, name) {
-                Some(entry) => Fault::Unsupported { what: format!("`{name}`"), way_out: entry.way_out },
-                None => {
-                    let absent = known.iter().filter(|known| self.table.get(known).is_none());
-                    let nearest = match Nearest::find(name, absent) {
-                        slip if slip.is_close() => slip,
-                        _ => Nearest::find(name, known.iter()),
-                    };
-                    missing.retain(|(key, _)| !nearest.is_close() || nearest.name() != Some(key));
-                    Fault::UnknownKey { key: name.to_owned(), section: self.label.clone(), nearest }
-                }
+            let absent = known.iter().filter(|known| self.table.get(known).is_none());
+            let nearest = match Nearest::find(name, absent) {
+                slip if slip.is_close() => slip,
+                _ => Nearest::find(name, known.iter()),
             };
+            missing.retain(|(key, _)| !nearest.is_close() || nearest.name() != Some(key));
+            let fault = Fault::UnknownKey { key: name.to_owned(), section: self.label.clone(), nearest };
             self.reader.fault(key.span().or_else(|| self.span.clone()), fault);
         }
         for (_, fault) in missing {

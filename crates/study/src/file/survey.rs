@@ -2,17 +2,19 @@
 
 use std::collections::BTreeMap;
 
-use oddwell_likelihood::{LengthUnit, TABLE_COLUMNS, noise_families};
+use oddwell_likelihood::{LengthUnit, TABLE_COLUMNS};
 use oddwell_model::SightLine;
 
 use toml_edit::{Item, Value};
 
+use super::covariance::{EmptyBlock, read_determined, read_empty_blocks, read_mock_count, read_noise};
 use super::design::{BinDesignSection, DesignSection};
 use super::fiducial::FiducialSection;
 use super::keep::KeepSection;
 use super::quantity::Quantity;
 use super::section::{Section, numbers_of};
 use super::source::Located;
+use super::template::TemplateSection;
 use crate::fault::Fault;
 
 /// `[[survey]]`: one table of measured multipoles with its covariance.
@@ -22,14 +24,26 @@ pub struct SurveySection {
     pub name: Located<String>,
     /// Path of the table of multipoles, as written; where only a design is given, the name that `simulate` gives it.
     pub multipoles: Located<String>,
-    /// Path of the covariance, as written; none: the table's `error` column.
+    /// Path of the covariance, as written; none: from `mocks`, else from the table's `error` column.
     pub covariance: Option<Located<String>>,
     /// Path of a table that names the covariance's rows, as written; none: they follow the table of multipoles.
     pub covariance_rows: Option<Located<String>>,
+    /// Path of an array of mock measurements, or a pattern of tables, one a realisation, as written.
+    pub mocks: Option<Located<String>>,
     /// How many mocks the covariance was estimated from.
     pub mock_count: Option<Located<u64>>,
-    /// Name of the noise model, one of [`noise_families`]; default `gaussian`.
+    /// Name of the noise model, one of [`noise_families`](oddwell_likelihood::noise_families); default `gaussian`.
     pub noise: Located<&'static str>,
+    /// n_θ of noise `percival`; none: counted.
+    pub determined: Option<Located<u64>>,
+    /// Path of a covariance to be added, as written.
+    pub extra_covariance: Option<Located<String>>,
+    /// Path of a model covariance that an estimate from mocks is shrunk towards, as written.
+    pub shrink_towards: Option<Located<String>>,
+    /// Bins between which the covariance is declared empty.
+    pub empty_blocks: Option<Located<Vec<EmptyBlock>>>,
+    /// Shapes with amplitudes of their own.
+    pub templates: Vec<TemplateSection>,
     /// The direction that separates odd from even, default through the midpoint.
     pub sight_line: Located<SightLine>,
     /// Unit of the table's lengths, default Mpc/h.
@@ -48,6 +62,8 @@ pub struct SurveySection {
     pub columns: BTreeMap<String, Located<String>>,
     /// The redshift bins.
     pub bins: Vec<BinSection>,
+    /// Names of bins of the file that a restriction leaves out.
+    pub left_out: Vec<String>,
 }
 
 /// `[[survey.bin]]`: one redshift bin with its two tracers.
@@ -81,8 +97,10 @@ pub struct TracerSection {
     pub bias: Located<Quantity>,
     /// s, ∂log10 N/∂magnitude at the flux limit.
     pub magnification: Located<Quantity>,
-    /// e, ∂ln n_comoving/∂ln a at fixed luminosity threshold.
-    pub evolution: Located<Quantity>,
+    /// e, ∂ln n_comoving/∂ln a at fixed luminosity threshold; given exactly where `observed_density_slope` is not.
+    pub evolution: Option<Located<Quantity>>,
+    /// The slope ∂ln n_comoving/∂ln a that the catalogue shows, in place of e: e = slope − 5 s (1 + 1/(r̃ H)).
+    pub observed_density_slope: Option<Located<Quantity>>,
     /// dln b/dln a, default 0.
     pub bias_slope: Located<Quantity>,
 }
@@ -102,15 +120,13 @@ impl SurveySection {
         };
         let covariance = section.text("covariance", "\"covariance.csv\"");
         let covariance_rows = section.text("covariance_rows", "\"rows.csv\"");
-        let mock_count = section.count("mock_count", (2, u64::from(u32::MAX)), "at least 2", "600");
-        let noise = match section.find("noise") {
-            Some(_) => {
-                let choices: Vec<_> =
-                    noise_families().iter().map(|family| (family.name, family.name)).collect();
-                section.choice("noise", "noise model", &choices, "\"gaussian\"")
-            }
-            None => Some(Located::default_of("gaussian")),
-        };
+        let mocks = section.text("mocks", "\"mocks.npy\"");
+        let mock_count = read_mock_count(&section);
+        let noise = read_noise(&section);
+        let determined = read_determined(&section);
+        let extra_covariance = section.text("extra_covariance", "\"theory-covariance.csv\"");
+        let shrink_towards = section.text("shrink_towards", "\"model-covariance.csv\"");
+        let empty_blocks = read_empty_blocks(&section);
         let sight_lines = SightLine::ALL.map(|line| (line.name(), line));
         let sight_line = match section.find("sight_line") {
             Some(_) => section.choice("sight_line", "sight line", &sight_lines, "\"midpoint\""),
@@ -136,6 +152,12 @@ impl SurveySection {
             .table("columns", "columns", "[survey.columns]", "{ separation = \"s\" }")
             .map(read_columns)
             .unwrap_or_default();
+        let template_example = "[{ name = \"stray-light\", file = \"stray-light.csv\", amplitude = 1.0 }]";
+        let templates: Vec<_> = section
+            .tables("template", "template", "[[survey.template]]", template_example)
+            .into_iter()
+            .map(TemplateSection::read)
+            .collect();
         let bins: Vec<_> = section
             .tables("bin", "bin", "[[survey.bin]]", "[{ name = \"near\", redshift = 0.35 }]")
             .into_iter()
@@ -147,8 +169,14 @@ impl SurveySection {
             multipoles: multipoles?,
             covariance,
             covariance_rows,
+            mocks,
             mock_count,
             noise: noise?,
+            determined,
+            extra_covariance,
+            shrink_towards,
+            empty_blocks: empty_blocks?,
+            templates: templates.into_iter().collect::<Option<_>>()?,
             sight_line: sight_line?,
             unit: unit?,
             fiducial: fiducial?,
@@ -158,7 +186,16 @@ impl SurveySection {
             design: design?,
             columns,
             bins: bins.into_iter().collect::<Option<_>>()?,
+            left_out: Vec::new(),
         })
+    }
+}
+
+impl SurveySection {
+    /// The paths of covariances and of what names their rows.
+    pub(crate) fn covariance_keys(&self) -> impl Iterator<Item = &Located<String>> {
+        let paths = [&self.covariance, &self.covariance_rows, &self.extra_covariance, &self.shrink_towards];
+        paths.into_iter().flatten()
     }
 }
 
@@ -255,19 +292,28 @@ impl TracerSection {
         };
         let bias = section.required_quantity("bias", "2.0");
         let magnification = section.required_quantity("magnification", "0.5");
-        let in_place = section.keys().iter().any(|(key, _)| key.get() == "observed_density_slope");
-        let evolution = if in_place {
-            section.quantity("evolution")
-        } else {
+        let slope = section.quantity("observed_density_slope");
+        let evolution = if section.find("observed_density_slope").is_none() {
             section.required_quantity("evolution", "0.0")
+        } else if section.find("evolution").is_some() {
+            let (one, other) = ("evolution", "observed_density_slope");
+            let way_out = "give the slope that the catalogue shows, or e at fixed luminosity";
+            section.fault_at(other, Fault::EitherOr { one, other, way_out });
+            return None;
+        } else {
+            None
         };
         let bias_slope = section.quantity_or("bias_slope", 0.0);
         section.finish();
+        if evolution.is_none() && slope.is_none() {
+            return None;
+        }
         Some(Self {
             label: label?,
             bias: bias?,
             magnification: magnification?,
-            evolution: evolution?,
+            evolution,
+            observed_density_slope: slope,
             bias_slope: bias_slope?,
         })
     }

@@ -8,13 +8,24 @@ use crate::record::{ClockContrastSummary, ClockSummary, Ordered, ParameterSummar
 use crate::run_error::RunError;
 use oddwell_sampler::Chain;
 
-/// The derived quantities of a chain: names, a column of draws each, and what the summary says of them.
+/// The quantities beside a chain: names, a column of draws each, and what the summary says of them.
 #[derive(Debug, Default)]
 pub(super) struct Derived {
     pub(super) names: Vec<String>,
     pub(super) columns: Vec<Vec<f64>>,
     pub(super) parameters: Ordered<ParameterSummary>,
     pub(super) clocks: Vec<ClockSummary>,
+}
+
+impl Derived {
+    /// These first, then others.
+    pub(super) fn and(mut self, others: Derived) -> Derived {
+        self.names.extend(others.names);
+        self.columns.extend(others.columns);
+        self.parameters.extend(others.parameters);
+        self.clocks.extend(others.clocks);
+        self
+    }
 }
 
 pub(super) fn derived(

@@ -14,8 +14,9 @@ const ONE_SIGMA: f64 = 0.3173;
 
 /// Groups of nuisances, by the end of their names, and what a unit shift of all of them is.
 const GROUPS: [(&str, &[&str]); 3] = [
-    ("evolution", &[".first.evolution", ".second.evolution"]),
-    ("magnification", &[".first.magnification", ".second.magnification"]),
+    // Where the slope of the catalogue is given, an error of it is one of the evolution bias.
+    ("evolution", &[".evolution", ".observed_density_slope"]),
+    ("magnification", &[".magnification"]),
     ("offset", &[".offset"]),
 ];
 

@@ -2,6 +2,7 @@
 
 mod analysis;
 mod clocks;
+mod drawn_back;
 mod general_relativity;
 mod goodness;
 mod mimics;

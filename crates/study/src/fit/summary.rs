@@ -2,6 +2,7 @@
 
 use super::analysis::Analysis;
 use super::clocks::{self, Derived};
+use super::drawn_back::drawn_back;
 use super::{general_relativity, goodness, mimics, suspicions, switched_off};
 use crate::assemble::{Measurements, Posterior};
 use crate::record::{Ordered, ParameterSummary, SamplerSummary, Summary, WarningRecord};
@@ -30,7 +31,8 @@ pub(super) fn summarise(
     let analysis = Analysis::new(posterior, chain, &mut scratch)?;
     let general_relativity = general_relativity::general_relativity(posterior, chain);
     let mimics = mimics::mimics(posterior, chain, &analysis, &general_relativity, &mut scratch)?;
-    let derived = clocks::derived(posterior, measurements, chain, &analysis)?;
+    let clocks = clocks::derived(posterior, measurements, chain, &analysis)?;
+    let derived = drawn_back(posterior, chain, seed).and(clocks);
     let mut warnings = measurements.warnings.clone();
     warnings.extend(suspicions::suspicions(posterior, measurements, chain, &analysis, &mut scratch)?);
     let names = posterior.map.names();
@@ -70,7 +72,7 @@ pub(super) fn summarise(
         general_relativity,
         mimics,
         clocks: derived.clocks.clone(),
-        switched_off: switched_off::switched_off(posterior, measurements, &analysis, &mut scratch)?,
+        switched_off: switched_off::switched_off(posterior, &analysis, &mut scratch)?,
         sampler: sampler_summary(chain, seed),
     };
     Ok((summary, derived))

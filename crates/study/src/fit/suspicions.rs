@@ -2,6 +2,7 @@
 
 use super::analysis::Analysis;
 use crate::assemble::{Measurements, Posterior, PosteriorScratch};
+use crate::evolution::large_evolution;
 use crate::resolve::FreePrior;
 use crate::run_error::RunError;
 use crate::unaveraged::unaveraged_shells;
@@ -45,6 +46,7 @@ pub(super) fn suspicions(
     if !posterior.hypothesis.watched().is_empty() {
         warnings.extend(small_separations(posterior, measurements, &values)?);
     }
+    warnings.extend(large_evolution(posterior, &values)?);
     warnings.extend(growth_assumed(posterior));
     warnings.extend(unaveraged_shells(posterior, measurements, &values, scratch)?);
     Ok(warnings)
@@ -134,7 +136,7 @@ fn unshared(posterior: &Posterior, analysis: &Analysis) -> Vec<Warning> {
         Some(covariance[(departure, departure)].sqrt())
     };
     let mut warnings = Vec::new();
-    for quantity in ["evolution", "magnification"] {
+    for quantity in ["evolution", "observed_density_slope", "magnification"] {
         let mut groups: Vec<(FreePrior, Vec<usize>)> = Vec::new();
         for tracer in ["first", "second"] {
             let ending = format!(".{tracer}.{quantity}");

@@ -2,10 +2,10 @@
 
 use super::analysis::Analysis;
 use super::mimics::{difference, projection};
-use crate::assemble::{Measurements, Posterior, PosteriorScratch};
+use crate::assemble::{Posterior, PosteriorScratch, predict_elsewhere};
 use crate::record::SwitchedOff;
 use crate::run_error::RunError;
-use oddwell_model::{Effects, FeltBy, Model, ModelSetup, Workspace, departures};
+use oddwell_model::{Effects, FeltBy, ModelSetup, departures};
 
 /// An offset that is held at 0 is none that is known: this is the width of its usual prior, km/s.
 const USUAL_OFFSET: f64 = 10.0;
@@ -25,7 +25,6 @@ const SWITCHES: [(&str, Switch); 3] = [
 /// with the departure it would be taken for. None where nothing is left out, or where the data see no departure.
 pub(super) fn switched_off(
     posterior: &Posterior,
-    measurements: &Measurements,
     analysis: &Analysis,
     scratch: &mut PosteriorScratch,
 ) -> Result<Option<SwitchedOff>, RunError> {
@@ -37,12 +36,12 @@ pub(super) fn switched_off(
         if std::mem::replace(switch(&mut effects), true) {
             continue;
         }
-        let with = predict(posterior, measurements, ModelSetup { effects, ..setup.clone() }, &|name| {
-            posterior.model.layout().index(name).map_or(0.0, |slot| values[slot])
+        let with = predict_elsewhere(posterior, ModelSetup { effects, ..setup.clone() }, &|name| {
+            posterior.slot(name).map_or(0.0, |slot| values[slot])
         })?;
         changes.push((effect, difference(&with, &analysis.prediction)));
     }
-    let unheard: Vec<usize> = (0..values.len())
+    let unheard: Vec<usize> = (0..posterior.model.layout().len())
         .filter(|&slot| posterior.model.layout().names()[slot].ends_with(".offset"))
         .filter(|&slot| posterior.map.is_held(slot) && values[slot] == 0.0)
         .collect();
@@ -57,9 +56,9 @@ pub(super) fn switched_off(
     };
     let light = ModelSetup { departure: constant, felt_by: FeltBy::Light, ..setup.clone() };
     let of_tau = |tau: f64| {
-        predict(posterior, measurements, light.clone(), &|name| match name {
+        predict_elsewhere(posterior, light.clone(), &|name| match name {
             "departure.tau" => tau,
-            name => posterior.model.layout().index(name).map_or(0.0, |slot| values[slot]),
+            name => posterior.slot(name).map_or(0.0, |slot| values[slot]),
         })
     };
     // Felt by light, a departure enters linearly.
@@ -72,18 +71,4 @@ pub(super) fn switched_off(
         changes.into_iter().map(|(effect, change)| (effect, projection(posterior, &change, &by_tau) / own));
     let largest = sizes.max_by(|(_, one), (_, other)| one.abs().total_cmp(&other.abs()));
     Ok(largest.map(|(effect, tau)| SwitchedOff { effect: effect.to_owned(), tau }))
-}
-
-/// What another model says of the measured rows, with its quantities by name.
-fn predict(
-    posterior: &Posterior,
-    measurements: &Measurements,
-    setup: ModelSetup,
-    value: &dyn Fn(&str) -> f64,
-) -> Result<Vec<f64>, RunError> {
-    let model = Model::new(ModelSetup { rows: measurements.model_rows(), ..setup })?;
-    let values: Vec<f64> = model.layout().names().iter().map(|name| value(name)).collect();
-    let mut predicted = vec![0.0; model.setup().rows.len()];
-    model.predict(&values, &mut Workspace::new(), &mut predicted)?;
-    Ok(posterior.measured(&predicted))
 }

@@ -46,6 +46,13 @@ pub enum State {
     Held(f64),
     /// Inferred: the index into [`Hypothesis::free`].
     Free(usize),
+    /// Inferred, with a normal prior, and integrated out exactly: no coordinate of θ.
+    IntegratedOut {
+        /// Prior mean, which the prediction is made for.
+        mean: f64,
+        /// Prior standard deviation.
+        standard_deviation: f64,
+    },
     /// Follows the quantity with this index in [`Hypothesis::quantities`].
     Tied(usize),
 }

@@ -7,6 +7,7 @@ use super::affine::AffineForm;
 use super::checker::Checker;
 use super::hypothesis::{FreeParameter, FreePrior, Hypothesis, JointBlock, ResolvedQuantity, State};
 use super::systematics::Move;
+use super::templates::MeanAndDeviation;
 use crate::fault::Fault;
 use crate::file::{HypothesisSection, JointPriorSection, Quantity};
 use crate::nearest::Nearest;
@@ -14,11 +15,12 @@ use crate::nearest::Nearest;
 /// Links the entries of one hypothesis; none where a tie or a joint prior is wrong.
 ///
 /// `departures` holds the names of the departure quantities of all hypotheses: a joint prior may name one that this
-/// hypothesis lacks, and then its marginal over the rest applies.
+/// hypothesis lacks, and then its marginal over the rest applies. `integrable` holds, for the leading entries, mean and
+/// standard deviation of what can be integrated out; it is sampled all the same where nothing else is inferred.
 pub(super) fn link(
     section: &HypothesisSection,
     entries: Vec<Entry>,
-    moves: &[Move],
+    (moves, integrable): (&[Move], &[Option<MeanAndDeviation>]),
     joint_priors: &[JointPriorSection],
     departures: &[String],
     checker: &mut Checker<'_>,
@@ -29,11 +31,23 @@ pub(super) fn link(
     if checker.problems.len() > before {
         return None;
     }
+    let inferred = |index: usize, entry: &Entry| {
+        matches!(entry.given.value, Quantity::Prior(_)) || members[index].is_some()
+    };
+    let integrated = |index: usize| integrable.get(index).copied().flatten();
+    let others = entries
+        .iter()
+        .enumerate()
+        .any(|(index, entry)| integrated(index).is_none() && inferred(index, entry));
     let mut free = Vec::new();
     let mut joint: Vec<JointBlock> = Vec::new();
     let mut states = Vec::new();
     let mut parameter_of: Vec<Option<usize>> = vec![None; entries.len()];
     for (index, entry) in entries.iter().enumerate() {
+        if let Some((mean, standard_deviation)) = integrated(index).filter(|_| others) {
+            states.push(State::IntegratedOut { mean, standard_deviation });
+            continue;
+        }
         let prior = match (&entry.given.value, members[index]) {
             (Quantity::Held(start), Some((block, position))) => {
                 Some(FreePrior::Joint { block, position, start: *start })
@@ -182,7 +196,7 @@ fn forms(states: &[State], moves: &[Move]) -> Vec<AffineForm> {
     };
     let own = |index: usize| match states[root(index)] {
         State::Free(parameter) => AffineForm::free(parameter),
-        State::Held(value) => AffineForm::held(value),
+        State::Held(value) | State::IntegratedOut { mean: value, .. } => AffineForm::held(value),
         State::Tied(_) => AffineForm::default(),
     };
     (0..states.len())

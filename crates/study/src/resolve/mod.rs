@@ -2,6 +2,7 @@
 
 mod affine;
 mod checker;
+mod covariances;
 mod departure;
 mod design;
 mod hypothesis;
@@ -9,6 +10,7 @@ mod link;
 mod names;
 mod redshifts;
 mod systematics;
+mod templates;
 mod values;
 
 use std::path::Path;
@@ -16,13 +18,14 @@ use std::path::Path;
 use oddwell_likelihood::LengthUnit;
 
 pub use affine::AffineForm;
+pub(crate) use covariances::is_pattern;
 pub use hypothesis::{FreeParameter, FreePrior, Hypothesis, JointBlock, ResolvedQuantity, State};
 pub use systematics::Move;
 pub(crate) use values::{QuantityRule, rule_of};
 
 use crate::error::{Location, Problem, StudyError};
 use crate::fault::Fault;
-use crate::file::{HypothesisSection, Located, Override, Quantity, QuantityPlace, StudyFile};
+use crate::file::{HypothesisSection, Located, Override, Quantity, QuantityPlace, StudyFile, SurveySection};
 use crate::nearest::Nearest;
 use checker::{Checker, name_covers};
 
@@ -42,6 +45,7 @@ pub struct Study {
     pub hypotheses: Vec<Hypothesis>,
     default: usize,
     overrides: Vec<Override>,
+    absent: Vec<SurveySection>,
 }
 
 impl Study {
@@ -60,6 +64,7 @@ impl Study {
     /// systematics that lead nowhere, two priors of one quantity, departures that the rest of the study excludes, an
     /// override of a quantity that no hypothesis has.
     pub fn resolve(mut file: StudyFile, overrides: &[Override]) -> Result<Self, StudyError> {
+        gather_joint(&mut file);
         // Before the overrides: `--set departure.tau=0.5` shall not send the user to another hypothesis.
         let default = file.hypotheses.iter().position(|section| infers(&file, section)).unwrap_or(0);
         let elsewhere: Vec<&Override> =
@@ -76,6 +81,7 @@ impl Study {
         names::check(&file, &mut checker);
         values::check_quantities(&entries, &mut checker);
         values::check_surveys(&file, &mut checker);
+        covariances::check(&file, &mut checker);
         if !checker.is_clean() {
             // Dotted names may be ambiguous, and what follows looks them up.
             return StudyError::unless_none(checker.problems, None);
@@ -92,10 +98,12 @@ impl Study {
             }
         }
         let moves = systematics::moves(&file, &entries, &mut checker);
+        let integrable = templates::integrable(&file, &entries, &moves);
+        let shared = (&moves[..], &integrable[..]);
         let mut hypotheses = Vec::new();
         for (section, own) in file.hypotheses.iter().zip(own) {
             let all = entries.iter().cloned().chain(own).collect();
-            let linked = link::link(section, all, &moves, &file.joint_priors, &departures, &mut checker);
+            let linked = link::link(section, all, shared, &file.joint_priors, &departures, &mut checker);
             if let Some(hypothesis) = linked {
                 departure::check(&file, section, &hypothesis, &mut checker);
                 hypotheses.push(hypothesis);
@@ -103,8 +111,13 @@ impl Study {
         }
         check_units(&file, &hypotheses, &mut checker);
         let problems = checker.problems;
-        let overrides = overrides.to_vec();
-        StudyError::unless_none(problems, Some(Self { file, hypotheses, default, overrides }))
+        let (overrides, absent) = (overrides.to_vec(), Vec::new());
+        StudyError::unless_none(problems, Some(Self { file, hypotheses, default, overrides, absent }))
+    }
+
+    /// Surveys of the file that a restriction leaves out.
+    pub fn absent(&self) -> &[SurveySection] {
+        &self.absent
     }
 
     /// What the command line changed.
@@ -153,6 +166,26 @@ impl Study {
             .collect();
         StudyError::unless_none(problems, Some(chosen))
     }
+}
+
+/// Surveys that share a covariance stand together, in the file's order, behind the first of them: their rows then follow
+/// each other.
+fn gather_joint(file: &mut StudyFile) {
+    let first_of = |name: &str, names: &[String]| -> usize {
+        let joint =
+            file.joint_covariances.iter().find(|joint| joint.surveys.value.iter().any(|each| each == name));
+        let member = |each: &String| joint.is_none_or(|joint| joint.surveys.value.contains(each));
+        match joint {
+            Some(_) => names.iter().position(member).unwrap_or(usize::MAX),
+            None => names.iter().position(|each| each == name).unwrap_or(usize::MAX),
+        }
+    };
+    let names: Vec<String> = file.surveys.iter().map(|survey| survey.name.value.clone()).collect();
+    let places: Vec<usize> = names.iter().map(|name| first_of(name, &names)).collect();
+    let mut surveys: Vec<_> = places.into_iter().zip(std::mem::take(&mut file.surveys)).collect();
+    // Stable, so that members keep the file's order among themselves.
+    surveys.sort_by_key(|(place, _)| *place);
+    file.surveys = surveys.into_iter().map(|(_, survey)| survey).collect();
 }
 
 /// Whether a departure has a prior, its own or a joint one.

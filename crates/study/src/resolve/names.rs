@@ -6,6 +6,8 @@ use crate::file::{Located, StudyFile};
 
 /// First parts of dotted names that are not surveys.
 const NOT_A_SURVEY: [&str; 5] = ["background", "prediction", "systematic", "departure", "derived"];
+/// `SURVEY.template.NAME` is the amplitude of a template.
+const NOT_A_BIN: [&str; 1] = ["template"];
 /// `--hypothesis all` means every one.
 const NOT_A_HYPOTHESIS: [&str; 1] = ["all"];
 
@@ -13,7 +15,8 @@ const NOT_A_HYPOTHESIS: [&str; 1] = ["all"];
 pub(super) fn check(file: &StudyFile, checker: &mut Checker<'_>) {
     check_names(checker, "survey", file.surveys.iter().map(|each| &each.name), &NOT_A_SURVEY);
     for survey in &file.surveys {
-        check_names(checker, "bin", survey.bins.iter().map(|bin| &bin.name), &[]);
+        check_names(checker, "bin", survey.bins.iter().map(|bin| &bin.name), &NOT_A_BIN);
+        check_names(checker, "template", survey.templates.iter().map(|each| &each.name), &[]);
         if survey.bins.is_empty() {
             let fault = Fault::Empty {
                 section: format!("survey `{}`", survey.name.value),

@@ -1,7 +1,5 @@
 //! Rules for held values, and for what must stand beside what.
 
-use oddwell_likelihood::noise_families;
-
 use super::Entry;
 use super::checker::Checker;
 use super::design;
@@ -104,22 +102,6 @@ pub(super) fn check_surveys(file: &StudyFile, checker: &mut Checker<'_>) {
                 checker.fault(rows.origin, "window_rows", needs_other("window_rows", "window", way_out));
             }
             _ => {}
-        }
-        if let (Some(rows), None) = (&survey.covariance_rows, &survey.covariance) {
-            let way_out = "give the covariance whose rows it names, or remove it";
-            checker.fault(
-                rows.origin,
-                "covariance_rows",
-                needs_other("covariance_rows", "covariance", way_out),
-            );
-        }
-        let needs_mocks =
-            noise_families().iter().any(|family| family.name == survey.noise.value && family.needs_mocks);
-        if needs_mocks && survey.mock_count.is_none() {
-            let way_out =
-                "say how many mocks the covariance was estimated from, or choose `noise = \"gaussian\"`";
-            let key = format!("noise = \"{}\"", survey.noise.value);
-            checker.fault(survey.noise.origin, "noise", needs_other(&key, "mock_count", way_out));
         }
         for keep in &survey.keep {
             let Some(bins) = &keep.bins else { continue };

@@ -7,7 +7,7 @@ mod truth;
 use crate::assemble::{Posterior, predict_elsewhere, read_measurements};
 use crate::copy::StudyCopy;
 use crate::file::StudyFile;
-use crate::resolve::{Hypothesis, Study};
+use crate::resolve::{Hypothesis, State, Study};
 use crate::run_error::RunError;
 use nalgebra::{DMatrix, DVector};
 use oddwell_likelihood::npy_bytes;
@@ -106,13 +106,15 @@ pub(crate) fn drawn(
     if draw.truth == Truth::Prior {
         posterior.priors.sample(&mut random, &mut point);
     }
-    let mut values = posterior.predict(&point, &mut posterior.scratch())?;
+    let (quantities, amplitudes) = amplitudes(&posterior, draw.truth, &point, &mut random);
+    let mut values = posterior.predict_values(&quantities, &mut posterior.scratch())?;
     let factors = factors(&posterior);
     for (first, factor) in &factors {
         add_noise(&mut values[*first..], factor, &mut random);
     }
     plan.round(&measurements, &mut values);
-    let truth = truth_values(&fiducial, study, hypothesis, &point)?;
+    let mut truth = truth_values(&fiducial, study, hypothesis, &point)?;
+    truth.extend(amplitudes);
     let note = format!(
         "SYNTHETIC MEASUREMENTS, drawn by oddwell {} from hypothesis `{}` of `{}` with seed {}.\n\
          The truth is in truth.csv.",
@@ -125,7 +127,7 @@ pub(crate) fn drawn(
     plan.name_files(&mut copy)?;
     if draw.mocks > 0 {
         let expected = expected(&fiducial, &posterior, &hypothesis.name)?;
-        for ((index, section), (first, factor)) in study.file.surveys.iter().enumerate().zip(&factors) {
+        for (group, (first, factor)) in measurements.groups.iter().zip(&factors) {
             let size = factor.nrows();
             let mut mocks = DMatrix::zeros(draw.mocks, size);
             let mut mock = vec![0.0; size];
@@ -134,8 +136,15 @@ pub(crate) fn drawn(
                 add_noise(&mut mock, factor, &mut random);
                 mocks.row_mut(row).copy_from_slice(&mock);
             }
-            copy.with_mocks(index, &section.name.value, npy_bytes(&mocks))?;
+            // Surveys that share volume have the same realisations.
+            let mut within = 0;
+            for survey in &measurements.surveys[group.surveys.clone()] {
+                let own = mocks.columns(within, survey.table.len()).into_owned();
+                within += survey.table.len();
+                copy.with_mocks(&survey.name, npy_bytes(&own))?;
+            }
         }
+        copy.with_joint_mocks()?;
     }
     Ok((copy, truth))
 }
@@ -147,16 +156,38 @@ fn as_written(study: &Study) -> Result<Study, RunError> {
     Ok(Study::resolve(file, &[])?)
 }
 
-/// The Cholesky factor of each survey's covariance, with the place of its first row.
+/// The Cholesky factor of the covariance of each group of surveys, with the place of its first row.
 fn factors(posterior: &Posterior) -> Vec<(usize, DMatrix<f64>)> {
     let surveys = posterior.data.with_offsets();
     surveys
         .filter_map(|(first, survey)| {
             // The likelihood was built from it, so it has a factor.
-            let cholesky = survey.covariance().matrix().clone().cholesky()?;
+            let cholesky = survey.noise_covariance().matrix().clone().cholesky()?;
             Some((first, cholesky.unpack()))
         })
         .collect()
+}
+
+/// The quantities at a point; amplitudes of templates that the hypothesis integrates out stand at their prior's mean or are
+/// drawn from it, and are handed back by name.
+fn amplitudes(
+    posterior: &Posterior,
+    truth: Truth,
+    point: &[f64],
+    random: &mut Xoshiro256PlusPlus,
+) -> (Vec<f64>, Named) {
+    let mut values = posterior.values(point);
+    let mut named = Vec::new();
+    for quantity in &posterior.hypothesis.quantities {
+        let State::IntegratedOut { mean, standard_deviation } = quantity.state else { continue };
+        let Some(slot) = posterior.slot(&quantity.name) else { continue };
+        if truth == Truth::Prior {
+            let normal: f64 = StandardNormal.sample(random);
+            values[slot] = mean + standard_deviation * normal;
+        }
+        named.push((quantity.name.clone(), values[slot]));
+    }
+    (values, named)
 }
 
 fn add_noise(values: &mut [f64], factor: &DMatrix<f64>, random: &mut Xoshiro256PlusPlus) {

@@ -50,6 +50,12 @@ impl Plan {
         if let Some(section) = study.file.surveys.iter().find(windowed) {
             return Err(RunError::DesignWithWindow { survey: section.name.value.clone() });
         }
+        let jointly = |section: &&SurveySection| {
+            section.design.is_some() && study.file.joint_covariance_of(&section.name.value).is_some()
+        };
+        if let Some(section) = study.file.surveys.iter().find(jointly) {
+            return Err(RunError::DesignOfShared { survey: section.name.value.clone() });
+        }
         let rows = rows_of(study);
         let (model, values) = at_centre(fiducial, hypothesis, rows)?;
         let folder = tempfile::tempdir().map_err(RunError::unwritable(std::env::temp_dir()))?;
@@ -110,14 +116,18 @@ impl Plan {
         if self.folder.is_none() {
             return Ok(());
         }
-        for (index, section) in self.study.file.surveys.iter().enumerate() {
+        for section in &self.study.file.surveys {
             if section.design.is_some() {
                 let name = &section.name.value;
                 let files = [
                     ("multipoles", format!("{name}-multipoles.csv")),
                     ("covariance", format!("{name}-covariance.csv")),
                 ];
-                copy.edit_survey(index, &files, &["covariance_rows", "mocks", "mock_count"])?;
+                copy.edit_survey(
+                    name,
+                    &files,
+                    &["covariance_rows", "mocks", "mock_count", "shrink_towards"],
+                )?;
             }
         }
         Ok(())
@@ -127,7 +137,9 @@ impl Plan {
 /// Normal noise with a known covariance.
 fn without_mocks(section: &mut SurveySection) {
     section.covariance_rows = None;
+    section.mocks = None;
     section.mock_count = None;
+    section.shrink_towards = None;
     section.noise = Located::default_of("gaussian");
 }
 
