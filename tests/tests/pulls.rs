@@ -2,13 +2,12 @@
 
 #![allow(clippy::unwrap_used, clippy::panic, reason = "a test stops at the first surprise")]
 
-use nalgebra::{DMatrix, DVector};
-use oddwell_sampler::{Control, EnsembleSettings, Target, sample};
+mod drawing;
+
+use drawing::Drawing;
+use oddwell_sampler::{Control, EnsembleSettings, sample};
 use oddwell_study::Study;
-use oddwell_study::assemble::{Measurements, Posterior, read_measurements};
-use rand::SeedableRng;
-use rand_distr::{Distribution, StandardNormal};
-use rand_xoshiro::Xoshiro256PlusPlus;
+use oddwell_study::assemble::Posterior;
 use std::path::Path;
 
 const STUDIES: usize = 100;
@@ -34,47 +33,16 @@ fn kolmogorov(pulls: &mut [f64]) -> f64 {
         .fold(0.0, f64::max)
 }
 
-fn with_data(measurements: &Measurements, data: &[f64]) -> Measurements {
-    let mut drawn = measurements.clone();
-    let mut first = 0;
-    for survey in &mut drawn.surveys {
-        let rows = survey.likelihood.rows();
-        survey.likelihood =
-            survey.likelihood.clone().with_data(DVector::from_column_slice(&data[first..first + rows]));
-        first += rows;
-    }
-    drawn
-}
-
 #[test]
 fn pulls_of_the_departure_are_standard_normal() {
     let path = Path::new(env!("CARGO_MANIFEST_DIR")).join("reference/known/known-1/study.toml");
     let study = Study::read(path, &[]).unwrap();
     let hypothesis = study.hypothesis(Some("constant")).unwrap();
-    let measurements = read_measurements(&study).unwrap();
-    let posterior = Posterior::new(&study, hypothesis, &measurements).unwrap();
-    let factors: Vec<DMatrix<f64>> = measurements
-        .surveys
-        .iter()
-        .map(|survey| survey.likelihood.covariance().matrix().clone().cholesky().unwrap().unpack())
-        .collect();
+    let mut drawing = Drawing::new(&study, hypothesis, 90_210);
     let tau = hypothesis.watched()[0];
-    let mut random = Xoshiro256PlusPlus::seed_from_u64(90_210);
-    let mut scratch = posterior.scratch();
-    let mut truth = vec![0.0; posterior.dimension()];
     let mut pulls = Vec::with_capacity(STUDIES);
     for index in 0..STUDIES {
-        posterior.priors.sample(&mut random, &mut truth);
-        let mut data = posterior.predict(&truth, &mut scratch).unwrap();
-        let mut first = 0;
-        for factor in &factors {
-            let noise = factor * DVector::from_fn(factor.nrows(), |_, _| StandardNormal.sample(&mut random));
-            for (value, noise) in data[first..].iter_mut().zip(noise.iter()) {
-                *value += noise;
-            }
-            first += factor.nrows();
-        }
-        let drawn = with_data(&measurements, &data);
+        let (truth, drawn) = drawing.draw();
         let posterior = Posterior::new(&study, hypothesis, &drawn).unwrap();
         let settings = EnsembleSettings {
             seed: index as u64,

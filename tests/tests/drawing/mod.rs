@@ -30,8 +30,8 @@ impl Drawing {
         let measurements = read_measurements(study).unwrap();
         let posterior = Posterior::new(study, hypothesis, &measurements).unwrap();
         let factor = |covariance: &DMatrix<f64>| covariance.clone().cholesky().unwrap().unpack();
-        let factors = measurements.surveys.iter();
-        let factors = factors.map(|survey| factor(survey.likelihood.covariance().matrix())).collect();
+        let groups = measurements.groups.iter();
+        let factors = groups.map(|group| factor(group.likelihood.covariance().matrix())).collect();
         let scratch = posterior.scratch();
         let random = Xoshiro256PlusPlus::seed_from_u64(seed);
         Drawing { measurements, posterior, scratch, factors, random }
@@ -47,18 +47,13 @@ impl Drawing {
         let mut truth = vec![0.0; self.posterior.dimension()];
         self.posterior.priors.sample(&mut self.random, &mut truth);
         let mut data = self.posterior.predict(&truth, &mut self.scratch).unwrap();
-        let mut drawn = self.measurements.clone();
         let mut first = 0;
-        for (survey, factor) in drawn.surveys.iter_mut().zip(&self.factors) {
-            let size = factor.nrows();
-            let normals = DVector::from_fn(size, |_, _| StandardNormal.sample(&mut self.random));
+        for factor in &self.factors {
+            let normals = DVector::from_fn(factor.nrows(), |_, _| StandardNormal.sample(&mut self.random));
             let noise = factor * normals;
-            let own = &mut data[first..first + size];
-            first += size;
-            own.iter_mut().zip(noise.iter()).for_each(|(value, noise)| *value += noise);
-            survey.likelihood = survey.likelihood.clone().with_data(DVector::from_column_slice(own));
-            survey.table.rows.iter_mut().zip(own.iter()).for_each(|(row, value)| row.value = *value);
+            data[first..].iter_mut().zip(noise.iter()).for_each(|(value, noise)| *value += noise);
+            first += factor.nrows();
         }
-        (truth, drawn)
+        (truth, self.measurements.with_values(&data))
     }
 }

@@ -105,6 +105,31 @@ impl Measurements {
         })
     }
 
+    /// The same rows with other measured values (simulated ones, say), survey after survey; covariances stay.
+    ///
+    /// # Panics
+    /// Unless there is a value for each row.
+    #[must_use]
+    pub fn with_values(&self, values: &[f64]) -> Measurements {
+        assert_eq!(values.len(), self.len(), "a value for each row");
+        let mut changed = self.clone();
+        let pick = |first: usize, count: usize| DVector::from_column_slice(&values[first..first + count]);
+        let mut first = 0;
+        for survey in &mut changed.surveys {
+            let own = pick(first, survey.table.len());
+            first += own.len();
+            survey.table.rows.iter_mut().zip(own.iter()).for_each(|(row, value)| row.value = *value);
+            survey.likelihood = survey.likelihood.clone().with_data(own);
+        }
+        first = 0;
+        for group in &mut changed.groups {
+            let own = pick(first, group.likelihood.rows());
+            first += own.len();
+            group.likelihood = group.likelihood.clone().with_data(own);
+        }
+        changed
+    }
+
     /// How many numbers are kept.
     #[must_use]
     pub fn len(&self) -> usize {
