@@ -34,6 +34,7 @@ pub mod check;
 pub mod file;
 pub mod record;
 pub mod resolve;
+pub mod review;
 pub mod template;
 
 pub use copy::StudyCopy;

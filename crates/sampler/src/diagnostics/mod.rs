@@ -5,6 +5,7 @@
 //! they are not independent of each other.
 
 mod autocorrelation;
+mod density;
 mod ensembles;
 mod ess;
 mod quantiles;
@@ -14,6 +15,7 @@ mod tails;
 
 pub(crate) use autocorrelation::autocorrelation_time_about;
 pub use autocorrelation::{AutocorrelationTime, autocovariance, integrated_autocorrelation_time};
+pub use density::{Density, JointDensity, density, joint_density};
 pub use ensembles::{ParameterDiagnostics, diagnose_ensembles};
 pub(crate) use ensembles::{Shape, diagnose, split_walkers_rhat};
 pub use ess::{ess_bulk, ess_mean, ess_quantile, ess_tail, mcse_mean};

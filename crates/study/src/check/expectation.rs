@@ -111,7 +111,7 @@ pub(crate) fn prior_covariance(posterior: &Posterior) -> DMatrix<f64> {
 }
 
 /// The prediction of quantities carried over by name into another model, with some of them changed.
-pub(super) fn predict_with(
+pub(crate) fn predict_with(
     posterior: &Posterior,
     setup: ModelSetup,
     value: &dyn Fn(&str, f64) -> f64,

@@ -12,6 +12,7 @@ mod redshifts;
 mod suspicions;
 mod verdicts;
 
+pub(crate) use expectation::predict_with;
 pub use kinds::{KINDS, Kind, Rate, thresholds};
 pub use parity::{LeakageVerdict, ParityVerdict};
 pub use redshifts::{LARGEST_CURVATURE, ScaleFactorVerdict, WidthVerdict};

@@ -12,21 +12,29 @@ use oddwell_sampler::{Chain, Target};
 const STEP: f64 = 1e-3;
 
 /// What the summary needs besides the chain itself.
-pub(super) struct Analysis {
+pub(crate) struct Analysis {
     /// The highest posterior density found.
-    pub(super) best: Vec<f64>,
-    pub(super) log_prior: f64,
-    pub(super) log_likelihood: f64,
+    pub(crate) best: Vec<f64>,
+    pub(crate) log_prior: f64,
+    pub(crate) log_likelihood: f64,
     /// The prediction there.
-    pub(super) prediction: Vec<f64>,
+    pub(crate) prediction: Vec<f64>,
     /// ∂prediction/∂parameter there, rows × parameters.
-    pub(super) jacobian: DMatrix<f64>,
+    pub(crate) jacobian: DMatrix<f64>,
     /// Fisher information of all data.
-    pub(super) fisher: DMatrix<f64>,
+    pub(crate) fisher: DMatrix<f64>,
     /// Covariance of data and priors together.
-    pub(super) covariance: DMatrix<f64>,
+    pub(crate) covariance: DMatrix<f64>,
     /// Covariance of the priors; a family without variance enters with the spread of its central 68 %.
-    pub(super) prior_covariance: DMatrix<f64>,
+    pub(crate) prior_covariance: DMatrix<f64>,
+}
+
+/// A point, and how far its coordinates spread around it.
+#[derive(Clone, Debug)]
+pub(crate) struct PointAndWidths {
+    pub(crate) point: Vec<f64>,
+    /// Posterior standard deviations; 0 where unknown.
+    pub(crate) widths: Vec<f64>,
 }
 
 impl Analysis {
@@ -44,20 +52,32 @@ impl Analysis {
             best.clone_from(&peak.point);
             (log_prior, log_likelihood) = (peak.log_prior, peak.log_likelihood);
         }
-        let prediction = posterior.predict(&best, scratch)?;
-        let jacobian = jacobian(posterior, &best, chain, scratch)?;
-        let mut fisher = DMatrix::zeros(best.len(), best.len());
+        let widths = chain.diagnostics.iter().map(|diagnostics| diagnostics.sd).collect();
+        let found = Analysis::at(posterior, &PointAndWidths { point: best, widths }, scratch)?;
+        Ok(Analysis { log_prior, log_likelihood, ..found })
+    }
+
+    /// Around a point that is taken for the best.
+    pub(crate) fn at(
+        posterior: &Posterior,
+        best: &PointAndWidths,
+        scratch: &mut PosteriorScratch,
+    ) -> Result<Analysis, RunError> {
+        let point = best.point.clone();
+        let prediction = posterior.predict(&point, scratch)?;
+        let jacobian = jacobian(posterior, best, scratch)?;
+        let mut fisher = DMatrix::zeros(point.len(), point.len());
         for (first, survey) in posterior.data.with_offsets() {
             let rows: Vec<usize> = (0..survey.rows()).collect();
             fisher += information(survey, first, &rows, &prediction, &jacobian);
         }
-        let prior = prior_precision(posterior, &best);
+        let prior = prior_precision(posterior, &point);
         let covariance = inverse_information(&(&fisher + &prior));
         let prior_covariance = prior_covariance(posterior);
         Ok(Analysis {
-            best,
-            log_prior,
-            log_likelihood,
+            log_prior: posterior.log_prior(&point),
+            log_likelihood: posterior.log_likelihood(&point, scratch).unwrap_or(f64::NAN),
+            best: point,
             prediction,
             jacobian,
             fisher,
@@ -68,7 +88,7 @@ impl Analysis {
 
     /// The Fisher information of some rows of a survey (positions within it; `first` is its first row), by their own
     /// block of the covariance.
-    pub(super) fn part(&self, survey: &SurveyLikelihood, first: usize, rows: &[usize]) -> DMatrix<f64> {
+    pub(crate) fn part(&self, survey: &SurveyLikelihood, first: usize, rows: &[usize]) -> DMatrix<f64> {
         information(survey, first, rows, &self.prediction, &self.jacobian)
     }
 }
@@ -100,19 +120,18 @@ fn information(
 
 fn jacobian(
     posterior: &Posterior,
-    best: &[f64],
-    chain: &Chain,
+    PointAndWidths { point: best, widths }: &PointAndWidths,
     scratch: &mut PosteriorScratch,
 ) -> Result<DMatrix<f64>, RunError> {
     let mut jacobian = DMatrix::zeros(posterior.data.rows(), posterior.dimension());
     for parameter in 0..posterior.dimension() {
-        let sd = chain.diagnostics[parameter].sd;
+        let sd = widths[parameter];
         let width = if sd > 0.0 { sd } else { posterior.priors.spread(parameter) };
         let (low, high) = posterior.priors.support(parameter);
         let step = STEP * width;
         let at = |offset: f64| (best[parameter] + offset).clamp(low, high);
         let (below, above) = (at(-step), at(step));
-        let mut point = best.to_vec();
+        let mut point = best.clone();
         point[parameter] = above;
         let upper = posterior.predict(&point, scratch)?;
         point[parameter] = below;

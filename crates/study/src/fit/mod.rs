@@ -11,6 +11,8 @@ mod summary;
 mod suspicions;
 mod switched_off;
 
+pub(crate) use analysis::{Analysis, PointAndWidths};
+
 use crate::assemble::{Posterior, read_measurements};
 use crate::blinding::{WITHHELD, withhold};
 use crate::file::Override;
