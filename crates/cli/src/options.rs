@@ -144,11 +144,37 @@ Examples:
     /// of when, and of what was planned before anybody knew.
     #[command(after_help = "Example: oddwell reveal blinded --phrase-file phrase.txt --out revealed")]
     Reveal(BlindArguments),
+    /// Write one self-contained HTML page about one or more runs, to pass round
+    ///
+    /// Answers a referee's questions in the order in which they are asked: what came out, against redshift, the data
+    /// beside the prediction, whether it can be trusted, what limits it, whether it holds still, how hypotheses compare,
+    /// how to repeat it. The page asks for nothing from anywhere. The publications to cite are written beside it (BibTeX).
+    #[command(
+        after_help = "Example: oddwell report runs/two-invented-surveys-constant runs/two-invented-surveys-per-bin"
+    )]
+    Report(ReportArguments),
     /// Print a page of the manual: what a departure is, and what an odd multipole can and cannot tell about it
     ///
     /// Without a topic, lists the topics: every departure with its formula.
     #[command(after_help = "Example: oddwell manual finite-range")]
     Manual(ManualArguments),
+}
+
+/// Options of `report`.
+#[derive(Args, Debug)]
+pub(crate) struct ReportArguments {
+    /// Run directories; the page is about the first that infers one departure, beside the others
+    #[arg(value_name = "RUN", required = true)]
+    pub(crate) runs: Vec<PathBuf>,
+    /// The page to write [default: report.html in the first run directory]
+    #[arg(long, value_name = "FILE")]
+    pub(crate) out: Option<PathBuf>,
+    /// Also write every figure into this folder, as SVG and as PDF
+    #[arg(long, value_name = "DIR")]
+    pub(crate) figures: Option<PathBuf>,
+    /// Replace files that exist
+    #[arg(long)]
+    pub(crate) replace: bool,
 }
 
 /// Options of `manual`.

@@ -4,9 +4,12 @@
 
 mod check;
 mod closing;
+mod figure;
 mod manual;
 mod numbers;
+mod page;
 mod prediction;
+mod references;
 mod show;
 mod style;
 mod text;
@@ -14,7 +17,10 @@ mod text;
 pub use check::check_text;
 pub use closing::closing_summary;
 pub use manual::{manual_check, manual_text, manual_topics};
+pub use figure::Figure;
 pub use numbers::{count, duration, signed, significant, whole};
+pub use page::{Page, PageInput, page};
 pub use prediction::{EffectColumns, prediction_csv, prediction_json};
+pub use references::{Reference, bibliography, references};
 pub use show::{show_json, show_table};
 pub use style::Style;

@@ -27,6 +27,7 @@ mod simulate;
 mod unaveraged;
 mod warnings;
 mod worth;
+mod written;
 
 pub mod assemble;
 pub mod blinding;
@@ -55,3 +56,4 @@ pub use run_error::RunError;
 pub use simulate::{Draw, Simulated, Truth, simulate_study};
 pub use warnings::Warning;
 pub use worth::{OffsetWorth, offset_in_tau};
+pub use written::{make_folder, may_write, write_file};

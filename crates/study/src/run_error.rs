@@ -145,6 +145,12 @@ pub enum RunError {
         /// The directory.
         path: PathBuf,
     },
+    /// A file that is to be written exists.
+    #[error("{}: exists already, and is never overwritten; give `--replace`, or another file with `--out`", .path.display())]
+    FileExists {
+        /// The file.
+        path: PathBuf,
+    },
     /// What stands where the run directory is to be is no run directory.
     #[error(
         "{}: is not a run directory (it has no summary.json and manifest.json), so `--replace` leaves it alone; give another folder with `--out`", .path.display()

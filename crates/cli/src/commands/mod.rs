@@ -6,6 +6,7 @@ mod fit;
 mod manual;
 mod new;
 mod predict;
+mod report;
 mod reveal;
 mod show;
 mod simulate;
@@ -25,6 +26,7 @@ pub(crate) fn run(options: &Options) -> Status {
         Command::Predict(arguments) => predict::run(arguments, &output),
         Command::Fit(arguments) => fit::run(arguments, &output),
         Command::Check(arguments) => check::run(arguments, &output),
+        Command::Report(arguments) => report::run(arguments, &output),
         Command::Manual(arguments) => manual::run(arguments, &output),
         Command::Blind(arguments) => blind::run(arguments, &output),
         Command::Reveal(arguments) => reveal::run(arguments, &output),

@@ -68,9 +68,14 @@ fn general_relativity(summary: &Summary) -> String {
     if summary.blinded {
         return String::new();
     }
+    wrapped("  ", 2, &general_relativity_text(summary))
+}
+
+/// The same as one sentence.
+pub(crate) fn general_relativity_text(summary: &Summary) -> String {
     let found = &summary.general_relativity;
     let normal = found.from.as_deref() == Some("normal");
-    let text = match (found.tail_probability, found.sigma) {
+    match (found.tail_probability, found.sigma) {
         (None, _) => "How far general relativity lies in the tail is not said: it is at the end of a prior or beyond it, or \
                       the draws do not suffice."
             .to_owned(),
@@ -91,8 +96,7 @@ fn general_relativity(summary: &Summary) -> String {
                 share(tail)
             )
         }
-    };
-    wrapped("  ", 2, &text)
+    }
 }
 
 fn bounds(interval: Option<[f64; 2]>, error: Option<f64>) -> String {

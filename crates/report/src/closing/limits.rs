@@ -7,6 +7,12 @@ use crate::style::Style;
 use crate::text::wrapped;
 
 pub(super) fn section(summary: &Summary, style: Style) -> String {
+    let text = limits_text(summary);
+    format!("{}\n{}", style.strong("What this does not mean"), wrapped("  ", 2, &text))
+}
+
+/// The same as one paragraph.
+pub(crate) fn limits_text(summary: &Summary) -> String {
     let mut text = String::new();
     if summary.warnings.iter().any(|warning| warning.code == "growth-assumed") {
         text.push_str(
@@ -23,7 +29,7 @@ pub(super) fn section(summary: &Summary, style: Style) -> String {
         "A posterior is not an evidence: it says where the departure lies if this hypothesis holds, not whether it \
          holds, and an interval that leaves out zero is no detection."
     });
-    format!("{}\n{}", style.strong("What this does not mean"), wrapped("  ", 2, &text))
+    text
 }
 
 /// The largest effect that is switched off, and what it would be taken for.

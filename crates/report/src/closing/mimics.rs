@@ -16,16 +16,24 @@ pub(super) fn section(summary: &Summary, style: Style) -> String {
     if summary.blinded || summary.mimics.is_empty() {
         return String::new();
     }
-    let bins: usize = summary.best.surveys.iter().map(|survey| survey.bins.len()).sum();
     let mut out = format!("{}\n", style.strong("What else would look like this"));
-    for mimic in &summary.mimics {
-        out.push_str(&wrapped("  - ", 4, &sentence(mimic, bins > 1)));
+    for sentence in mimic_sentences(summary) {
+        out.push_str(&wrapped("  - ", 4, &sentence));
     }
     if summary.mimics.iter().any(|mimic| mimic.likeness < SAME) {
         let text = "(Likeness: the cosine between the two changes of the data in units of the noise; 1 is the same.)";
         out.push_str(&wrapped("  ", 2, text));
     }
     out
+}
+
+/// A sentence each; none while blinded.
+pub(crate) fn mimic_sentences(summary: &Summary) -> Vec<String> {
+    if summary.blinded {
+        return Vec::new();
+    }
+    let bins: usize = summary.best.surveys.iter().map(|survey| survey.bins.len()).sum();
+    summary.mimics.iter().map(|mimic| sentence(mimic, bins > 1)).collect()
 }
 
 fn sentence(mimic: &Mimic, several_bins: bool) -> String {

@@ -15,6 +15,10 @@ mod warnings;
 #[cfg(test)]
 mod tests;
 
+pub(crate) use departure::general_relativity_text;
+pub(crate) use limits::limits_text;
+pub(crate) use mimics::mimic_sentences;
+
 use oddwell_study::record::Summary;
 
 use crate::style::Style;

@@ -66,12 +66,7 @@ impl Axis {
         let low = (quantile_of_sorted(&sorted, 0.001) - REACH * bandwidth).max(support.0);
         let high = (quantile_of_sorted(&sorted, 0.999) + REACH * bandwidth).min(support.1);
         let step = (high - low) / (points as f64 - 1.0);
-        (step > 0.0).then_some(Axis {
-            low,
-            step,
-            bandwidth,
-            reflect: (low == support.0, high == support.1),
-        })
+        (step > 0.0).then_some(Axis { low, step, bandwidth, reflect: (low == support.0, high == support.1) })
     }
 
     fn grid(&self, points: usize) -> Vec<f64> {
@@ -89,7 +84,8 @@ impl Axis {
         let points = counts.len() as isize;
         let width = self.bandwidth / self.step;
         let reach = (REACH * width).ceil() as isize;
-        let kernel: Vec<f64> = (-reach..=reach).map(|at| (-0.5 * (at as f64 / width).powi(2)).exp()).collect();
+        let kernel: Vec<f64> =
+            (-reach..=reach).map(|at| (-0.5 * (at as f64 / width).powi(2)).exp()).collect();
         let mut out = vec![0.0; counts.len()];
         for (index, &count) in counts.iter().enumerate().filter(|(_, count)| **count > 0.0) {
             for (offset, weight) in (-reach..=reach).zip(&kernel) {
@@ -140,10 +136,8 @@ pub fn joint_density(
     supports: ((f64, f64), (f64, f64)),
 ) -> Option<JointDensity> {
     let bandwidth = effective.clamp(2.0, first.len().max(2) as f64).powf(-1.0 / 6.0);
-    let axes = (
-        Axis::new(first, supports.0, bandwidth, SIDE)?,
-        Axis::new(second, supports.1, bandwidth, SIDE)?,
-    );
+    let axes =
+        (Axis::new(first, supports.0, bandwidth, SIDE)?, Axis::new(second, supports.1, bandwidth, SIDE)?);
     let mut counts = vec![vec![0.0; SIDE]; SIDE];
     for (&x, &y) in first.iter().zip(second) {
         if let (Some(row), Some(column)) = (axes.0.cell(x, SIDE), axes.1.cell(y, SIDE)) {
@@ -170,10 +164,13 @@ fn level(density: &[Vec<f64>], share: f64) -> f64 {
     values.sort_unstable_by(|one, other| other.total_cmp(one));
     let whole: f64 = values.iter().sum();
     let mut sum = 0.0;
-    values.into_iter().find(|value| {
-        sum += value;
-        sum >= share * whole
-    }).unwrap_or(0.0)
+    values
+        .into_iter()
+        .find(|value| {
+            sum += value;
+            sum >= share * whole
+        })
+        .unwrap_or(0.0)
 }
 
 #[cfg(test)]

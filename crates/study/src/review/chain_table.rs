@@ -44,9 +44,7 @@ impl ChainTable {
         while reader.read_record(&mut record).map_err(|error| unreadable(error.to_string()))? {
             let line = record.position().map_or(0, csv::Position::line);
             let at = |column: usize| record.get(column).unwrap_or_default();
-            let wrong = |column: usize| {
-                unreadable(format!("line {line}: `{}` is no number", at(column)))
-            };
+            let wrong = |column: usize| unreadable(format!("line {line}: `{}` is no number", at(column)));
             let whole = |column: usize| at(column).parse::<u64>().map_err(|_| wrong(column));
             let real = |column: usize| match at(column) {
                 "" => Ok(f64::NAN),

@@ -80,7 +80,8 @@ fn band(context: &Context<'_>, bins: &[(String, f64)]) -> Result<Vec<CurvePoint>
     let posterior = context.posterior;
     let (layout, shape) = (posterior.model.layout(), posterior.model.setup().departure);
     let highest = bins.iter().map(|(_, redshift)| *redshift).fold(0.0, f64::max) * 1.15;
-    let redshifts: Vec<f64> = (0..POINTS).map(|index| highest * index as f64 / (POINTS as f64 - 1.0)).collect();
+    let redshifts: Vec<f64> =
+        (0..POINTS).map(|index| highest * index as f64 / (POINTS as f64 - 1.0)).collect();
     let mut columns: Vec<Vec<f64>> = vec![Vec::new(); POINTS];
     for draw in context.draws {
         let values = posterior.values(draw);

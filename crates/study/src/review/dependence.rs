@@ -45,11 +45,7 @@ pub struct JointPicture {
     pub density: JointDensity,
 }
 
-pub(super) fn dependence(
-    summary: &Summary,
-    chain: &ChainTable,
-    posterior: Option<&Posterior>,
-) -> Dependence {
+pub(super) fn dependence(summary: &Summary, chain: &ChainTable, posterior: Option<&Posterior>) -> Dependence {
     let inferred: Vec<(&String, &Vec<f64>)> =
         chain.names.iter().zip(&chain.columns).filter(|(name, _)| !name.starts_with("derived.")).collect();
     let names: Vec<String> = inferred.iter().map(|(name, _)| (*name).clone()).collect();
@@ -71,8 +67,12 @@ pub(super) fn dependence(
         }
     }
     pairs.sort_by(|one, other| other.correlation.abs().total_cmp(&one.correlation.abs()));
-    let of_departure: Vec<RankedPair> =
-        pairs.iter().filter(|pair| departure(pair.first) || departure(pair.second)).take(RANKED).copied().collect();
+    let of_departure: Vec<RankedPair> = pairs
+        .iter()
+        .filter(|pair| departure(pair.first) || departure(pair.second))
+        .take(RANKED)
+        .copied()
+        .collect();
     let ranked: Vec<RankedPair> = pairs.into_iter().take(RANKED).collect();
     let mut chosen: Vec<RankedPair> = ranked.iter().take(PICTURED.0).copied().collect();
     for pair in of_departure.iter().take(PICTURED.1) {

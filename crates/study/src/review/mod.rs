@@ -140,7 +140,8 @@ fn beside_data(
     let point = |row: usize| -> Vec<f64> { columns.iter().map(|column| column[row]).collect() };
     let draws: Vec<Vec<f64>> = chain.spread(draw_count(measurements)).into_iter().map(point).collect();
     // While blinded, the summary does not say where the departure was at its best.
-    let best: Option<Vec<f64>> = names.iter().map(|name| summary.best.parameters.get(name).copied()).collect();
+    let best: Option<Vec<f64>> =
+        names.iter().map(|name| summary.best.parameters.get(name).copied()).collect();
     let best = PointAndWidths {
         point: best.unwrap_or_else(|| point(chain.highest())),
         widths: columns.iter().map(|column| standard_deviation(column)).collect(),

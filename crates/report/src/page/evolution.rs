@@ -1,0 +1,208 @@
+//! The departure against redshift: the bands of fitted shapes, and values a bin or survey.
+
+use maud::{Markup, html};
+use oddwell_study::review::{CurvePoint, DepartureCurve, REFERENCE_WAVENUMBER, Review};
+
+use super::parts::{Sheet, cell, key, missing, on_demand, table};
+use super::{Runs, label};
+use crate::figure::{
+    Anchor, CATEGORIES, Dash, Figure, Frame, INK, Labels, Mark, RELATIVITY, Scale, Shape, Stroke, range,
+};
+use crate::numbers::{rounded, significant, two_digits};
+
+/// A run's curve with how it is drawn.
+struct Drawn<'a> {
+    run: &'a Review,
+    curve: &'a DepartureCurve,
+    style: usize,
+}
+
+/// General relativity's colour is left to it.
+const COLOURS: [usize; 5] = [1, 4, 5, 0, 3];
+
+impl Drawn<'_> {
+    fn stroke(&self, width: f64) -> Stroke {
+        let colour = CATEGORIES[COLOURS[self.style % COLOURS.len()]];
+        Stroke::solid(colour, width).dashed(Dash::ALL[self.style % Dash::ALL.len()])
+    }
+
+    fn shape(&self) -> Shape {
+        Shape::ALL[self.style % Shape::ALL.len()]
+    }
+}
+
+pub(super) fn section(runs: &Runs<'_>, sheet: &mut Sheet) -> Markup {
+    if runs.blinded() {
+        return html! { p.missing { "Not shown while the measurements are blinded: it would tell where the departure lies." } };
+    }
+    let curves =
+        runs.all().iter().filter_map(|run| Some((run, run.beside_data.as_ref().ok()?.curve.as_ref()?)));
+    let drawn: Vec<Drawn<'_>> =
+        curves.enumerate().map(|(style, (run, curve))| Drawn { run, curve, style }).collect();
+    if drawn.is_empty() {
+        return html! { p.missing { "No run of this page infers a departure and still has its measurements." } };
+    }
+    let study = &runs.first().manifest.study_file;
+    let lacks = |departure: &str| drawn.iter().all(|drawn| drawn.run.summary.departure != departure);
+    let scale_dependent = drawn.iter().any(|drawn| drawn.curve.scale_dependent);
+    html! {
+        @if let Some(figure) = figure(&drawn) {
+            (sheet.figure(figure, html! {
+                "τ against redshift: for each fitted shape the median and the central 68 % at every redshift; for a value a bin "
+                "or survey, mean and one and two standard deviations. Ticks below: the bins of the study."
+            }))
+        }
+        @if scale_dependent {
+            p.note { "Shapes that depend on scale are drawn at " (REFERENCE_WAVENUMBER) " h/Mpc." }
+        }
+        (on_demand("The numbers of this figure", numbers(&drawn)))
+        @if lacks("per-bin") {
+            (missing("No run of this page gives each bin a departure of its own. A hypothesis with departure = \"per-bin\" does, fitted by",
+                &format!("oddwell fit {study} --hypothesis NAME")))
+        }
+        @if lacks("per-survey") {
+            (missing("None gives each survey its own. A hypothesis with departure = \"per-survey\" does, fitted by",
+                &format!("oddwell fit {study} --hypothesis NAME")))
+        }
+    }
+}
+
+fn figure(drawn: &[Drawn<'_>]) -> Option<Figure> {
+    let bins = &drawn[0].curve.bins;
+    let highest = bins.iter().map(|(_, redshift)| *redshift).fold(0.0, f64::max) * 1.15;
+    let two_sided = |mean: Option<f64>, sd: Option<f64>| {
+        let (mean, sd) = (mean.unwrap_or(f64::NAN), sd.unwrap_or(f64::NAN));
+        [mean - 2.0 * sd, mean + 2.0 * sd]
+    };
+    let values = drawn.iter().flat_map(|drawn| {
+        let band = drawn.curve.band.iter().flat_map(|point| point.band68);
+        let own = drawn.curve.values.iter().flat_map(|(_, _, value)| two_sided(value.mean, value.sd));
+        band.chain(own).collect::<Vec<f64>>()
+    });
+    let ends = range(values.chain([0.0]), 0.06);
+    let legend = 20.0 * (drawn.len() as f64 + 1.0);
+    let (width, height) = (640.0, 340.0 + legend);
+    let frame = Frame {
+        x: Scale::linear((0.0, highest), (56.0, width - 16.0)),
+        y: Scale::linear(ends, (height - 48.0, legend + 26.0)),
+    };
+    let mut marks = frame.axes(Labels { x: "redshift", y: "τ", ..Labels::default() }, (8, 6));
+    let mut description = String::new();
+    for (line, each) in drawn.iter().enumerate() {
+        let stroke = each.stroke(2.0);
+        let y = 16.0 + 20.0 * line as f64;
+        marks.push(Mark::line(vec![(56.0, y - 4.0), (84.0, y - 4.0)], stroke));
+        if !each.curve.values.is_empty() {
+            marks.push(Mark::Symbol {
+                at: (70.0, y - 4.0),
+                radius: 4.0,
+                shape: each.shape(),
+                colour: stroke.colour,
+            });
+        }
+        marks.push(Mark::words((92.0, y), label(each.run), 12.0, Anchor::Start, INK));
+        let band: Vec<(f64, f64, f64)> =
+            each.curve.band.iter().map(|point| (point.redshift, point.band68[0], point.band68[1])).collect();
+        if !band.is_empty() {
+            marks.push(frame.band(&band, stroke.colour, 0.16));
+            let middle = each.curve.band.iter().map(|point| (point.redshift, point.median));
+            let tip = band_text(each.run, &each.curve.band);
+            description.push_str(&format!("{tip} "));
+            marks.push(Mark::about(&["departure.tau"], tip, vec![frame.line(middle, stroke)]));
+        }
+        for (place, [low, high], value) in &each.curve.values {
+            let (Some(mean), Some(sd)) = (value.mean, value.sd) else { continue };
+            // Several runs with values of their own stand beside each other.
+            let x = 0.5 * (low + high) + 0.006 * highest * (line as f64 - 1.0);
+            let tip = format!(
+                "{}, {place}: {} ± {}",
+                each.run.summary.hypothesis,
+                rounded(mean, sd),
+                two_digits(sd)
+            );
+            description.push_str(&format!("{tip}. "));
+            let thick = Stroke::solid(stroke.colour, 2.4);
+            let mut own = vec![
+                frame.bar(x, (mean - 2.0 * sd, mean + 2.0 * sd), Stroke::solid(stroke.colour, 1.0)),
+                frame.bar(x, (mean - sd, mean + sd), thick),
+                Mark::Symbol {
+                    at: frame.at((x, mean)),
+                    radius: 4.5,
+                    shape: each.shape(),
+                    colour: stroke.colour,
+                },
+            ];
+            if high > low {
+                own.push(frame.line([(*low, mean), (*high, mean)], thick));
+            }
+            let name = format!("departure.tau.{place}");
+            marks.push(Mark::about(&[place, &name], tip, own));
+        }
+    }
+    let y = 16.0 + 20.0 * drawn.len() as f64;
+    let dashed = Stroke::solid(RELATIVITY, 2.0).dashed(Dash::Long);
+    marks.push(Mark::line(vec![(56.0, y - 4.0), (84.0, y - 4.0)], dashed));
+    marks.push(Mark::words((92.0, y), "general relativity", 12.0, Anchor::Start, INK));
+    marks.push(frame.across(0.0, dashed));
+    for (place, redshift) in bins {
+        let (x, bottom) = (frame.x.at(*redshift), frame.y.ends().0);
+        let tick = Mark::line(vec![(x, bottom), (x, bottom - 7.0)], Stroke::solid(INK, 2.0));
+        marks.push(Mark::about(&[place], format!("{place} at redshift {redshift}"), vec![tick]));
+    }
+    (highest > 0.0).then(|| Figure {
+        name: "departure-against-redshift".to_owned(),
+        title: "The departure against redshift".to_owned(),
+        description: format!("{description}General relativity is at 0."),
+        width,
+        height,
+        marks,
+    })
+}
+
+fn band_text(run: &Review, band: &[CurvePoint]) -> String {
+    let at = |point: &CurvePoint| {
+        let half = 0.5 * (point.band68[1] - point.band68[0]);
+        format!(
+            "{} ({} to {}) at redshift {}",
+            rounded(point.median, half),
+            rounded(point.band68[0], half),
+            rounded(point.band68[1], half),
+            significant(point.redshift, 2)
+        )
+    };
+    match (band.first(), band.last()) {
+        (Some(first), Some(last)) => format!("{}: {}, {}.", run.summary.hypothesis, at(first), at(last)),
+        _ => run.summary.hypothesis.clone(),
+    }
+}
+
+fn numbers(drawn: &[Drawn<'_>]) -> Markup {
+    let mut rows = Vec::new();
+    for each in drawn {
+        for point in each.curve.band.iter().step_by(5) {
+            let half = 0.5 * (point.band68[1] - point.band68[0]);
+            rows.push(vec![
+                cell(&each.run.summary.hypothesis),
+                cell(format!("redshift {}", significant(point.redshift, 2))),
+                cell(rounded(point.median, half)),
+                cell(format!("{} to {}", rounded(point.band68[0], half), rounded(point.band68[1], half))),
+                cell(format!("{} to {}", rounded(point.band95[0], half), rounded(point.band95[1], half))),
+            ]);
+        }
+        for (place, _, value) in &each.curve.values {
+            let sd = value.sd.unwrap_or(f64::NAN);
+            let ends = |interval: Option<[f64; 2]>| {
+                let [low, high] = interval.unwrap_or([f64::NAN; 2]);
+                cell(format!("{} to {}", rounded(low, sd), rounded(high, sd)))
+            };
+            rows.push(vec![
+                cell(&each.run.summary.hypothesis),
+                key(place),
+                cell(rounded(value.mean.unwrap_or(f64::NAN), sd)),
+                ends(value.interval68),
+                ends(value.interval95),
+            ]);
+        }
+    }
+    table("τ against redshift", &["hypothesis", "where", "median or mean", "68 %", "95 %"], rows)
+}
