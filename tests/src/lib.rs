@@ -1,3 +1,4 @@
 //! Checks across crates, and the program that makes the demo data.
 
+pub mod browser;
 pub mod demo;

@@ -153,6 +153,11 @@ Examples:
         after_help = "Example: oddwell report runs/two-invented-surveys-constant runs/two-invented-surveys-per-bin"
     )]
     Report(ReportArguments),
+    /// Print runs as a table, for a paper or for another program
+    ///
+    /// A line a parameter and a column a run, rounded; with `--format csv` a line a run and parameter, every digit.
+    #[command(after_help = "Example: oddwell table runs/two-invented-surveys-constant --format latex")]
+    Table(TableArguments),
     /// Print a page of the manual: what a departure is, and what an odd multipole can and cannot tell about it
     ///
     /// Without a topic, lists the topics: every departure with its formula.
@@ -175,6 +180,28 @@ pub(crate) struct ReportArguments {
     /// Replace files that exist
     #[arg(long)]
     pub(crate) replace: bool,
+}
+
+/// Options of `table`.
+#[derive(Args, Debug)]
+pub(crate) struct TableArguments {
+    /// Run directories
+    #[arg(value_name = "RUN", required = true)]
+    pub(crate) runs: Vec<PathBuf>,
+    /// How to write the table
+    #[arg(long, value_enum, value_name = "FORMAT", default_value_t = TableStyle::Markdown)]
+    pub(crate) format: TableStyle,
+}
+
+/// How `table` writes.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub(crate) enum TableStyle {
+    /// A tabular of LaTeX
+    Latex,
+    /// A table of Markdown
+    Markdown,
+    /// A line a run and parameter, every digit
+    Csv,
 }
 
 /// Options of `manual`.
@@ -275,6 +302,10 @@ pub(crate) struct FitArguments {
     /// Threads to sample with [default: one a core]
     #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=1024))]
     pub(crate) threads: Option<u16>,
+    /// Then fit again with the smallest and largest separations cut, bins and surveys left out, other noise models and
+    /// growth free, and write beside the run (stability.json) how far the departure moves, and by how much it must
+    #[arg(long)]
+    pub(crate) stability: bool,
     /// Give up after so many likelihood evaluations, converged or not
     #[arg(long, value_name = "N", value_parser = clap::value_parser!(u64).range(1..=i64::MAX as u64))]
     pub(crate) maximum_evaluations: Option<u64>,

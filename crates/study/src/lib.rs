@@ -8,6 +8,7 @@
 //!
 //! This crate does no arithmetic of physics or statistics and prints nothing.
 
+mod chain_parquet;
 mod checksum;
 mod clocks;
 mod copy;
@@ -24,6 +25,7 @@ mod predict;
 mod run_directory;
 mod run_error;
 mod simulate;
+mod stability;
 mod unaveraged;
 mod warnings;
 mod worth;
@@ -38,6 +40,7 @@ pub mod resolve;
 pub mod review;
 pub mod template;
 
+pub use chain_parquet::{DESCRIPTIONS_KEY, UNITS_KEY, description_of};
 pub use copy::StudyCopy;
 pub use describe::{DescribedQuantity, Kind, describe};
 pub use error::{Location, Problem, StudyError};
@@ -54,6 +57,7 @@ pub use resolve::{AffineForm, FreeParameter, FreePrior, Hypothesis, ResolvedQuan
 pub use run_directory::{RunDirectory, read_summary};
 pub use run_error::RunError;
 pub use simulate::{Draw, Simulated, Truth, simulate_study};
+pub use stability::{Step, stability};
 pub use warnings::Warning;
 pub use worth::{OffsetWorth, offset_in_tau};
 pub use written::{make_folder, may_write, write_file};

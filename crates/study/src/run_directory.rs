@@ -1,5 +1,6 @@
 //! Run directories: complete or not there at all.
 
+use crate::chain_parquet::write_parquet;
 use crate::record::{Manifest, Summary};
 use crate::run_error::RunError;
 use oddwell_sampler::Chain;
@@ -52,7 +53,7 @@ impl RunDirectory {
         Ok(claimed)
     }
 
-    /// Writes `chain.csv`, `summary.json` and `manifest.json`, then puts the directory in its place. `derived` holds the
+    /// Writes `chain.csv`, `chain.parquet`, `summary.json` and `manifest.json`, then puts the directory in its place. `derived` holds the
     /// names of derived quantities and for each a number for every draw.
     ///
     /// # Errors
@@ -68,6 +69,10 @@ impl RunDirectory {
         let unwritable = || RunError::unwritable(&self.target);
         write_file(&self.staging.join("chain.csv"), |out| write_chain(out, names, chain, derived))
             .map_err(unwritable())?;
+        write_file(&self.staging.join("chain.parquet"), |out| {
+            write_parquet(out, names, chain, derived, &manifest.units)
+        })
+        .map_err(unwritable())?;
         write_file(&self.staging.join("summary.json"), |out| write_json(out, summary))
             .map_err(unwritable())?;
         write_file(&self.staging.join("manifest.json"), |out| write_json(out, manifest))

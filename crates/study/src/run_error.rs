@@ -90,6 +90,16 @@ pub enum RunError {
         /// The hypothesis.
         hypothesis: String,
     },
+    /// Stability of a hypothesis that has not one departure.
+    #[error(
+        "hypothesis `{hypothesis}`: stability follows one departure parameter, found {found}; choose a hypothesis with one, such as departure = \"constant\""
+    )]
+    NoStability {
+        /// The hypothesis.
+        hypothesis: String,
+        /// Departure parameters that it infers.
+        found: usize,
+    },
     /// A table of the matter power spectrum is wrong.
     #[error("{file}{at}: {rule}, found {value}; {way_out}")]
     PowerTable {

@@ -3,8 +3,11 @@
 use std::path::PathBuf;
 
 use oddwell_report::closing_summary;
-use oddwell_study::Control;
-use oddwell_study::{FitOptions, Fitted, Hypothesis, RunError, Study, default_directory, fit};
+use oddwell_study::review::STABILITY_FILE;
+use oddwell_study::{
+    Control, FitOptions, Fitted, Hypothesis, RunError, Step, Study, default_directory, fit, stability,
+    write_file,
+};
 use serde_json::Value;
 
 use super::{choice, read_study};
@@ -47,6 +50,9 @@ pub(super) fn run(arguments: &FitArguments, output: &Output) -> Result<Status, F
         let fitted = watched_fit(&study, hypothesis, &options, output, &interrupt)?;
         if !output.json && !output.quiet {
             say_result(&fitted, output, finished.is_empty())?;
+        }
+        if arguments.stability && !interrupt.came() {
+            stabilise(&study, hypothesis, &fitted, output, &interrupt)?;
         }
         let stop = fitted.interrupted || interrupt.came();
         finished.push(fitted);
@@ -115,6 +121,44 @@ fn watched_fit(
         line.show(progress, names);
         if interrupt.came() { Control::Stop } else { Control::Continue }
     })?)
+}
+
+/// Fits again with other cuts and assumptions, and writes what became of the departure into the run directory.
+fn stabilise(
+    study: &Study,
+    hypothesis: &Hypothesis,
+    fitted: &Fitted,
+    output: &Output,
+    interrupt: &Interrupt,
+) -> Result<(), Failure> {
+    if fitted.summary.departure_parameters.len() != 1 {
+        let name = &hypothesis.name;
+        output.notice(&format!("no stability runs of `{name}`: they follow one departure parameter"));
+        return Ok(());
+    }
+    let shown = output.shows_progress();
+    let found = stability(study, hypothesis, &fitted.summary, fitted.manifest.seed, &mut |step| {
+        if let Step::Begun { index, count, text } = step
+            && shown
+        {
+            output.notice(&format!("{} of {count}: {text}", index + 1));
+        }
+        if interrupt.came() { Control::Stop } else { Control::Continue }
+    });
+    let found = match found {
+        Err(error) if error.is_interruption() => {
+            output.notice("interrupted: the run is written, its stability is not");
+            return Ok(());
+        }
+        found => found?,
+    };
+    let text = serde_json::to_string_pretty(&found).map_err(Failure::input)?;
+    let path = fitted.directory.join(STABILITY_FILE);
+    write_file(&path, format!("{text}\n").as_bytes(), true)?;
+    if !output.json && !output.quiet {
+        output.result(&format!("written to {}\n", path.display()))?;
+    }
+    Ok(())
 }
 
 fn say_result(fitted: &Fitted, output: &Output, first: bool) -> Result<(), Failure> {

@@ -10,6 +10,7 @@ mod report;
 mod reveal;
 mod show;
 mod simulate;
+mod table;
 
 use oddwell_study::{Hypothesis, Override, Study};
 
@@ -27,6 +28,7 @@ pub(crate) fn run(options: &Options) -> Status {
         Command::Fit(arguments) => fit::run(arguments, &output),
         Command::Check(arguments) => check::run(arguments, &output),
         Command::Report(arguments) => report::run(arguments, &output),
+        Command::Table(arguments) => table::run(arguments, &output),
         Command::Manual(arguments) => manual::run(arguments, &output),
         Command::Blind(arguments) => blind::run(arguments, &output),
         Command::Reveal(arguments) => reveal::run(arguments, &output),

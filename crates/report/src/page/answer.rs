@@ -8,7 +8,7 @@ use super::parts::{Sheet, cell, in_summary, key, key_as, missing, prose, table, 
 use super::{Runs, label};
 use crate::closing;
 use crate::figure::{
-    Anchor, BAND, Dash, Figure, Frame, INK, Labels, MUTED, Mark, RELATIVITY, Scale, Stroke, range,
+    Anchor, BAND, Dash, Figure, Frame, Labels, MUTED, Mark, RELATIVITY, Scale, Stroke, range,
 };
 use crate::numbers::{UNKNOWN, rounded, share, significant, two_digits};
 
@@ -41,7 +41,7 @@ fn headline(run: &Review, at: usize) -> Markup {
         }
         [(name, only)] => html! {
             p.headline {
-                (key_as(name, name.strip_prefix("departure.").unwrap_or(name))) " = "
+                (key_as(name, &symbol(name))) " = "
                 (value(at, name, only, summary.blinded)) " ± "
                 (told(&pointer(at, name, "sd"), only.sd, two_digits))
             }
@@ -65,6 +65,11 @@ fn headline(run: &Review, at: usize) -> Markup {
             @if !summary.blinded { p { (prose(&closing::general_relativity_text(summary))) } }
         },
     }
+}
+
+/// τ for `departure.tau`, else the name behind `departure.`.
+fn symbol(name: &str) -> String {
+    name.strip_prefix("departure.").unwrap_or(name).replace("tau", "τ")
 }
 
 fn pointer(at: usize, name: &str, key: &str) -> String {
@@ -115,14 +120,14 @@ fn posterior_figure(summary: &Summary, picture: &ParameterPicture) -> Option<Fig
     let density = picture.posterior.as_ref()?;
     let parameter = summary.parameters.get(&picture.name)?;
     let relativity = picture.name.starts_with("departure.tau").then_some(0.0);
-    let (width, height) = (640.0, 280.0);
+    let (width, height) = (460.0, 260.0);
     let ends = range(density.at.iter().copied().chain(relativity), 0.02);
     let peak = density.density.iter().copied().fold(0.0, f64::max);
     let frame = Frame {
         x: Scale::linear(ends, (20.0, width - 20.0)),
         y: Scale::linear((0.0, 1.12 * peak), (height - 44.0, 24.0)),
     };
-    let mut marks = frame.axes(Labels { x: &picture.name, bare_y: true, ..Labels::default() }, (8, 0));
+    let mut marks = frame.axes(Labels { x: &picture.name, bare_y: true, ..Labels::default() }, (7, 0));
     let points: Vec<(f64, f64)> = density.at.iter().copied().zip(density.density.iter().copied()).collect();
     let inside = |[low, high]: [f64; 2]| -> Vec<(f64, f64, f64)> {
         points.iter().filter(|(x, _)| (low..=high).contains(x)).map(|&(x, y)| (x, 0.0, y)).collect()
@@ -164,7 +169,6 @@ fn posterior_figure(summary: &Summary, picture: &ParameterPicture) -> Option<Fig
         marks.push(Mark::words((x, 20.0), "general relativity", 12.0, anchor, RELATIVITY));
         description.push_str(" General relativity is at 0.");
     }
-    marks.push(Mark::words((width - 20.0, 20.0), tip, 13.0, Anchor::End, INK));
     Some(Figure {
         name: format!("posterior-{}", super::parts::slug(&picture.name)),
         title: format!("Posterior of {}", picture.name),

@@ -81,7 +81,7 @@ fn figure(drawn: &[Drawn<'_>]) -> Option<Figure> {
     });
     let ends = range(values.chain([0.0]), 0.06);
     let legend = 20.0 * (drawn.len() as f64 + 1.0);
-    let (width, height) = (640.0, 340.0 + legend);
+    let (width, height) = (480.0, 310.0 + legend);
     let frame = Frame {
         x: Scale::linear((0.0, highest), (56.0, width - 16.0)),
         y: Scale::linear(ends, (height - 48.0, legend + 26.0)),

@@ -167,7 +167,7 @@ fn joint_figure(run: &Review, picture: &JointPicture) -> Figure {
         marks.push(frame.across(0.0, Stroke::solid(RELATIVITY, 1.4).dashed(Dash::Long)));
     }
     let correlation = format!("correlation {:+.2}", picture.pair.correlation).replace('-', "−");
-    marks.push(Mark::words((width - 10.0, 18.0), correlation.clone(), 11.0, Anchor::End, INK));
+    marks.push(Mark::words((width - 12.0, height - 52.0), correlation.clone(), 11.0, Anchor::End, INK));
     Figure {
         name: slug(&format!("joint {first} {second}")),
         title: format!("{first} against {second}"),

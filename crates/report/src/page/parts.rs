@@ -17,7 +17,7 @@ impl Sheet {
         let name = figure.name.clone();
         debug_assert!(self.figures.iter().all(|known| known.name != name), "two figures named {name}");
         let element = figure.element(&name, &[("tabindex", "0")]);
-        let wide = figure.width > 420.0;
+        let wide = figure.width > 500.0;
         self.figures.push(figure);
         html! {
             figure id={ "figure-" (name) } class=[wide.then_some("wide")] {

@@ -1,11 +1,13 @@
-//! What a run leaves behind, as data: the contents of `summary.json` and `manifest.json`.
+//! What a run leaves behind, as data: the contents of `summary.json`, `manifest.json`, `stability.json`.
 //!
 //! Unknown numbers are `null` (`None`), never 0. Keys are a contract: scripts read them.
 
 mod manifest;
+mod stability;
 mod summary;
 
 pub use manifest::{InputFile, Manifest};
+pub use stability::{Stability, StabilityPoint, Variation};
 pub use summary::{
     BestFit, BinGoodness, ClockContrastSummary, ClockSummary, GeneralRelativity, Mimic, Ordered,
     ParameterSummary, SamplerSummary, Summary, SurveyGoodness, SwitchedOff, WarningRecord,

@@ -6,7 +6,7 @@ use crate::record::Summary;
 use oddwell_sampler::diagnostics::{JointDensity, joint_density};
 
 /// Pairs in the ranking.
-const RANKED: usize = 15;
+const RANKED: usize = 10;
 /// Joint densities of the strongest pairs of all, and of the strongest that the departure is part of.
 const PICTURED: (usize, usize) = (4, 4);
 

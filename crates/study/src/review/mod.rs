@@ -24,13 +24,16 @@ pub use traces::{Trace, TraceBand};
 use crate::assemble::{Measurements, Posterior};
 use crate::check::{CheckReport, check};
 use crate::fit::{Analysis, PointAndWidths};
-use crate::record::{Manifest, Summary};
+use crate::record::{Manifest, Stability, Summary};
 use crate::resolve::Study;
 use crate::run_directory::read_summary;
 use crate::run_error::RunError;
 use oddwell_sampler::Target;
 use std::path::{Path, PathBuf};
 use thiserror::Error;
+
+/// Where a run directory keeps what became of the departure under other cuts and assumptions.
+pub const STABILITY_FILE: &str = "stability.json";
 
 /// Why the parts of a review that need the measurements are missing. The text ends with the way out.
 #[derive(Clone, Debug, PartialEq, Eq, Error)]
@@ -65,6 +68,8 @@ pub struct Review {
     pub summary: Summary,
     /// `manifest.json`.
     pub manifest: Manifest,
+    /// `stability.json`, where the run has one.
+    pub stability: Option<Stability>,
     /// How many draws the chain holds.
     pub draws: usize,
     /// The densities of the inferred quantities, with their priors.
@@ -98,6 +103,8 @@ pub fn review(directory: &Path) -> Result<Review, RunError> {
     let summary = read_summary(directory)?;
     let manifest: Manifest = read_json(&directory.join("manifest.json"))?;
     let chain = ChainTable::read(directory)?;
+    let stability = directory.join(STABILITY_FILE);
+    let stability = stability.exists().then(|| read_json(&stability)).transpose()?;
     let restored = restore::restore(&manifest);
     let posterior = restored.as_ref().map_err(Clone::clone).and_then(|(study, measurements)| {
         let hypothesis = study.hypothesis(Some(&summary.hypothesis)).map_err(RunError::from)?;
@@ -118,6 +125,7 @@ pub fn review(directory: &Path) -> Result<Review, RunError> {
         draws: chain.len(),
         summary,
         manifest,
+        stability,
         pictures,
         traces,
         dependence,
