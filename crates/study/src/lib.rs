@@ -38,6 +38,7 @@ pub mod file;
 pub mod record;
 pub mod resolve;
 pub mod review;
+pub mod schema;
 pub mod template;
 
 pub use chain_parquet::{DESCRIPTIONS_KEY, UNITS_KEY, description_of};

@@ -56,10 +56,10 @@ pub(super) fn key_as(name: &str, words: &str) -> Markup {
 /// A table with a header. The first cell of every row is the row's own header.
 pub(super) fn table(caption: &str, header: &[&str], rows: Vec<Vec<Markup>>) -> Markup {
     html! {
-        div.scroll tabindex="0" role="region" aria-label=(caption) {
+        div.scroll tabindex="0" role="group" aria-label=(caption) {
             table {
                 caption { (caption) }
-                thead { tr { @for cell in header { th scope="col" { (cell) } } } }
+                thead { tr { @for cell in header { th scope="col" { (if cell.is_empty() { "where" } else { cell }) } } } }
                 tbody {
                     @for row in rows {
                         tr {

@@ -1,9 +1,10 @@
 //! The contents of `manifest.json`: what a run was made from.
 
+use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 
 /// `manifest.json`.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Manifest {
     /// The program's name and version.
     pub version: String,
@@ -36,7 +37,7 @@ pub struct Manifest {
 }
 
 /// One input file and its checksum.
-#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
 pub struct InputFile {
     /// Path, as given.
     pub path: String,

@@ -1,9 +1,10 @@
 //! The contents of `stability.json`: the departure under other cuts of the data and other assumptions.
 
+use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 
 /// `stability.json`.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Stability {
     /// The departure's parameter that is followed.
     pub parameter: String,
@@ -16,7 +17,7 @@ pub struct Stability {
 }
 
 /// A posterior of the departure.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct StabilityPoint {
     /// Mean; null while blinded.
     pub mean: Option<f64>,
@@ -31,7 +32,7 @@ pub struct StabilityPoint {
 }
 
 /// One change of the data or of the assumptions.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Variation {
     /// What kind of change: `smallest`, `largest` (separation or wavenumber), `without`, `only`, `noise`, `growth`.
     pub kind: String,

@@ -1,5 +1,6 @@
 //! The contents of `summary.json`.
 
+use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 use std::collections::BTreeMap;
 
@@ -7,7 +8,7 @@ use std::collections::BTreeMap;
 pub type Ordered<T> = indexmap::IndexMap<String, T>;
 
 /// `summary.json`: what a fit says, and what it is worth.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Summary {
     /// The study's title.
     pub study: String,
@@ -45,7 +46,7 @@ pub struct Summary {
 }
 
 /// A warning as data.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct WarningRecord {
     /// A word for scripts.
     pub code: String,
@@ -57,7 +58,7 @@ pub struct WarningRecord {
 }
 
 /// One inferred or derived quantity.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct ParameterSummary {
     /// Posterior mean.
     pub mean: Option<f64>,
@@ -84,7 +85,7 @@ pub struct ParameterSummary {
 }
 
 /// The best point found and how well it fits.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct BestFit {
     /// Its coordinates.
     pub parameters: Ordered<f64>,
@@ -105,7 +106,7 @@ pub struct BestFit {
 }
 
 /// χ² of one survey.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct SurveyGoodness {
     /// The survey.
     pub name: String,
@@ -122,7 +123,7 @@ pub struct SurveyGoodness {
 }
 
 /// χ² of one bin alone, by its own block of the covariance.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct BinGoodness {
     /// The bin.
     pub name: String,
@@ -137,7 +138,7 @@ pub struct BinGoodness {
 }
 
 /// Where general relativity lies in the departure's posterior.
-#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct GeneralRelativity {
     /// Two-sided tail probability: how much of the posterior lies farther out than general relativity.
     pub tail_probability: Option<f64>,
@@ -149,7 +150,7 @@ pub struct GeneralRelativity {
 }
 
 /// An error in a group of nuisances with which general relativity gives nearly the same data.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Mimic {
     /// `evolution`, `magnification` or `offset`.
     pub nuisance: String,
@@ -162,7 +163,7 @@ pub struct Mimic {
 }
 
 /// How differently clocks tick in a bin: the rms difference in rate between two places, `derived.clock_contrast`.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct ClockSummary {
     /// The survey.
     pub survey: String,
@@ -180,7 +181,7 @@ pub struct ClockSummary {
 }
 
 /// The posterior of a clock contrast.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct ClockContrastSummary {
     /// Mean.
     pub mean: Option<f64>,
@@ -191,7 +192,7 @@ pub struct ClockContrastSummary {
 }
 
 /// An effect that is left out of the predictions.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct SwitchedOff {
     /// `wide_angle`, `light_cone`, `lensing`, or `offset`.
     pub effect: String,
@@ -201,7 +202,7 @@ pub struct SwitchedOff {
 }
 
 /// What sampling cost. `evaluations` and `wall_seconds` run from the first evaluation to the last, warm-up included.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct SamplerSummary {
     /// Independent ensembles.
     pub ensembles: usize,
