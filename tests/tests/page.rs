@@ -126,7 +126,7 @@ fn numbers_on_the_page_are_those_of_the_json_files() {
             } else {
                 // One and a half digits, or a whole count rounded down.
                 let absolute = if from.ends_with("p_value") { 0.0051 } else { 0.0 };
-            0.06 * whole.abs() + if whole > 50.0 { 1.0 } else { absolute }
+                0.06 * whole.abs() + if whole > 50.0 { 1.0 } else { absolute }
             };
         assert!((shown.abs() - whole.abs()).abs() <= tolerance, "{from}: {words} is not {whole}");
     }

@@ -17,8 +17,8 @@ mod text;
 
 pub use check::check_text;
 pub use closing::closing_summary;
-pub use manual::{manual_check, manual_text, manual_topics};
 pub use figure::Figure;
+pub use manual::{manual_check, manual_text, manual_topics};
 pub use numbers::{count, duration, signed, significant, whole};
 pub use page::{Page, PageInput, page};
 pub use prediction::{EffectColumns, prediction_csv, prediction_json};

@@ -268,6 +268,47 @@ mod tests {
         reader.asked.take()
     }
 
+    /// A text with every section, so that each asks for its keys; whether it makes a study does not matter.
+    const EVERY_SECTION: &str = "
+        background = { omega_m = { normal = [0.3, 0.1] } }
+        prediction = {}
+        sampling = {}
+        blinding = {}
+        joint_covariance = [{}]
+        joint_prior = [{}]
+        systematic = [{ moves = [{}] }]
+        [[survey]]
+        name = \"windmere\"
+        fiducial = {}
+        columns = {}
+        keep = [{}]
+        template = [{}]
+        design = { separation = { low = 1.0 } }
+        [[survey.bin]]
+        design = {}
+        first = {}
+        second = {}
+    ";
+
+    /// The schema knows the keys that are read, and no others.
+    #[test]
+    fn the_schema_has_the_keys_that_are_read() {
+        let mut text = EVERY_SECTION.to_owned();
+        for shape in oddwell_model::departures::registry() {
+            text.push_str(&format!("[[hypothesis]]\nname = \"h\"\ndeparture = \"{}\"\n", shape.name()));
+        }
+        let read = asked(&text);
+        let told: std::collections::BTreeSet<(&'static str, String)> = crate::schema::study_keys()
+            .into_iter()
+            .flat_map(|keys| keys.keys.into_iter().map(move |key| (keys.section, key.name.to_owned())))
+            .collect();
+        let missing: Vec<_> = read.difference(&told).collect();
+        assert!(missing.is_empty(), "the schema lacks {missing:?}");
+        // Which family a prior is of is not asked key by key.
+        let extra: Vec<_> = told.difference(&read).filter(|(section, _)| *section != "prior").collect();
+        assert!(extra.is_empty(), "nobody reads {extra:?}");
+    }
+
     #[test]
     fn the_template_explains_every_key_that_is_read() {
         let text = crate::template::study_text();

@@ -21,13 +21,14 @@ pub use parameters::ParameterPicture;
 pub use predictive::PredictiveCheck;
 pub use traces::{Trace, TraceBand};
 
-use crate::assemble::{Measurements, Posterior};
+use crate::assemble::{Measurements, Posterior, SurveyMeasurements};
 use crate::check::{CheckReport, check};
 use crate::fit::{Analysis, PointAndWidths};
 use crate::record::{Manifest, Stability, Summary};
 use crate::resolve::Study;
 use crate::run_directory::read_summary;
 use crate::run_error::RunError;
+use oddwell_likelihood::SurveyLikelihood;
 use oddwell_sampler::Target;
 use std::path::{Path, PathBuf};
 use thiserror::Error;
@@ -171,6 +172,34 @@ struct Context<'a> {
     analysis: &'a Analysis,
     /// Some of the draws, evenly spread over the chain.
     draws: &'a [Vec<f64>],
+}
+
+/// A survey's rows among all.
+#[derive(Clone, Copy)]
+struct Placed<'a> {
+    survey: &'a SurveyMeasurements,
+    /// The likelihood of all surveys that share its noise.
+    likelihood: &'a SurveyLikelihood,
+    /// Their first row among all rows.
+    first: usize,
+    /// The survey's first row among theirs.
+    within: usize,
+}
+
+impl<'a> Context<'a> {
+    fn placed(&self) -> Vec<Placed<'a>> {
+        let mut all = Vec::new();
+        for (group, (first, likelihood)) in
+            self.measurements.groups.iter().zip(self.posterior.data.with_offsets())
+        {
+            let mut within = 0;
+            for survey in &self.measurements.surveys[group.surveys.clone()] {
+                all.push(Placed { survey, likelihood, first, within });
+                within += survey.table.len();
+            }
+        }
+        all
+    }
 }
 
 /// Draws for bands and predictive checks: 300 give a quantile of 2.5 % to a third of itself; fewer where χ² of a draw is

@@ -1,6 +1,7 @@
 //! Every multipole of every bin: measured, predicted, with the posterior's band.
 
-use super::{Context, ReviewError};
+use super::{Context, Placed, ReviewError};
+use crate::assemble::Posterior;
 use crate::check::predict_with;
 use crate::run_error::RunError;
 use oddwell_likelihood::{Axis, share_of_effective_parameters};
@@ -59,8 +60,12 @@ pub(super) fn panels(context: &Context<'_>) -> Result<Vec<Panel>, ReviewError> {
     let mut scratch = posterior.scratch();
     let mut draws = Vec::with_capacity(context.draws.len());
     for draw in context.draws {
-        draws.push(posterior.predict(draw, &mut scratch).map_err(RunError::from)?);
+        let mut prediction = posterior.predict(draw, &mut scratch).map_err(RunError::from)?;
+        add_expected_templates(posterior, &mut prediction);
+        draws.push(prediction);
     }
+    let mut at_best = context.analysis.prediction.clone();
+    add_expected_templates(posterior, &mut at_best);
     let values = posterior.values(&context.analysis.best);
     let setup = ModelSetup {
         departure: departures::find("none").unwrap_or(posterior.model.setup().departure),
@@ -69,25 +74,31 @@ pub(super) fn panels(context: &Context<'_>) -> Result<Vec<Panel>, ReviewError> {
     };
     let relativity = predict_with(posterior, setup, &|_, value| value, &values)?;
     let effects = posterior.model.by_effect(&values, &mut Workspace::new()).map_err(RunError::from)?;
+    let of_templates = posterior.of_templates(&values).map(|mut added| {
+        // What was integrated out comes on top.
+        for (row, added) in added.iter_mut().enumerate() {
+            *added += at_best[row] - context.analysis.prediction[row];
+        }
+        ("templates".to_owned(), added)
+    });
     let effects: Vec<(String, Vec<f64>)> = effects
         .into_iter()
-        .map(|(effect, predicted)| (effect.name().to_owned(), posterior.measured(&predicted)))
+        .map(|(effect, predicted)| (effect.name().to_owned(), posterior.projected(&predicted)))
+        .chain(of_templates)
         .filter(|(_, predicted)| predicted.iter().any(|value| *value != 0.0))
         .collect();
     let blinded = context.study.file.blinding.is_some();
     let mut panels = Vec::new();
-    let mut first = 0;
-    for survey in &context.measurements.surveys {
-        let likelihood = &survey.likelihood;
-        let errors = likelihood.covariance().standard_deviations();
+    for Placed { survey, likelihood, first, within } in context.placed() {
+        let errors = survey.likelihood.covariance().standard_deviations();
         let own = &context.analysis.prediction[first..first + likelihood.rows()];
         // Positions within the survey, in the order of its table.
         let mut groups: Vec<(Panel, Vec<usize>)> = Vec::new();
         for (position, row) in survey.table.rows.iter().enumerate() {
-            let index = first + position;
+            let index = first + within + position;
             let column: Vec<f64> = draws.iter().map(|draw| draw[index]).collect();
             let band = |tail: f64| [quantile(&column, tail), quantile(&column, 1.0 - tail)];
-            let best = context.analysis.prediction[index];
+            let best = at_best[index];
             let entry = PanelRow {
                 at: row.at,
                 measured: (!blinded).then_some(row.value),
@@ -126,6 +137,7 @@ pub(super) fn panels(context: &Context<'_>) -> Result<Vec<Panel>, ReviewError> {
             }
         }
         for (mut panel, positions) in groups {
+            let positions: Vec<usize> = positions.into_iter().map(|position| within + position).collect();
             panel.chi_squared = likelihood
                 .subset_chi_squared(own, &positions)
                 .map_err(|source| RunError::Likelihood { survey: survey.name.clone(), source })?;
@@ -137,7 +149,19 @@ pub(super) fn panels(context: &Context<'_>) -> Result<Vec<Panel>, ReviewError> {
             panel.rows.sort_by(|one, other| one.at.total_cmp(&other.at));
             panels.push(panel);
         }
-        first += likelihood.rows();
     }
     Ok(panels)
+}
+
+/// Adds templates whose amplitudes were integrated out, at the amplitudes expected for this prediction.
+fn add_expected_templates(posterior: &Posterior, prediction: &mut [f64]) {
+    for (first, survey) in posterior.data.with_offsets() {
+        let rows = first..first + survey.rows();
+        let found = survey.amplitudes(&prediction[rows.clone()]);
+        for (template, amplitude) in survey.templates().iter().zip(found.mean.iter()) {
+            for (row, shape) in prediction[rows.clone()].iter_mut().zip(template.shape.iter()) {
+                *row += amplitude * shape;
+            }
+        }
+    }
 }

@@ -5,7 +5,7 @@
 //! Statistica Sinica 6, 733, eq. 8). The probability for one draw is known in closed form, so no data are drawn. It uses
 //! the data twice, and so errs towards 0.5: a small value is worth more than it says.
 
-use super::{Context, ReviewError};
+use super::{Context, Placed, ReviewError};
 use crate::run_error::RunError;
 use oddwell_sampler::Target;
 
@@ -24,21 +24,24 @@ pub struct PredictiveCheck {
 
 pub(super) fn predictive(context: &Context<'_>) -> Result<Vec<PredictiveCheck>, ReviewError> {
     let posterior = context.posterior;
-    let mut places: Vec<(String, usize, Vec<usize>)> = Vec::new();
-    for (survey, measured) in context.measurements.surveys.iter().enumerate() {
-        places.push((measured.name.clone(), survey, (0..measured.table.len()).collect()));
+    let mut places: Vec<(String, Placed<'_>, Vec<usize>)> = Vec::new();
+    for placed in context.placed() {
+        let in_group =
+            |rows: Vec<usize>| rows.into_iter().map(|row| placed.within + row).collect::<Vec<usize>>();
+        let all = (0..placed.survey.table.len()).collect();
+        places.push((placed.survey.name.clone(), placed, in_group(all)));
         let bins = posterior.model.setup().bins.iter().enumerate();
-        let own = bins.map(|(index, bin)| (bin.path(), survey, measured.rows_of(index)));
+        let own = bins.map(|(index, bin)| (bin.path(), placed, in_group(placed.survey.rows_of(index))));
         places.extend(own.filter(|(_, _, rows)| !rows.is_empty()));
     }
     let mut sums = vec![(0.0, Some(0.0)); places.len()];
     let mut scratch = posterior.scratch();
     for draw in context.draws {
         let prediction = posterior.predict(draw, &mut scratch).map_err(RunError::from)?;
-        for ((_, survey, rows), (chi_squared, probability)) in places.iter().zip(&mut sums) {
-            let Some((first, likelihood)) = posterior.data.with_offsets().nth(*survey) else { continue };
+        for ((_, placed, rows), (chi_squared, probability)) in places.iter().zip(&mut sums) {
+            let Placed { survey, likelihood, first, .. } = *placed;
             let own = &prediction[first..first + likelihood.rows()];
-            let name = || context.measurements.surveys[*survey].name.clone();
+            let name = || survey.name.clone();
             let found = likelihood
                 .subset_chi_squared(own, rows)
                 .map_err(|source| RunError::Likelihood { survey: name(), source })?;

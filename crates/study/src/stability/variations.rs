@@ -1,7 +1,7 @@
 //! What is changed: cuts in separation, bins and surveys, noise models, growth.
 
 use crate::assemble::Measurements;
-use crate::file::{KeepSection, Located, Override, StudyFile};
+use crate::file::{KeepSection, Located, Override, StudyFile, SurveySection};
 use crate::resolve::{Hypothesis, Study};
 use crate::run_error::RunError;
 use oddwell_likelihood::{Axis, noise_families};
@@ -43,7 +43,7 @@ impl Change {
                 }
             }
             What::Noise(name) => {
-                for survey in file.surveys.iter_mut().filter(|survey| survey.mock_count.is_some()) {
+                for survey in file.surveys.iter_mut().filter(|survey| from_mocks(survey)) {
                     survey.noise.value = name;
                 }
             }
@@ -150,8 +150,13 @@ fn cuts(axis: Axis, measurements: &Measurements) -> Vec<Change> {
     smallest.chain(largest).collect()
 }
 
+/// Whether a survey's own covariance is an estimate, so that its noise is a matter of choice.
+fn from_mocks(survey: &SurveySection) -> bool {
+    survey.mock_count.is_some() || survey.mocks.is_some()
+}
+
 fn noises(study: &Study) -> Vec<Change> {
-    let from_mocks = || study.file.surveys.iter().filter(|survey| survey.mock_count.is_some());
+    let from_mocks = || study.file.surveys.iter().filter(|survey| from_mocks(survey));
     let others = noise_families().iter().filter(|family| {
         from_mocks().next().is_some() && from_mocks().any(|survey| survey.noise.value != family.name)
     });
