@@ -152,7 +152,9 @@ fn json_of_or_null(runs: &[Review], from: &str) -> Option<f64> {
 #[test]
 fn a_run_that_did_not_converge_says_so_first() {
     let folder = tempfile::tempdir().unwrap();
-    let unfinished = run(&demo().join("study.toml"), "constant", &folder.path().join("run"), Some(1_000));
+    let greedy = edited(|text| text.replace("effective_samples = 4000", "effective_samples = 1000000"));
+    let study = greedy.path().join("study.toml");
+    let unfinished = run(&study, "constant", &folder.path().join("run"), Some(20_000));
     assert!(!unfinished.summary.converged);
     let html = page_of(&[unfinished]).html;
     assert_sound(&html);
