@@ -1,6 +1,7 @@
 //! Evidences that are known from a formula or by quadrature.
 
 #![allow(clippy::unwrap_used, clippy::panic, reason = "a test stops at the first surprise")]
+#![allow(clippy::print_stdout, reason = "the table of what came out is the point of the full size")]
 
 mod common;
 

@@ -8,11 +8,14 @@ use oddwell_sampler::{EvaluationFailure, PriorSet, Target, build_prior};
 use statrs::function::gamma::ln_gamma;
 use std::f64::consts::{PI, TAU};
 
+/// The log likelihood of a point.
+pub(crate) type LogLikelihood = Box<dyn Fn(&[f64]) -> f64 + Sync>;
+
 /// A log likelihood over a box.
 pub(crate) struct Boxed {
     pub(crate) name: &'static str,
     pub(crate) priors: PriorSet,
-    pub(crate) log_likelihood: Box<dyn Fn(&[f64]) -> f64 + Sync>,
+    pub(crate) log_likelihood: LogLikelihood,
     /// From a formula, or from quadrature.
     pub(crate) log_evidence: f64,
 }

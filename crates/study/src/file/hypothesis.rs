@@ -40,6 +40,8 @@ pub struct HypothesisSection {
     pub felt_by: Located<FeltBy>,
     /// The shape's parameters by key, in the shape's order.
     pub parameters: Vec<(&'static str, Located<Quantity>)>,
+    /// How probable the hypothesis is before the data, relative to the others; default 1.
+    pub weight: Located<f64>,
 }
 
 impl HypothesisSection {
@@ -47,6 +49,7 @@ impl HypothesisSection {
         let name = section.required_text("name", "\"constant\"");
         let departure = read_departure(&section);
         let felt_by = departure.as_ref().and_then(|departure| read_felt_by(&section, departure.value));
+        let weight = read_weight(&section);
         let Some(departure) = departure else {
             // Which other keys belong here depends on the shape.
             section.find("felt_by");
@@ -74,8 +77,27 @@ impl HypothesisSection {
             departure,
             felt_by: felt_by?,
             parameters: parameters.into_iter().collect::<Option<_>>()?,
+            weight: weight?,
         })
     }
+}
+
+fn read_weight(section: &Section<'_>) -> Option<Located<f64>> {
+    if section.find("weight").is_none() {
+        return Some(Located::default_of(1.0));
+    }
+    let weight = section.number("weight", "1.0")?;
+    if weight.value > 0.0 {
+        return Some(weight);
+    }
+    let fault = Fault::OutOfRange {
+        name: "weight".to_owned(),
+        rule: "above 0",
+        value: weight.value.to_string(),
+        way_out: "give how probable the hypothesis is relative to the others, or remove it",
+    };
+    section.fault_at("weight", fault);
+    None
 }
 
 fn read_departure(section: &Section<'_>) -> Option<Located<Shape>> {

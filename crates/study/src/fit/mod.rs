@@ -13,14 +13,14 @@ mod switched_off;
 
 pub(crate) use analysis::{Analysis, PointAndWidths};
 
-use crate::assemble::{Posterior, read_measurements};
+use crate::assemble::{Measurements, Posterior, read_measurements};
 use crate::blinding::{WITHHELD, withhold};
 use crate::file::Override;
 use crate::record::{Manifest, Summary};
 use crate::resolve::{Hypothesis, Study};
 use crate::run_directory::RunDirectory;
 use crate::run_error::RunError;
-use oddwell_sampler::{Control, EnsembleSettings, Progress, SamplerError, StopReason, Target};
+use oddwell_sampler::{Chain, Control, EnsembleSettings, Progress, SamplerError, StopReason, Target};
 use std::path::{Path, PathBuf};
 use time::OffsetDateTime;
 use time::format_description::well_known::Rfc3339;
@@ -82,7 +82,6 @@ pub fn fit(
     options: &FitOptions,
     progress: &mut dyn FnMut(&Progress, &[String]) -> Control,
 ) -> Result<Fitted, RunError> {
-    let started = OffsetDateTime::now_utc();
     if study.file.blinding.is_some() && hypothesis.watched().is_empty() {
         let hypothesis = hypothesis.name.clone();
         return Err(RunError::Withheld { hypothesis, withheld: WITHHELD });
@@ -93,8 +92,18 @@ pub fn fit(
     if posterior.dimension() == 0 {
         return Err(RunError::NothingInferred { hypothesis: hypothesis.name.clone() });
     }
+    let fitted = fit_posterior(study, &posterior, &measurements, &directory, options, progress)?;
+    Ok(fitted.0)
+}
+
+/// How the study wants a posterior sampled.
+pub(crate) fn ensemble_settings(
+    study: &Study,
+    hypothesis: &Hypothesis,
+    options: &FitOptions,
+) -> EnsembleSettings {
     let sampling = &study.file.sampling;
-    let settings = EnsembleSettings {
+    EnsembleSettings {
         seed: options.seed.unwrap_or(sampling.seed.value),
         effective_samples: sampling.effective_samples.value as f64,
         watched: hypothesis.watched(),
@@ -104,10 +113,24 @@ pub fn fit(
             .maximum_evaluations
             .or_else(|| sampling.maximum_evaluations.as_ref().map(|maximum| maximum.value)),
         ..EnsembleSettings::default()
-    };
+    }
+}
+
+/// [`fit`] of a posterior that is there already, with the chain.
+pub(crate) fn fit_posterior(
+    study: &Study,
+    posterior: &Posterior,
+    measurements: &Measurements,
+    directory: &RunDirectory,
+    options: &FitOptions,
+    progress: &mut dyn FnMut(&Progress, &[String]) -> Control,
+) -> Result<(Fitted, Chain), RunError> {
+    let started = OffsetDateTime::now_utc();
+    let hypothesis = &posterior.hypothesis;
+    let settings = ensemble_settings(study, hypothesis, options);
     let names = posterior.map.names().to_vec();
-    let chain = sampling::chain_of(&posterior, &settings, &mut |state| progress(state, &names))?;
-    let (mut summary, derived) = summary::summarise(study, &posterior, &measurements, &chain, settings.seed)?;
+    let chain = sampling::chain_of(posterior, &settings, &mut |state| progress(state, &names))?;
+    let (mut summary, derived) = summary::summarise(study, posterior, measurements, &chain, settings.seed)?;
     if study.file.blinding.is_some() {
         withhold(&mut summary);
     }
@@ -134,7 +157,7 @@ pub fn fit(
     };
     directory.write(&names, &chain, (&derived.names, &derived.columns), &summary, &manifest)?;
     let interrupted = chain.outcome.stopped_by == StopReason::Caller && !chain.outcome.converged;
-    Ok(Fitted { summary, manifest, directory: options.out.clone(), interrupted })
+    Ok((Fitted { summary, manifest, directory: options.out.clone(), interrupted }, chain))
 }
 
 impl RunError {
