@@ -7,6 +7,7 @@ mod interrupt;
 mod options;
 mod output;
 mod progress;
+mod weigh_progress;
 
 use std::process::ExitCode;
 

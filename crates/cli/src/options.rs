@@ -117,6 +117,18 @@ Example: oddwell fit study.toml --hypothesis constant --out runs/first --seed 7
 Ctrl-C stops early and keeps what was sampled, marked as not converged; a second one ends at once.")]
     #[command(mut_arg("hypothesis", |argument| argument.help(WHICH_TO_FIT)))]
     Fit(FitArguments),
+    /// Weigh the hypotheses of a study against each other: evidences, odds, and what they hang on
+    ///
+    /// Computes the evidence of every hypothesis by independent routes that must agree, samples every posterior, and says how
+    /// the odds depend on the prior of the departure, and at which width of it they turn. Prior odds come from `weight` in
+    /// `[[hypothesis]]`.
+    ///
+    /// An evidence is no detection, and a prior can decide it. Where the estimators disagree, the exit status is 3.
+    #[command(after_help = "\
+Example: oddwell weigh study.toml --out runs/weighed
+
+Ctrl-C stops early; what is finished is kept, and `--resume` goes on with it.")]
+    Weigh(WeighArguments),
     /// Draw synthetic measurements from the study's own model, as a complete study
     ///
     /// Writes a folder with the study, its tables with drawn values, its covariances, and truth.csv. Inferred quantities
@@ -309,6 +321,29 @@ pub(crate) struct FitArguments {
     /// Give up after so many likelihood evaluations, converged or not
     #[arg(long, value_name = "N", value_parser = clap::value_parser!(u64).range(1..=i64::MAX as u64))]
     pub(crate) maximum_evaluations: Option<u64>,
+}
+
+/// Options of `weigh`.
+#[derive(Args, Debug)]
+#[command(mut_arg("hypothesis", |argument| argument.hide(true)))]
+pub(crate) struct WeighArguments {
+    #[command(flatten)]
+    pub(crate) study: StudyArguments,
+    /// The run directory to make [default: runs/<title>-weigh]
+    #[arg(long, value_name = "DIR")]
+    pub(crate) out: Option<PathBuf>,
+    /// Replace the run directory if it exists, once the new run is complete
+    #[arg(long)]
+    pub(crate) replace: bool,
+    /// Go on with what an interrupted run has finished
+    #[arg(long)]
+    pub(crate) resume: bool,
+    /// Seed of every random number, in place of the study's
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u64).range(..=i64::MAX as u64))]
+    pub(crate) seed: Option<u64>,
+    /// Threads to compute with [default: one a core]
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u16).range(1..=1024))]
+    pub(crate) threads: Option<u16>,
 }
 
 /// Reads the command line. A request for help or version is answered, a mistake explained; then there is only a status.

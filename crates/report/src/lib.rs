@@ -14,6 +14,7 @@ mod run_table;
 mod show;
 mod style;
 mod text;
+mod weigh;
 
 pub use check::check_text;
 pub use closing::closing_summary;
@@ -26,3 +27,4 @@ pub use references::{Reference, bibliography, references};
 pub use run_table::{TableFormat, run_table};
 pub use show::{show_json, show_table};
 pub use style::Style;
+pub use weigh::weigh_text;

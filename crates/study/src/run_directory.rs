@@ -106,9 +106,10 @@ impl Drop for RunDirectory {
 }
 
 /// Whether `--replace` may take it away: an empty folder, or one that this program has written.
-fn is_run(path: &Path) -> bool {
+pub(crate) fn is_run(path: &Path) -> bool {
     let empty = fs::read_dir(path).is_ok_and(|mut entries| entries.next().is_none());
-    empty || ["summary.json", "manifest.json"].iter().all(|file| path.join(file).is_file())
+    let has = |file: &str| path.join(file).is_file();
+    empty || (has("manifest.json") && (has("summary.json") || has("weigh.json")))
 }
 
 /// Removes what a run that was killed left behind: hidden folders whose process is gone (where that can be told).

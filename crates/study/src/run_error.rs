@@ -2,6 +2,7 @@
 
 use crate::error::StudyError;
 use oddwell_cosmology::CosmologyError;
+use oddwell_evidence::EvidenceError;
 use oddwell_likelihood::{DataError, LikelihoodError, NoiseError};
 use oddwell_model::ModelError;
 use oddwell_sampler::{PriorError, SamplerError};
@@ -82,6 +83,17 @@ pub enum RunError {
     /// Sampling failed.
     #[error(transparent)]
     Sampler(#[from] SamplerError),
+    /// An evidence can't be had.
+    #[error(transparent)]
+    Evidence(#[from] EvidenceError),
+    /// Nothing to go on with.
+    #[error("{}: can't be resumed: {reason}; start anew without `--resume`", .path.display())]
+    NotResumable {
+        /// The run directory.
+        path: PathBuf,
+        /// Why.
+        reason: &'static str,
+    },
     /// Nothing to infer.
     #[error(
         "hypothesis `{hypothesis}` has nothing to infer: every quantity is held; give at least one quantity a prior, such as `tau = {{ normal = [0.0, 3.0] }}`"

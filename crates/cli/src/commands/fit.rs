@@ -19,7 +19,7 @@ use crate::progress::ProgressLine;
 
 pub(super) fn run(arguments: &FitArguments, output: &Output) -> Result<Status, Failure> {
     let study = read_study(&arguments.study)?;
-    let threads = threads(arguments)?;
+    let threads = set_threads(arguments.threads)?;
     let asked = arguments.study.hypothesis.as_deref();
     let plan = plan(&study, arguments, output)?;
     if asked.is_none() {
@@ -97,8 +97,8 @@ fn plan<'a>(
 }
 
 /// Sizes the pool in which chains run side by side, and says how many threads there are.
-fn threads(arguments: &FitArguments) -> Result<usize, Failure> {
-    if let Some(threads) = arguments.threads {
+pub(super) fn set_threads(threads: Option<u16>) -> Result<usize, Failure> {
+    if let Some(threads) = threads {
         rayon::ThreadPoolBuilder::new()
             .num_threads(usize::from(threads))
             .build_global()

@@ -11,6 +11,7 @@ mod reveal;
 mod show;
 mod simulate;
 mod table;
+mod weigh;
 
 use oddwell_study::{Hypothesis, Override, Study};
 
@@ -26,6 +27,7 @@ pub(crate) fn run(options: &Options) -> Status {
         Command::Show(arguments) => show::run(arguments, &output),
         Command::Predict(arguments) => predict::run(arguments, &output),
         Command::Fit(arguments) => fit::run(arguments, &output),
+        Command::Weigh(arguments) => weigh::run(arguments, &output),
         Command::Check(arguments) => check::run(arguments, &output),
         Command::Report(arguments) => report::run(arguments, &output),
         Command::Table(arguments) => table::run(arguments, &output),

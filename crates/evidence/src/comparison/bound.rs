@@ -1,5 +1,10 @@
 //! How much a tail probability can be worth at best.
 
+use nalgebra::{Cholesky, DMatrix, DVector};
+use statrs::distribution::{ChiSquared, ContinuousCDF};
+use statrs::function::erf::erfc;
+use std::f64::consts::SQRT_2;
+
 /// The largest odds against a point hypothesis with tail probability p that any reasonable prior gives: 1/(−e p ln p) for
 /// p < 1/e, 1 above (Sellke, Bayarri & Berger 2001, Am. Stat. 55, 62, eq. 3). p = 0.05 gives 2.46, p = 0.01 8.13.
 ///
@@ -12,6 +17,23 @@ pub fn largest_odds(p: f64) -> f64 {
     } else {
         -1.0 / (std::f64::consts::E * p * p.ln())
     }
+}
+
+/// Two-sided tail probability of a normal deviate.
+pub fn two_sided_tail(deviate: f64) -> f64 {
+    erfc(deviate.abs() / SQRT_2)
+}
+
+/// Tail probability of several correlated deviates z together: χ² = zᵀ R⁻¹ z with as many degrees of freedom. `correlation` holds
+/// the rows of R; `None` where that is no correlation.
+pub fn joint_tail(deviates: &[f64], correlation: &[f64]) -> Option<f64> {
+    let n = deviates.len();
+    if correlation.len() != n * n || n == 0 {
+        return None;
+    }
+    let z = DVector::from_row_slice(deviates);
+    let square = Cholesky::new(DMatrix::from_row_slice(n, n, correlation))?.solve(&z).dot(&z);
+    ChiSquared::new(n as f64).ok().map(|chi_squared| chi_squared.sf(square))
 }
 
 #[cfg(test)]
@@ -27,6 +49,10 @@ mod tests {
             // The table has three digits.
             assert!((got / lowest - 1.0).abs() < 6e-3, "{p}: {got}");
         }
+        // 1.96 standard deviations; two independent deviates of 1: exp(−χ²/2) = 1/e.
+        assert!((two_sided_tail(-1.959_963_985) - 0.05).abs() < 1e-9);
+        assert!((joint_tail(&[1.0, 1.0], &[1.0, 0.0, 0.0, 1.0]).unwrap() - (-1f64).exp()).abs() < 1e-12);
+        assert!(joint_tail(&[], &[]).is_none());
         assert_eq!(largest_odds(0.9), 1.0);
         assert!(largest_odds(-0.1).is_nan());
     }

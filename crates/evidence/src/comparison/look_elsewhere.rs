@@ -59,9 +59,47 @@ pub fn global_tail(deviates: &[f64], correlation: &DMatrix<f64>, seed: u64) -> O
     Some(GlobalTail { best, deviate, local, global, bound })
 }
 
+/// Correlation of the estimates of the first `of` parameters, each with the nuisances alone free beside it: what
+/// [`global_tail`] needs for the best of several shapes.
+///
+/// `information`: Fisher information of the data about the `of` amplitudes and then the nuisances, which have the prior precision
+/// `nuisance_precision`. With the nuisances integrated out, M = F_aa − F_an (F_nn + Λ)⁻¹ F_na; amplitude a alone is estimated by its
+/// row of the score over M_aa, so the correlation is M_ab/√(M_aa M_bb). `None` where the data say nothing about an amplitude.
+pub fn correlations(
+    information: &DMatrix<f64>,
+    of: usize,
+    nuisance_precision: &DMatrix<f64>,
+) -> Option<DMatrix<f64>> {
+    let nuisances = information.nrows().checked_sub(of)?;
+    let own = information.view((0, 0), (of, of)).into_owned();
+    let shared = information.view((of, 0), (nuisances, of)).into_owned();
+    let rest = information.view((of, of), (nuisances, nuisances)) + nuisance_precision;
+    let left = if nuisances == 0 { own } else { own - shared.tr_mul(&Cholesky::new(rest)?.solve(&shared)) };
+    let scale = left.diagonal();
+    if !scale.iter().all(|entry| *entry > 0.0) {
+        return None;
+    }
+    Some(DMatrix::from_fn(of, of, |i, j| left[(i, j)] / (scale[i] * scale[j]).sqrt()))
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    /// Two shapes whose only overlap is a nuisance: without a prior on it, and one datum each besides, they are
+    /// anticorrelated; a tight prior on it makes them independent.
+    #[test]
+    fn nuisances_correlate_shapes() {
+        let jacobian = DMatrix::from_row_slice(3, 3, &[1.0, 0.0, 1.0, 0.0, 1.0, 1.0, 0.0, 0.0, 1.0]);
+        let information = jacobian.tr_mul(&jacobian);
+        let with = |precision: f64| {
+            correlations(&information, 2, &DMatrix::from_element(1, 1, precision)).unwrap()[(0, 1)]
+        };
+        // M = 1 − 1/(3 + Λ) on the diagonal, −1/(3 + Λ) off it.
+        assert!((with(0.0) + 0.5).abs() < 1e-12);
+        assert!((with(1e9)).abs() < 1e-8);
+        assert!(correlations(&DMatrix::zeros(2, 2), 2, &DMatrix::zeros(0, 0)).is_none());
+    }
 
     #[test]
     fn independent_deviates_and_one_and_the_same() {

@@ -7,15 +7,15 @@ use oddwell_sampler::Chain;
 use oddwell_sampler::diagnostics::{TailSource, tail_of, tail_of_distance};
 
 /// A free departure parameter and its value in general relativity.
-pub(super) struct GeneralRelativityPoint {
+pub(crate) struct GeneralRelativityPoint {
     /// Its index among the free parameters.
-    pub(super) parameter: usize,
+    pub(crate) parameter: usize,
     /// Its value in general relativity.
-    pub(super) value: f64,
+    pub(crate) value: f64,
 }
 
 /// The free parameters of the departure that have a value in general relativity.
-pub(super) fn points(posterior: &Posterior) -> Vec<GeneralRelativityPoint> {
+pub(crate) fn points(posterior: &Posterior) -> Vec<GeneralRelativityPoint> {
     let shape = posterior.hypothesis.shape.0;
     let value_of = |name: &str| {
         let key = name.strip_prefix("departure.")?.split('.').next()?.to_owned();

@@ -12,6 +12,7 @@ mod suspicions;
 mod switched_off;
 
 pub(crate) use analysis::{Analysis, PointAndWidths};
+pub(crate) use general_relativity::points as general_relativity_points;
 
 use crate::assemble::{Measurements, Posterior, read_measurements};
 use crate::blinding::{WITHHELD, withhold};
@@ -58,6 +59,11 @@ pub struct Fitted {
 /// `runs/<title>-<hypothesis>`, with the title in lower case and dashes for everything but letters and digits.
 #[must_use]
 pub fn default_directory(study: &Study, hypothesis: &Hypothesis) -> PathBuf {
+    default_directory_of(study, &hypothesis.name)
+}
+
+/// `runs/<title>-<what>`.
+pub(crate) fn default_directory_of(study: &Study, what: &str) -> PathBuf {
     let mut slug = String::new();
     for character in study.file.title.value.to_lowercase().chars() {
         if character.is_alphanumeric() {
@@ -68,7 +74,7 @@ pub fn default_directory(study: &Study, hypothesis: &Hypothesis) -> PathBuf {
     }
     let slug = slug.trim_matches('-');
     let slug = if slug.is_empty() { "study" } else { slug };
-    Path::new("runs").join(format!("{slug}-{}", hypothesis.name))
+    Path::new("runs").join(format!("{slug}-{what}"))
 }
 
 /// Samples the posterior of a hypothesis and writes a run directory. `progress` is called some 25 times a second with

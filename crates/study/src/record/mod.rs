@@ -5,6 +5,7 @@
 mod manifest;
 mod stability;
 mod summary;
+mod weigh;
 
 pub use manifest::{InputFile, Manifest};
 pub use stability::{Stability, StabilityPoint, Variation};
@@ -12,3 +13,4 @@ pub use summary::{
     BestFit, BinGoodness, ClockContrastSummary, ClockSummary, GeneralRelativity, Mimic, Ordered,
     ParameterSummary, SamplerSummary, Summary, SurveyGoodness, SwitchedOff, WarningRecord,
 };
+pub use weigh::{BestOfRecord, ConsistencyRecord, HypothesisRecord, Sensitivity, WeighRecord};
