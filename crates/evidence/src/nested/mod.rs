@@ -42,8 +42,11 @@ pub const LEAST_INSERTION_PROBABILITY: f64 = 1e-4;
 /// Nested sampling and its settings.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Nested {
-    /// Live points of each run; at least 4·dimension + 8 are used.
+    /// Live points of each run at most; a first run of a quarter of them tells the information, and from it how many reach
+    /// `error`. At least 4·dimension + 8 are used.
     pub live_points: usize,
+    /// Standard error of ln Z that is wanted: √(H/live points of all runs), H the information.
+    pub error: f64,
     /// Independent runs, side by side.
     pub runs: usize,
     /// How long new points walk.
@@ -57,12 +60,38 @@ pub struct Nested {
 impl Default for Nested {
     fn default() -> Self {
         Self {
-            live_points: 800,
+            live_points: 1000,
+            error: 0.04,
             runs: 4,
             sweeps: Sweeps::Anew(12.0),
             remainder: 0.01,
             maximum_evaluations: 1_000_000_000,
         }
+    }
+}
+
+impl Nested {
+    /// Live points of a run over so many dimensions: even, and half of them span the space with some to spare.
+    fn live(wanted: usize, dimension: usize) -> usize {
+        wanted.max(4 * dimension + 8).next_multiple_of(2)
+    }
+
+    /// Live points of each run that reach the wanted error, from a run of a quarter of what is allowed; and what that cost.
+    fn enough<T: Target>(
+        &self,
+        problem: &Problem<'_, T>,
+        watch: &Watch,
+    ) -> Result<(usize, u64), EvidenceError> {
+        let dimension = problem.target.dimension();
+        let least = Self::live(self.live_points / 4, dimension);
+        if least >= self.live_points {
+            return Ok((least, 0));
+        }
+        let pilot = run::run(self, problem, watch, self.runs, least)?;
+        let information = shrinkage::integrate(&pilot.dead, problem.seed, self.runs).information;
+        let wanted = information / (self.error * self.error) / self.runs as f64;
+        let wanted = (wanted.ceil() as usize).clamp(least, self.live_points);
+        Ok((Self::live(wanted, dimension), pilot.evaluations))
     }
 }
 
@@ -72,17 +101,18 @@ impl<T: Target> Estimator<T> for Nested {
     }
 
     fn estimate(&self, problem: &Problem<'_, T>, watch: &Watch) -> Result<Estimate, EvidenceError> {
-        if self.runs == 0 || self.live_points < 8 {
+        if self.runs == 0 || self.live_points < 8 || !(self.error > 0.0) {
             return Err(EvidenceError::Setting {
                 setting: "nested",
-                rule: "at least 1 run of at least 8 live points",
-                value: format!("{} runs of {}", self.runs, self.live_points),
+                rule: "at least 1 run of at least 8 live points, with an error above 0",
+                value: format!("{} runs of {}, {}", self.runs, self.live_points, self.error),
             });
         }
+        let (live, first) = self.enough(problem, watch)?;
         let runs: Vec<_> = (0..self.runs)
             .into_par_iter()
             .map(|index| {
-                let run = run::run(self, problem, watch, index)?;
+                let run = run::run(self, problem, watch, index, live)?;
                 let integral = shrinkage::integrate(&run.dead, problem.seed, index);
                 Ok((run, integral))
             })
@@ -96,7 +126,7 @@ impl<T: Target> Estimator<T> for Nested {
         let mut estimate = Estimate::new(
             mean,
             (scatter.max(simulated) / count).sqrt(),
-            runs.iter().map(|(run, _)| run.evaluations).sum(),
+            first + runs.iter().map(|(run, _)| run.evaluations).sum::<u64>(),
         );
         estimate.information =
             Some(runs.iter().map(|(_, integral)| integral.information).sum::<f64>() / count);

@@ -21,16 +21,14 @@ pub(super) struct Run {
     pub(super) evaluations: u64,
 }
 
-/// Runs until the live points can add no more than the remainder.
+/// Runs with so many live points, an even number, until they can add no more than the remainder.
 pub(super) fn run<T: Target>(
     settings: &Nested,
     problem: &Problem<'_, T>,
     watch: &Watch,
     index: usize,
+    live: usize,
 ) -> Result<Run, EvidenceError> {
-    let dimension = problem.target.dimension();
-    // Survivors, half of the live points, must span the space with some to spare.
-    let live = settings.live_points.max(4 * dimension + 8) / 2 * 2;
     let mut walk = Walk::new(problem, watch, index)?;
     let mut cloud = walk.draws(problem.priors, live)?;
     let mut dead: Vec<Dead> = Vec::new();

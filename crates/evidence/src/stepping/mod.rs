@@ -43,7 +43,7 @@ pub struct SteppingStones {
 
 impl Default for SteppingStones {
     fn default() -> Self {
-        Self { draws: 500, runs: 8, sweeps: Sweeps::Anew(6.0), spread: 0.25 }
+        Self { draws: 400, runs: 8, sweeps: Sweeps::Anew(6.0), spread: 0.25 }
     }
 }
 

@@ -66,8 +66,19 @@ impl<'a> IntegratedPosterior<'a> {
     /// # Errors
     /// [`RunError`] where the priors of the remaining quantities can't be built.
     pub fn new(posterior: &'a Posterior) -> Result<Option<IntegratedPosterior<'a>>, RunError> {
+        Self::keeping(posterior, &[])
+    }
+
+    /// The same, but the parameters of `kept` stay to be sampled, linear or not.
+    ///
+    /// # Errors
+    /// As [`IntegratedPosterior::new`].
+    pub fn keeping(
+        posterior: &'a Posterior,
+        kept: &[usize],
+    ) -> Result<Option<IntegratedPosterior<'a>>, RunError> {
         let Some(compressed) = posterior.compressed() else { return Ok(None) };
-        let Choice { integrated, interval } = choose(posterior);
+        let Choice { integrated, interval } = choose(posterior, kept);
         if integrated.is_empty() {
             return Ok(None);
         }
@@ -246,9 +257,12 @@ impl Target for IntegratedPosterior<'_> {
 }
 
 /// Which quantities are integrated out.
-fn choose(posterior: &Posterior) -> Choice {
+fn choose(posterior: &Posterior, kept: &[usize]) -> Choice {
     let model = &posterior.model;
     let linear = |parameter: usize| {
+        if kept.contains(&parameter) {
+            return false;
+        }
         let mut terms = posterior.map.terms().iter().filter(|term| term.parameter == parameter);
         terms.all(|term| {
             // Amplitudes of templates, which stand behind the model's quantities, are integrated out by the likelihood itself

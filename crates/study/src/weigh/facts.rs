@@ -1,7 +1,7 @@
 //! What the draws of a posterior say that a comparison needs; small enough to be kept.
 
 use super::Work;
-use super::pieces::{Outcome, problem};
+use super::pieces::{Outcome, integrated, problem};
 use super::plan::Departure;
 use crate::assemble::Posterior;
 use crate::record::Summary;
@@ -11,7 +11,7 @@ use oddwell_evidence::{
     Contained, DensityRatio, Estimator, EvidenceError, Laplace, Problem, Ratio, Watch, conditional_densities,
 };
 use oddwell_model::Workspace;
-use oddwell_sampler::{Chain, SharedPrior};
+use oddwell_sampler::{Chain, SharedPrior, Target};
 use serde::{Deserialize, Serialize};
 use std::time::Instant;
 
@@ -54,28 +54,25 @@ pub(super) fn facts(
     watch: &Watch,
     clock: Instant,
 ) -> Result<Facts, RunError> {
-    let with_draws = Problem { chain: Some(chain), ..problem(work, posterior) };
-    let laplace = Outcome::of(Laplace::default().estimate(&with_draws, watch), clock)?;
-    let mut evaluations =
-        chain.evaluations + laplace.estimate.as_ref().map_or(0, |estimate| estimate.evaluations);
-    let (mut ratio, mut no_ratio, mut curve) = (None, None, None);
-    if departure.contains_general_relativity() {
-        let point = Contained {
-            parameters: departure.amplitudes.clone(),
-            values: departure.values.clone(),
-            log_evidence: 0.0,
-            error: 0.0,
-        };
-        match conditional_densities(&with_draws, &point, DensityRatio::default().draws, watch) {
-            Ok(densities) => {
-                ratio = Some(densities.ratio());
-                curve = Some(width_curve(&densities));
-                evaluations += densities.ratio().evaluations;
-            }
-            Err(EvidenceError::NotApplicable { reason, .. }) => no_ratio = Some(reason),
-            Err(error) => return Err(error.into()),
+    let left = integrated(posterior)?;
+    let (laplace, densities) = match &left {
+        Some(left) => {
+            let chain = projected(chain, left.sampled());
+            let departure = departure.among(left.sampled());
+            let problem = problem(work, left, &left.priors);
+            let laplace = Laplace::default().estimate(&problem, watch);
+            (laplace, densities(Problem { chain: Some(&chain), ..problem }, &departure, watch)?)
         }
-    }
+        None => {
+            let problem = Problem { chain: Some(chain), ..problem(work, posterior, &posterior.priors) };
+            (Laplace::default().estimate(&problem, watch), densities(problem, departure, watch)?)
+        }
+    };
+    let laplace = Outcome::of(laplace, clock)?;
+    let Densities { ratio, no_ratio, curve } = densities;
+    let evaluations = chain.evaluations
+        + laplace.estimate.as_ref().map_or(0, |estimate| estimate.evaluations)
+        + ratio.map_or(0, |ratio| ratio.evaluations);
     let columns: Vec<Vec<f64>> = departure.amplitudes.iter().map(|at| chain.column(*at)).collect();
     let priors: Vec<SharedPrior> =
         departure.amplitudes.iter().map(|at| posterior.priors.marginal(*at).clone()).collect();
@@ -100,6 +97,50 @@ pub(super) fn facts(
         evaluations,
         seconds: clock.elapsed().as_secs_f64(),
     })
+}
+
+struct Densities {
+    ratio: Option<Ratio>,
+    no_ratio: Option<String>,
+    curve: Option<WidthCurve>,
+}
+
+/// What the point of general relativity and other widths of the prior are worth.
+fn densities<T: Target>(
+    problem: Problem<'_, T>,
+    departure: &Departure,
+    watch: &Watch,
+) -> Result<Densities, RunError> {
+    if !departure.contains_general_relativity() {
+        return Ok(Densities { ratio: None, no_ratio: None, curve: None });
+    }
+    let point = Contained {
+        parameters: departure.amplitudes.clone(),
+        values: departure.values.clone(),
+        log_evidence: 0.0,
+        error: 0.0,
+    };
+    match conditional_densities(&problem, &point, DensityRatio::default().draws, watch) {
+        Ok(found) => {
+            Ok(Densities { ratio: Some(found.ratio()), no_ratio: None, curve: Some(width_curve(&found)) })
+        }
+        Err(EvidenceError::NotApplicable { reason, .. }) => {
+            Ok(Densities { ratio: None, no_ratio: Some(reason), curve: None })
+        }
+        Err(error) => Err(error.into()),
+    }
+}
+
+/// The chain of some of the parameters.
+fn projected(chain: &Chain, onto: &[usize]) -> Chain {
+    let rows = chain.points.chunks_exact(chain.dimension);
+    Chain {
+        dimension: onto.len(),
+        points: rows.flat_map(|row| onto.iter().map(|at| row[*at])).collect(),
+        diagnostics: onto.iter().map(|at| chain.diagnostics[*at]).collect(),
+        peak: None,
+        ..chain.clone()
+    }
 }
 
 /// The largest distance between posterior and prior over the departure's inferred quantities.

@@ -3,13 +3,15 @@
 use super::Work;
 use super::facts::{Facts, facts};
 use super::plan::Departure;
-use crate::assemble::Posterior;
+use crate::assemble::{IntegratedPosterior, Posterior};
 use crate::fit::fit_posterior;
 use crate::record::Ordered;
 use crate::run_directory::RunDirectory;
 use crate::run_error::RunError;
-use oddwell_evidence::{ClosedForm, Estimate, Estimator, EvidenceError, Nested, Problem, SteppingStones};
-use oddwell_sampler::{Control, StopReason, Target};
+use oddwell_evidence::{
+    ClosedForm, Estimate, Estimator, EvidenceError, Nested, Problem, SteppingStones, Watch,
+};
+use oddwell_sampler::{Control, PriorSet, StopReason, Target};
 use serde::{Deserialize, Serialize};
 use std::time::Instant;
 
@@ -41,6 +43,10 @@ pub(crate) struct Pieces {
 }
 
 impl Outcome {
+    fn not(reason: &str) -> Outcome {
+        Outcome { estimate: None, not_applicable: Some(reason.to_owned()), seconds: 0.0 }
+    }
+
     pub(crate) fn of(
         result: Result<Estimate, EvidenceError>,
         clock: Instant,
@@ -77,36 +83,48 @@ impl Task {
         let name = format!("{}.{}", posterior.hypothesis.name, self.name());
         let outcome = work.state.piece(&name, || {
             let clock = Instant::now();
-            let problem = problem(work, posterior);
-            let result = match self {
-                Task::ClosedForm => ClosedForm.estimate(&problem, &watch.watch),
-                _ if posterior.dimension() == 0 => {
-                    return Ok(Outcome {
-                        estimate: None,
-                        not_applicable: Some("there is nothing to integrate over".into()),
-                        seconds: 0.0,
-                    });
-                }
-                Task::Nested => Nested::default().estimate(&problem, &watch.watch),
-                Task::Stepping => SteppingStones::default().estimate(&problem, &watch.watch),
-            };
-            Ok(Outcome::of(result, clock)?)
+            if self == Task::ClosedForm {
+                let problem = problem(work, posterior, &posterior.priors);
+                return Ok(Outcome::of(ClosedForm.estimate(&problem, &watch.watch), clock)?);
+            }
+            if posterior.dimension() == 0 {
+                return Ok(Outcome::not("there is nothing to integrate over"));
+            }
+            // Where nothing is left, the full posterior checks the closed form.
+            match integrated(posterior)? {
+                Some(left) => self.run(&problem(work, &left, &left.priors), &watch.watch, clock),
+                None => self.run(&problem(work, posterior, &posterior.priors), &watch.watch, clock),
+            }
         })?;
         watch.one_more();
         Ok(outcome)
     }
+
+    fn run<T: Target>(
+        self,
+        problem: &Problem<'_, T>,
+        watch: &Watch,
+        clock: Instant,
+    ) -> Result<Outcome, RunError> {
+        let result = match self {
+            Task::Nested => Nested::default().estimate(problem, watch),
+            Task::Stepping => SteppingStones::default().estimate(problem, watch),
+            Task::ClosedForm => ClosedForm.estimate(problem, watch),
+        };
+        Ok(Outcome::of(result, clock)?)
+    }
 }
 
-/// The problem of a posterior, without draws.
-pub(super) fn problem<'a>(work: &Work<'_>, posterior: &'a Posterior) -> Problem<'a, Posterior> {
-    Problem {
-        target: posterior,
-        priors: &posterior.priors,
-        seed: work.seed,
-        peak: None,
-        chain: None,
-        contained: None,
-    }
+/// The posterior with its linear quantities integrated out, but for those of the departure; `None` where there are none, or
+/// where nothing would be left.
+pub(super) fn integrated(posterior: &Posterior) -> Result<Option<IntegratedPosterior<'_>>, RunError> {
+    let kept = posterior.hypothesis.watched();
+    Ok(IntegratedPosterior::keeping(posterior, &kept)?.filter(|left| left.dimension() > 0))
+}
+
+/// The problem of a target, without draws.
+pub(super) fn problem<'a, T: Target>(work: &Work<'_>, target: &'a T, priors: &'a PriorSet) -> Problem<'a, T> {
+    Problem { target, priors, seed: work.seed, peak: None, chain: None, contained: None }
 }
 
 impl Pieces {

@@ -23,6 +23,14 @@ impl Departure {
         }
     }
 
+    /// The same amplitudes as places among some of the parameters, all of which must be there.
+    pub(super) fn among(&self, parameters: &[usize]) -> Departure {
+        let place = |at: &usize| parameters.iter().position(|parameter| parameter == at);
+        let amplitudes: Vec<usize> = self.amplitudes.iter().filter_map(place).collect();
+        debug_assert_eq!(amplitudes.len(), self.amplitudes.len(), "amplitudes are never integrated out");
+        Departure { amplitudes, values: self.values.clone() }
+    }
+
     /// Whether general relativity is a point of it.
     pub(super) fn contains_general_relativity(&self) -> bool {
         !self.amplitudes.is_empty()
