@@ -62,10 +62,7 @@ fn ratio(odds: f64) -> String {
 fn sentence(hypothesis: &HypothesisRecord, record: &WeighRecord, style: Style) -> String {
     let name = format!("`{}`", hypothesis.name);
     if hypothesis.tested == Some(false) {
-        return format!(
-            "{name}: {}; there are no odds.",
-            style.caution("untested: the data leave its prior as it was")
-        );
+        return format!("{name}: {}; there are no odds.", style.caution("untested"));
     }
     let Some(sensitivity) = &hypothesis.sensitivity else {
         return if hypothesis.tested.is_none() {

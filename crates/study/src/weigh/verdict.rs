@@ -126,7 +126,7 @@ fn hypothesis_record(
         disagreements: agreement.disagreements,
         estimators,
         not_applicable,
-        tested: distance.map(|distance| distance >= LEAST_DISTANCE),
+        tested: distance.map(|distance| distance >= LEAST_DISTANCE && !growth_alone(work, index)),
         distance_from_prior: distance,
         sensitivity: None,
         evaluations: evaluations + facts.map_or(0, |facts| facts.evaluations),
@@ -218,10 +218,15 @@ fn take_constants_out(hypotheses: &mut [HypothesisRecord], reference: usize) {
     }
 }
 
+/// Whether what the measurements see of a departure is growth alone: felt by everything, odd multipoles only.
+fn growth_alone(work: &Work<'_>, index: usize) -> bool {
+    let odd_only = work.measurements.rows.iter().all(|row| row.multipole % 2 == 1);
+    work.posteriors[index].hypothesis.felt_by == FeltBy::Everything && odd_only
+}
+
 fn notes(work: &Work<'_>, hypotheses: &[HypothesisRecord], pieces: &[Pieces]) -> Vec<String> {
     let mut notes = Vec::new();
-    let odd_only = work.measurements.rows.iter().all(|row| row.multipole % 2 == 1);
-    for ((hypothesis, pieces), posterior) in hypotheses.iter().zip(pieces).zip(work.posteriors) {
+    for (index, (hypothesis, pieces)) in hypotheses.iter().zip(pieces).enumerate() {
         if pieces.facts.as_ref().is_some_and(|facts| !facts.converged) {
             notes.push(format!(
                 "the posterior of `{}` is not converged: its density ratio and averages are not to be relied on",
@@ -229,13 +234,16 @@ fn notes(work: &Work<'_>, hypotheses: &[HypothesisRecord], pieces: &[Pieces]) ->
             ));
         }
         if hypothesis.tested == Some(false) {
-            let why = if posterior.hypothesis.felt_by == FeltBy::Everything && odd_only {
-                ": felt by everything, it leaves odd multipoles as they are but for growth; even multipoles would test it"
+            notes.push(if growth_alone(work, index) {
+                format!(
+                    "the data do not test `{}`: felt by everything, it leaves potential and acceleration in balance, and odd \
+                     multipoles see of it only how much matter has grown, which biases and sigma8 do as well; even multipoles \
+                     would test it",
+                    hypothesis.name
+                )
             } else {
-                ""
-            };
-            notes
-                .push(format!("the data do not test `{}`: its posterior is its prior{why}", hypothesis.name));
+                format!("the data do not test `{}`: its posterior is its prior", hypothesis.name)
+            });
         }
     }
     notes
