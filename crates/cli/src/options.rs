@@ -170,6 +170,16 @@ Examples:
     /// A line a parameter and a column a run, rounded; with `--format csv` a line a run and parameter, every digit.
     #[command(after_help = "Example: oddwell table runs/two-invented-surveys-constant --format latex")]
     Table(TableArguments),
+    /// Print a JSON Schema: of the study file (for editors that complete it as it is typed), or of a result
+    ///
+    /// Without a topic, lists what there are schemas of.
+    #[command(after_help = "Example: oddwell schema study > study.schema.json")]
+    Schema(SchemaArguments),
+    /// Print a script that lets a shell complete commands and options
+    #[command(
+        after_help = "Example: oddwell completions bash > ~/.local/share/bash-completion/completions/oddwell"
+    )]
+    Completions(CompletionsArguments),
     /// Print a page of the manual: what a departure is, and what an odd multipole can and cannot tell about it
     ///
     /// Without a topic, lists the topics: every departure with its formula.
@@ -216,12 +226,31 @@ pub(crate) enum TableStyle {
     Csv,
 }
 
+/// Options of `schema`.
+#[derive(Args, Debug)]
+pub(crate) struct SchemaArguments {
+    /// What to describe, such as study or summary
+    #[arg(value_name = "TOPIC")]
+    pub(crate) topic: Option<String>,
+}
+
+/// Options of `completions`.
+#[derive(Args, Debug)]
+pub(crate) struct CompletionsArguments {
+    /// The shell
+    #[arg(value_name = "SHELL", value_enum)]
+    pub(crate) shell: clap_complete::Shell,
+}
+
 /// Options of `manual`.
 #[derive(Args, Debug)]
 pub(crate) struct ManualArguments {
     /// The topic, such as the name of a departure
     #[arg(value_name = "TOPIC")]
     pub(crate) topic: Option<String>,
+    /// Write the manual pages of all commands into this folder, as `man` reads them
+    #[arg(long, value_name = "DIR", conflicts_with = "topic")]
+    pub(crate) pages: Option<PathBuf>,
 }
 
 /// Options of `new`.

@@ -10,6 +10,9 @@ use crate::options::ManualArguments;
 use crate::output::Output;
 
 pub(super) fn run(arguments: &ManualArguments, output: &Output) -> Result<Status, Failure> {
+    if let Some(folder) = &arguments.pages {
+        return super::completions::write_pages(folder, output);
+    }
     let Some(topic) = &arguments.topic else {
         if output.json {
             output.json_result(&serde_json::to_value(manual_pages()).map_err(Failure::input)?)?;

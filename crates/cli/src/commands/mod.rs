@@ -2,12 +2,14 @@
 
 mod blind;
 mod check;
+mod completions;
 mod fit;
 mod manual;
 mod new;
 mod predict;
 mod report;
 mod reveal;
+mod schema;
 mod show;
 mod simulate;
 mod table;
@@ -31,6 +33,8 @@ pub(crate) fn run(options: &Options) -> Status {
         Command::Check(arguments) => check::run(arguments, &output),
         Command::Report(arguments) => report::run(arguments, &output),
         Command::Table(arguments) => table::run(arguments, &output),
+        Command::Schema(arguments) => schema::run(arguments, &output),
+        Command::Completions(arguments) => completions::run(arguments, &output),
         Command::Manual(arguments) => manual::run(arguments, &output),
         Command::Blind(arguments) => blind::run(arguments, &output),
         Command::Reveal(arguments) => reveal::run(arguments, &output),

@@ -27,7 +27,7 @@ pub(super) fn section(runs: &Runs<'_>, sheet: &mut Sheet) -> Markup {
     }
 }
 
-fn departures<'a>(summary: &'a Summary) -> Vec<(&'a str, &'a ParameterSummary)> {
+fn departures(summary: &Summary) -> Vec<(&str, &ParameterSummary)> {
     let names = summary.departure_parameters.iter();
     names.filter_map(|name| Some((name.as_str(), summary.parameters.get(name)?))).collect()
 }

@@ -54,7 +54,7 @@ impl SurveyMeasurements {
     }
 }
 
-/// Surveys whose noise is one: a single survey, or those of a [[joint_covariance]].
+/// Surveys whose noise is one: a single survey, or those of a `[[joint_covariance]]`.
 #[derive(Clone, Debug)]
 pub struct NoiseGroup {
     /// Which surveys, by index.
