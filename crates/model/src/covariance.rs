@@ -92,10 +92,11 @@ impl AngularIntegrals {
         }
     }
 
-    /// The bracket of the covariance of Pₗ and Pₘ (imaginary parts for odd ℓ): ℓ+m even only.
+    /// The bracket of the covariance of Pₗ and Pₘ (imaginary parts for odd ℓ). Real and imaginary part of one mode's
+    /// Δ₁Δ₂* have the covariance ½ Im P₁₂²: the odd–even blocks, first order in H/k.
     fn fourier(&self, l: usize, m: usize) -> f64 {
         let sign = if l.is_multiple_of(2) { 1.0 } else { -1.0 };
-        if (l + m).is_multiple_of(2) { self.autos[l][m] + sign * self.cross[l][m] } else { 0.0 }
+        if (l + m).is_multiple_of(2) { self.autos[l][m] + sign * self.cross[l][m] } else { self.cross[l][m] }
     }
 }
 
@@ -103,7 +104,8 @@ impl AngularIntegrals {
 ///
 /// ```text
 /// Cov[ξₗ(s_i), ξₘ(s_j)] = (−i)^(l+m) (2l+1)(2m+1)/V ∫k²dk/2π² j̄ₗ(ks_i) j̄ₘ(ks_j) ½∫dμ Lₗ Lₘ [(−1)^m P₁₁tot P₂₂tot + P₁₂²]
-/// Cov[Pₗ, Pₘ] = (2l+1)(2m+1)/N_k ½∫dμ LₗLₘ [P₁₁tot P₂₂tot + (−1)^l Re P₁₂²],  N_k = V V_shell/(2π)³
+/// Cov[Pₗ, Pₘ] = (2l+1)(2m+1)/N_k ½∫dμ LₗLₘ [P₁₁tot P₂₂tot + (−1)^l Re P₁₂²],  l+m even;  [Im P₁₂²],  l+m odd;
+/// N_k = V V_shell/(2π)³
 /// ```
 ///
 /// with P_XX = |g_X|²P, P₁₂ = g₁g₂*P, g = b + fμ² + iμ(H/k)R, tot = + 1/n. Odd–even blocks (first order in H/k) and the

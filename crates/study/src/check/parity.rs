@@ -26,8 +26,8 @@ pub struct ParityVerdict {
     pub largest: f64,
     /// Its rows: the odd one and the even one.
     pub rows: [String; 2],
-    /// The difference largest in size from the correlations of Gaussian fields for the survey's design (in Fourier space, from
-    /// none); null where there is no design.
+    /// The difference largest in size from the correlations of Gaussian fields for the survey's design; null where there is no
+    /// design.
     pub largest_difference: Option<f64>,
     /// The probability that an estimate from mocks differs from those at least this much; null where it was not estimated.
     pub p_value: Option<f64>,
@@ -82,16 +82,12 @@ pub(super) fn parity_verdicts(
                 }
                 let rows: Vec<usize> = odd.iter().chain(&even).copied().collect();
                 let block = covariance.select(&rows);
-                let expectation = match space {
-                    // Odd multipoles are imaginary, even ones real: nothing connects them.
-                    Space::Fourier => Some(None),
-                    Space::Separation => gaussian(section, own, &rows, bin, expected)?.map(Some),
-                };
+                let expectation = gaussian(section, own, &rows, bin, expected)?;
                 let (left, right): (Vec<usize>, Vec<usize>) =
                     ((0..odd.len()).collect(), (odd.len()..rows.len()).collect());
-                let known = expectation.as_ref().and_then(Option::as_ref);
                 let mocks = survey.likelihood.mock_count();
-                let found = parity_block(&block, known, &left, &right, mocks).map_err(in_all)?;
+                let found =
+                    parity_block(&block, expectation.as_ref(), &left, &right, mocks).map_err(in_all)?;
                 let (largest, one, other) = found.largest;
                 verdicts.push(ParityVerdict {
                     bin: expected.posterior.model.setup().bins[bin].path(),
