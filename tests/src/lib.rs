@@ -1,4 +1,5 @@
-//! Checks across crates, and the program that makes the demo data.
+//! What the checks across crates share: the demo data and the fuzz targets.
 
 pub mod browser;
 pub mod demo;
+pub mod fuzz;

@@ -37,7 +37,7 @@ fn every_bad_design_says_what_is_wrong_in_full() {
         (
             whole,
             "separation = { low = 24.0, high = 24.5, width = 8.0 }",
-            "study.toml:20:49: `width` must be above 0, and such that 1 to 10000 shells fit between low and high, not 8.0; change the width, or the ends",
+            "study.toml:20:49: `width` must be above 0, and such that 1 to 1000 shells fit between low and high, not 8.0; change the width, or the ends",
         ),
         (
             whole,

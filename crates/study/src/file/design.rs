@@ -7,7 +7,7 @@ use super::source::{Located, Origin};
 use crate::fault::Fault;
 
 /// More rows than this of one multipole of one bin are a slip of the width.
-const MOST_ROWS: usize = 10_000;
+const MOST_ROWS: usize = 1000;
 
 /// `[survey.design]`: which multipoles, in which shells.
 #[derive(Clone, Debug, PartialEq)]
@@ -156,7 +156,7 @@ fn regular(section: &Section<'_>, key: &'static str) -> Option<Vec<f64>> {
             if width > 0.0 && count >= 1.0 && count <= MOST_ROWS as f64 {
                 Some((0..=count as usize).map(|index| low + width * index as f64).collect())
             } else {
-                let rule = "above 0, and such that 1 to 10000 shells fit between low and high";
+                let rule = "above 0, and such that 1 to 1000 shells fit between low and high";
                 let (name, value) = ("width".to_owned(), format!("{width:?}"));
                 let way_out = "change the width, or the ends";
                 table.fault_at("width", Fault::OutOfRange { name, rule, value, way_out });
