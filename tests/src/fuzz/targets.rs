@@ -8,6 +8,9 @@ use std::collections::BTreeMap;
 use std::fmt::Write;
 use std::path::Path;
 
+/// What a target says to an input made from the sound one of an index.
+type Answer = dyn Fn(usize, &[u8]) -> Result<(), String>;
+
 /// A reader, and sound inputs for it.
 pub struct Target {
     /// What the command line calls it.
@@ -15,7 +18,7 @@ pub struct Target {
     /// What it feeds.
     pub about: &'static str,
     sound: Vec<Vec<u8>>,
-    answer: Box<dyn Fn(usize, &[u8]) -> Result<(), String>>,
+    answer: Box<Answer>,
 }
 
 impl Target {
