@@ -21,7 +21,7 @@ use std::path::{Path, PathBuf};
 fn run(study: &Study, hypothesis: &str, out: &Path) -> Review {
     let options = FitOptions {
         out: out.to_owned(),
-        replace: false,
+        existing: oddwell_study::Existing::Refuse,
         seed: None,
         maximum_evaluations: None,
         command: vec!["oddwell".to_owned(), "fit".to_owned()],

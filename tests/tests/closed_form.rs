@@ -4,7 +4,7 @@
 
 use oddwell_sampler::Control;
 use oddwell_study::record::Summary;
-use oddwell_study::{FitOptions, Study, fit};
+use oddwell_study::{Existing, FitOptions, Study, fit};
 use serde_json::Value;
 use std::path::{Path, PathBuf};
 
@@ -17,7 +17,7 @@ fn run(study: &str, hypothesis: &str) -> Summary {
     let folder = tempfile::tempdir().unwrap();
     let options = FitOptions {
         out: folder.path().join("run"),
-        replace: false,
+        existing: Existing::Refuse,
         seed: None,
         maximum_evaluations: None,
         command: Vec::new(),

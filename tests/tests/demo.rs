@@ -3,7 +3,7 @@
 #![allow(clippy::unwrap_used, clippy::panic, reason = "a test stops at the first surprise")]
 
 use oddwell_sampler::Control;
-use oddwell_study::{FitOptions, Study, fit, read_summary};
+use oddwell_study::{Existing, FitOptions, Study, fit, read_summary};
 use oddwell_tests::demo;
 use std::path::{Path, PathBuf};
 
@@ -25,7 +25,7 @@ fn a_fit_converges_and_covers_the_truth() {
     let out = tempfile::tempdir().unwrap();
     let options = FitOptions {
         out: out.path().join("run"),
-        replace: false,
+        existing: Existing::Refuse,
         seed: None,
         maximum_evaluations: None,
         command: vec!["test".into()],

@@ -4,7 +4,7 @@
 
 use oddwell_sampler::{Control, Target};
 use oddwell_study::assemble::{Posterior, read_measurements};
-use oddwell_study::{FitOptions, Override, Study, fit};
+use oddwell_study::{Existing, FitOptions, Override, Study, fit};
 use std::fmt::Write;
 use std::path::{Path, PathBuf};
 
@@ -127,7 +127,7 @@ fn a_joint_fit_in_both_spaces_finds_flat_biases_and_the_departure() {
     let study = study(folder.path(), ALL);
     let options = FitOptions {
         out: folder.path().join("run"),
-        replace: false,
+        existing: Existing::Refuse,
         seed: None,
         maximum_evaluations: None,
         command: Vec::new(),

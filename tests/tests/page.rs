@@ -33,7 +33,7 @@ fn run(study: &Path, hypothesis: &str, out: &Path, maximum_evaluations: Option<u
     let study = Study::read(study, &[]).unwrap();
     let options = FitOptions {
         out: out.to_owned(),
-        replace: false,
+        existing: oddwell_study::Existing::Refuse,
         seed: None,
         maximum_evaluations,
         command: vec!["oddwell".to_owned(), "fit".to_owned()],

@@ -24,7 +24,7 @@ fn parquet_and_csv_hold_the_same_draws() {
     let out = folder.path().join("run");
     let options = FitOptions {
         out: out.clone(),
-        replace: false,
+        existing: oddwell_study::Existing::Refuse,
         seed: None,
         maximum_evaluations: Some(20_000),
         command: Vec::new(),

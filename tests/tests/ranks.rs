@@ -45,7 +45,7 @@ fn ranks(studies: usize, seed: u64) -> Vec<(String, Vec<usize>)> {
         let study = Study::read(&drawn.study, &[]).unwrap();
         let options = FitOptions {
             out: here.join("run"),
-            replace: false,
+            existing: oddwell_study::Existing::Refuse,
             seed: Some(seed + 1_000_000 + index as u64),
             maximum_evaluations: None,
             command: vec!["test".into()],

@@ -3,7 +3,7 @@
 #![allow(clippy::unwrap_used, clippy::panic, reason = "a test stops at the first surprise")]
 
 use oddwell_report::{Style, closing_summary};
-use oddwell_study::{Control, FitOptions, Study, StudyFile, fit};
+use oddwell_study::{Control, Existing, FitOptions, Study, StudyFile, fit};
 use std::path::{Path, PathBuf};
 
 const BEGIN: &str = "<!-- demo output: begin -->";
@@ -22,7 +22,7 @@ fn closing_summary_of_the_demo() -> String {
     let folder = tempfile::tempdir().unwrap();
     let options = FitOptions {
         out: folder.path().join("run"),
-        replace: false,
+        existing: Existing::Refuse,
         seed: None,
         maximum_evaluations: None,
         command: Vec::new(),

@@ -114,7 +114,8 @@ pub(crate) enum Command {
     #[command(after_help = "\
 Example: oddwell fit study.toml --hypothesis constant --out runs/first --seed 7
 
-Ctrl-C stops early and keeps what was sampled, marked as not converged; a second one ends at once.")]
+Ctrl-C stops early and keeps what was sampled, marked as not converged; a second one ends at once. Either way, and even
+if the run is killed, `--resume` goes on with it.")]
     #[command(mut_arg("hypothesis", |argument| argument.help(WHICH_TO_FIT)))]
     Fit(FitArguments),
     /// Weigh the hypotheses of a study against each other: evidences, odds, and what they hang on
@@ -337,6 +338,11 @@ pub(crate) struct FitArguments {
     /// Replace the run directory if it exists, once the new run is complete
     #[arg(long)]
     pub(crate) replace: bool,
+    /// Go on with a run that was interrupted or killed: the chain will be the same as if it had not been
+    ///
+    /// Starts the run if there is none, and takes one that is finished as it is.
+    #[arg(long, conflicts_with = "replace")]
+    pub(crate) resume: bool,
     /// Seed of every random number, in place of the study's
     #[arg(long, value_name = "N", value_parser = clap::value_parser!(u64).range(..=i64::MAX as u64))]
     pub(crate) seed: Option<u64>,

@@ -121,10 +121,13 @@ mod signals {
     use std::thread::sleep;
     use std::time::{Duration, Instant};
 
+    /// Not linear, so that there is something to sample.
+    const BIAS: &str = "larkfield.near.first.bias={ normal = [2.1, 0.1] }";
+
     fn stopped_by(signal: &str) {
         let folder = Folder::with("{ normal = [0.0, 0.3] }", 1_000_000_000);
         let child = folder
-            .oddwell(&["fit", "study.toml", "--out", "runs/long"])
+            .oddwell(&["fit", "study.toml", "--out", "runs/long", "--set", BIAS])
             .stdout(Stdio::piped())
             .stderr(Stdio::piped())
             .spawn()
@@ -143,7 +146,7 @@ mod signals {
         assert_eq!(ran.status, Some(130), "{}", ran.err);
         assert!(ran.err.contains("\nstopping, and writing what has been sampled"), "{}", ran.err);
         assert!(ran.out.contains("\nNOT CONVERGED: "), "{}", ran.out);
-        assert_eq!(names(&folder.path("runs")), ["long"]);
+        assert_eq!(names(&folder.path("runs")), [".long.unfinished", "long"]);
         let summary = json_file(&folder.path("runs/long/summary.json"));
         assert_eq!(summary["converged"], false);
         assert!(summary["parameters"]["departure.tau"]["sd"].as_f64().is_some_and(|sd| sd > 0.0));

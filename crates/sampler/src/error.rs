@@ -49,6 +49,11 @@ pub enum SamplerError {
         /// What had been sampled until then, if anything.
         partial: Option<Box<Chain>>,
     },
+    /// The state of another run.
+    #[error(
+        "sampling: the state to go on from belongs to a run with other settings or another number of dimensions; start anew"
+    )]
+    ForeignState,
     /// The caller stopped the run before there was anything to hand back.
     #[error(
         "sampling: stopped before there was a draw to hand back; allow it more evaluations, or more time"

@@ -50,6 +50,26 @@ pub fn sample<T: Target>(
     settings: &EnsembleSettings,
     callback: &mut dyn FnMut(&Progress) -> Control,
 ) -> Result<Chain, SamplerError> {
+    sample_with(target, priors, settings, None, callback, &mut |_, _| {})
+}
+
+/// [`sample`] of a run whose state can be kept, and gone on from: the chain is the same, bit by bit, however often the run was
+/// broken off.
+///
+/// `resumed` is a state that `keep` saw in a run of the same target, priors and settings (the limit of evaluations may
+/// differ). `keep` is called after every round, some 25 times a second, with the state as it is, and whether the callback
+/// just stopped the run. A run of independent draws, which has none to speak of, never calls it.
+///
+/// # Errors
+/// As [`sample`]; and [`SamplerError::ForeignState`] for the state of another run.
+pub fn sample_with<T: Target>(
+    target: &T,
+    priors: &PriorSet,
+    settings: &EnsembleSettings,
+    resumed: Option<RunState>,
+    callback: &mut dyn FnMut(&Progress) -> Control,
+    keep: &mut dyn FnMut(&RunState, bool),
+) -> Result<Chain, SamplerError> {
     let clock = Instant::now();
     if target.completed_dimension().is_some() && priors.dimension() == 0 {
         return draw_directly(target, settings, clock, callback);
@@ -66,6 +86,10 @@ pub fn sample<T: Target>(
         worst_rhat: None,
         remaining_evaluations: None,
     };
+    if let Some(mut state) = resumed {
+        state.accept(settings, priors.dimension())?;
+        return state.run(target, report, clock, callback, keep);
+    }
     let peak_settings = PeakSettings { seed: settings.seed, ..PeakSettings::default() };
     let peak = find_peak_with(target, priors, &peak_settings, &mut |evaluations| {
         report.evaluations = evaluations;
@@ -73,7 +97,7 @@ pub fn sample<T: Target>(
         callback(&report)
     })?;
     let mut state = RunState::start(target, priors, settings, peak)?;
-    state.run(target, report, clock, callback)
+    state.run(target, report, clock, callback, keep)
 }
 
 impl RunState {
@@ -83,7 +107,9 @@ impl RunState {
         mut report: Progress,
         clock: Instant,
         callback: &mut dyn FnMut(&Progress) -> Control,
+        keep: &mut dyn FnMut(&RunState, bool),
     ) -> Result<Chain, SamplerError> {
+        let earlier = self.elapsed_seconds;
         let threads = rayon::current_num_threads();
         let lanes_each = threads.div_ceil(self.ensembles.len());
         let mut mixture = Mixture::new(&self.fit, &self.weights)?;
@@ -110,7 +136,7 @@ impl RunState {
             if let Some(fatal) = self.advance(target, &mixture, &mut lanes, count) {
                 let ending = (StopReason::Failure, None);
                 let partial = (self.history.steps() > 0)
-                    .then(|| self.finish(target, &mut scratches, ending, clock).ok())
+                    .then(|| self.finish(target, &mut scratches, ending).ok())
                     .flatten();
                 return Err(evaluation(fatal, partial));
             }
@@ -131,16 +157,19 @@ impl RunState {
             report.phase = if self.warm_up.is_some() { Phase::Sampling } else { Phase::WarmUp };
             report.evaluations = self.evaluations();
             report.steps = self.steps;
-            report.elapsed_seconds = clock.elapsed().as_secs_f64();
-            if callback(&report) == Control::Stop {
+            self.elapsed_seconds = earlier + clock.elapsed().as_secs_f64();
+            report.elapsed_seconds = self.elapsed_seconds;
+            let stop = callback(&report) == Control::Stop;
+            keep(self, stop);
+            if stop {
                 break StopReason::Caller;
             }
         };
+        self.elapsed_seconds = earlier + clock.elapsed().as_secs_f64();
         if self.history.steps() == 0 {
             return Err(SamplerError::Stopped);
         }
-        self.finish(target, &mut scratches, (stopped_by, last_check), clock)
-            .map_err(|fatal| evaluation(fatal, None))
+        self.finish(target, &mut scratches, (stopped_by, last_check)).map_err(|fatal| evaluation(fatal, None))
     }
 
     /// Looks for the end of warm-up, then applies the tests; sets the step of the next check. Depends on the chain alone.

@@ -67,6 +67,15 @@ impl EnsembleSettings {
         self.maximum_draws.unwrap_or_else(|| ((16.0 * self.effective_samples).min(1e9) as usize).max(1 << 16))
     }
 
+    /// How draws are thinned on the way, so that memory is bounded however long a run gets; for people.
+    pub fn thinning_rule(&self) -> String {
+        format!(
+            "every step is kept at first; whenever more than {} draws would be, every second of them is dropped, and from \
+             then on every second step (fourth, eighth, …) is kept",
+            self.draws_at_most()
+        )
+    }
+
     /// Refuses settings that cannot work for `dimension` coordinates.
     pub(crate) fn check(&self, dimension: usize, completed: Option<usize>) -> Result<(), SamplerError> {
         let numbers = completed.unwrap_or(dimension);

@@ -14,14 +14,13 @@ use crate::target::Target;
 use nalgebra::DMatrix;
 use rayon::prelude::*;
 use serde::{Deserialize, Serialize};
-use std::time::Instant;
 
 /// The first check of the stop rule comes after this many steps.
 const FIRST_CHECK: u64 = 24;
 
-/// Everything that determines how a run goes on.
+/// Everything that determines how a run goes on: what [`crate::sample_with`] hands out to be kept, and goes on from.
 #[derive(Debug, Clone, Serialize, Deserialize)]
-pub(crate) struct RunState {
+pub struct RunState {
     pub(crate) settings: EnsembleSettings,
     pub(crate) walkers: usize,
     pub(crate) peak: Peak,
@@ -36,6 +35,8 @@ pub(crate) struct RunState {
     pub(crate) next_check: u64,
     /// Steps dropped as warm-up, once that is known.
     pub(crate) warm_up: Option<u64>,
+    /// Seconds since the run began, those between its parts left out.
+    pub(crate) elapsed_seconds: f64,
 }
 
 impl RunState {
@@ -70,7 +71,21 @@ impl RunState {
             steps: 0,
             next_check: FIRST_CHECK,
             warm_up: None,
+            elapsed_seconds: 0.0,
         })
+    }
+
+    /// Whether this is a state of a run with these settings; takes over the limit of evaluations.
+    pub(crate) fn accept(
+        &mut self,
+        settings: &EnsembleSettings,
+        dimension: usize,
+    ) -> Result<(), SamplerError> {
+        self.settings.maximum_evaluations = settings.maximum_evaluations;
+        let fits = self.settings == *settings
+            && self.peak.point.len() == dimension
+            && self.ensembles.len() == settings.ensembles;
+        if fits { Ok(()) } else { Err(SamplerError::ForeignState) }
     }
 
     /// Evaluations so far, from the first of the peak search.
@@ -164,7 +179,6 @@ impl RunState {
         target: &T,
         scratches: &mut [T::Scratch],
         (stopped_by, verdict): (StopReason, Option<Verdict>),
-        clock: Instant,
     ) -> Result<Chain, Fatal> {
         let settled = self.warm_up.is_some();
         if !settled {
@@ -225,7 +239,7 @@ impl RunState {
             evaluations: self.evaluations(),
             peak_evaluations: self.peak.evaluations,
             rejected,
-            wall_seconds: clock.elapsed().as_secs_f64(),
+            wall_seconds: self.elapsed_seconds,
             threads: rayon::current_num_threads(),
             outcome: Outcome {
                 converged: settled && verdict.failing.is_empty(),

@@ -9,6 +9,7 @@
 //! This crate does no arithmetic of physics or statistics and prints nothing.
 
 mod chain_parquet;
+mod checkpoint;
 mod checksum;
 mod clocks;
 mod copy;
@@ -17,6 +18,7 @@ mod error;
 mod evolution;
 mod fault;
 mod fit;
+mod lock;
 mod manual;
 mod nearest;
 mod new_study;
@@ -43,12 +45,14 @@ pub mod schema;
 pub mod template;
 
 pub use chain_parquet::{DESCRIPTIONS_KEY, UNITS_KEY, description_of};
+pub use checkpoint::{Checkpoints, Kept, RunIdentity};
 pub use copy::StudyCopy;
 pub use describe::{DescribedQuantity, Kind, describe};
 pub use error::{Location, Problem, StudyError};
 pub use fault::Fault;
 pub use file::{Located, Origin, Override, Place, PriorSpec, Quantity, StudyFile};
-pub use fit::{FitOptions, Fitted, default_directory, fit};
+pub use fit::{FitOptions, Fitted, Resumed, default_directory, fit};
+pub use lock::Lock;
 pub use manual::{ManualPage, ManualParameter, manual_page, manual_pages};
 pub use nearest::Nearest;
 pub use new_study::write_new_study;
@@ -58,7 +62,7 @@ pub use oddwell_sampler::{Control, MAXIMUM_RHAT, Phase, Progress};
 pub use parameter_map::{ParameterMap, Term};
 pub use predict::{EffectColumns, PredictedRow, predict, predict_by_effect};
 pub use resolve::{AffineForm, FreeParameter, FreePrior, Hypothesis, ResolvedQuantity, State, Study};
-pub use run_directory::{RunDirectory, read_summary};
+pub use run_directory::{Existing, RunDirectory, read_manifest, read_summary};
 pub use run_error::RunError;
 pub use simulate::{Draw, Simulated, Truth, simulate_study};
 pub use stability::{Step, stability};

@@ -162,7 +162,7 @@ pub enum RunError {
         way_out: String,
     },
     /// The run directory exists.
-    #[error("{}: exists already, and a run is never overwritten; give `--replace`, or another folder with `--out`", .path.display())]
+    #[error("{}: exists already, and a run is never overwritten; give `--replace`, or another folder with `--out` (`--resume` goes on with one that was interrupted)", .path.display())]
     Exists {
         /// The directory.
         path: PathBuf,
@@ -172,6 +172,44 @@ pub enum RunError {
     FileExists {
         /// The file.
         path: PathBuf,
+    },
+    /// Another process is at the same run.
+    #[error(
+        "{}: {holder} is writing this run; wait for it, end it, or give another folder with `--out`", .path.display()
+    )]
+    Locked {
+        /// The run directory.
+        path: PathBuf,
+        /// `process N`, or as much as is known.
+        holder: String,
+    },
+    /// A run that was broken off.
+    #[error(
+        "{}: a run was broken off here; go on with `--resume`, or start over with `--replace`", .path.display()
+    )]
+    Unfinished {
+        /// The run directory that it would have made.
+        path: PathBuf,
+    },
+    /// A state to go on from that belongs to another run.
+    #[error(
+        "{}: the run to go on with is another: {difference}; bring back what it was begun with, or start over with `--replace`", .path.display()
+    )]
+    ForeignState {
+        /// The run directory.
+        path: PathBuf,
+        /// What is different.
+        difference: String,
+    },
+    /// No checkpoint that is whole.
+    #[error(
+        "{}: no checkpoint of the run to go on with is whole ({reason}); start over with `--replace`", .path.display()
+    )]
+    DamagedState {
+        /// The run directory.
+        path: PathBuf,
+        /// What is wrong.
+        reason: String,
     },
     /// What stands where the run directory is to be is no run directory.
     #[error(

@@ -52,6 +52,13 @@ pub enum Warning {
         /// Posterior width over prior width.
         ratio: f64,
     },
+    /// No state of a long run could be kept to go on from.
+    CheckpointNotWritten {
+        /// The run directory.
+        run: String,
+        /// Why.
+        reason: String,
+    },
     /// Sampling ended before every parameter passed.
     NotConverged {
         /// The worst parameter.
@@ -109,6 +116,7 @@ impl Warning {
             Self::SmallSeparation { .. } => "small-separation",
             Self::GrowthAssumed { .. } => "growth-assumed",
             Self::Untested { .. } => "untested",
+            Self::CheckpointNotWritten { .. } => "checkpoint-not-written",
             Self::NotConverged { .. } => "not-converged",
             Self::UnaveragedShell { .. } => "unaveraged-shell",
             Self::LargeEvolution { .. } => "large-evolution",
@@ -130,6 +138,7 @@ impl Warning {
             Self::GrowthAssumed { hypothesis } => hypothesis,
             Self::UnaveragedShell { survey, .. } | Self::MissingMocks { survey, .. } => survey,
             Self::IgnoredColumn { file, .. } => file,
+            Self::CheckpointNotWritten { run, .. } => run,
         }
     }
 
@@ -170,6 +179,9 @@ impl Warning {
             ),
             Self::Untested { parameter, ratio } => format!(
                 "the posterior of `{parameter}` is {ratio:.2} times as wide as its prior: the data do not test it; widen the prior, or do not quote it as a measurement"
+            ),
+            Self::CheckpointNotWritten { reason, .. } => format!(
+                "the last checkpoint could not be written ({reason}), so a run that is killed may have lost more than a moment; make room on the disk"
             ),
             Self::NotConverged { parameter, failed, longer } => {
                 let longer = longer.map_or_else(

@@ -8,7 +8,7 @@ use common::Folder;
 use oddwell_sampler::{Control, Target};
 use oddwell_study::assemble::{Posterior, read_measurements};
 use oddwell_study::record::Summary;
-use oddwell_study::{FitOptions, Fitted, Study, fit, read_summary};
+use oddwell_study::{Existing, FitOptions, Fitted, Study, fit, read_summary};
 
 /// Two bins; the measurements are those of general relativity, or nearly.
 const TABLE: &str = "bin,multipole,separation,low,high,value,error\nnear,1,30,26,34,0.0010,2e-4\nnear,1,60,56,64,0.0005,1e-4\nnear,3,90,86,94,0.00005,5e-5\nfar,1,30,26,34,0.0007,2e-4\nfar,1,60,56,64,0.0003,1e-4\n";
@@ -25,7 +25,7 @@ const FREE_SIGMA8: &str = "{ normal = [0.81, 0.02] }";
 fn run(folder: &Folder, study: &Study) -> Fitted {
     let options = FitOptions {
         out: folder.0.path().join("run"),
-        replace: true,
+        existing: Existing::Replace,
         seed: None,
         maximum_evaluations: None,
         command: Vec::new(),

@@ -7,7 +7,7 @@ mod common;
 use common::Folder;
 use oddwell_sampler::{Control, EvaluationFailure, Target};
 use oddwell_study::assemble::{Posterior, read_measurements};
-use oddwell_study::{FitOptions, Study, fit};
+use oddwell_study::{Existing, FitOptions, Study, fit};
 
 const TABLE: &str = "bin,multipole,separation,low,high,value,error\nnear,0,30,26,34,0.09,2e-3\nnear,2,30,26,34,-0.05,2e-3\nnear,1,30,26,34,0.002,2e-4\nnear,1,60,56,64,0.001,2e-4\nnear,3,90,86,94,0.0001,2e-4\n";
 
@@ -173,7 +173,7 @@ fn a_fit_with_a_free_universe_runs() {
     let study = folder.study(&text);
     let options = FitOptions {
         out: folder.0.path().join("run"),
-        replace: false,
+        existing: Existing::Refuse,
         seed: None,
         maximum_evaluations: Some(6000),
         command: Vec::new(),

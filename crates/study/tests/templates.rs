@@ -139,7 +139,7 @@ fn what_cannot_be_integrated_out_is_sampled() {
 fn run(folder: &Folder, study: &Study, name: &str) -> Fitted {
     let options = FitOptions {
         out: folder.0.path().join(name),
-        replace: true,
+        existing: oddwell_study::Existing::Replace,
         seed: None,
         maximum_evaluations: None,
         command: Vec::new(),

@@ -20,7 +20,7 @@ fn main() -> Result<(), Box<dyn Error>> {
     for name in ["constant", "per-bin"] {
         let options = FitOptions {
             out: folder.path().join(name),
-            replace: false,
+            existing: oddwell_study::Existing::Refuse,
             seed: None,
             maximum_evaluations: None,
             command: vec!["oddwell fit data-demo/study.toml".to_owned()],

@@ -5,8 +5,8 @@ use std::path::PathBuf;
 use oddwell_report::closing_summary;
 use oddwell_study::review::STABILITY_FILE;
 use oddwell_study::{
-    Control, FitOptions, Fitted, Hypothesis, RunError, Step, Study, default_directory, fit, stability,
-    write_file,
+    Control, Existing, FitOptions, Fitted, Hypothesis, Resumed, RunError, Step, Study, default_directory,
+    fit, stability, write_file,
 };
 use serde_json::Value;
 
@@ -28,7 +28,12 @@ pub(super) fn run(arguments: &FitArguments, output: &Output) -> Result<Status, F
         }
     }
     // Better now than after the first of them has run.
-    let taken = plan.iter().find(|(_, out)| !arguments.replace && out.symlink_metadata().is_ok());
+    let existing = match (arguments.replace, arguments.resume) {
+        (true, _) => Existing::Replace,
+        (_, true) => Existing::Resume,
+        _ => Existing::Refuse,
+    };
+    let taken = plan.iter().find(|(_, out)| existing == Existing::Refuse && out.symlink_metadata().is_ok());
     if let Some((_, path)) = taken {
         return Err(RunError::Exists { path: path.clone() }.into());
     }
@@ -41,13 +46,16 @@ pub(super) fn run(arguments: &FitArguments, output: &Output) -> Result<Status, F
         }
         let options = FitOptions {
             out,
-            replace: arguments.replace,
+            existing,
             seed: arguments.seed,
             maximum_evaluations: arguments.maximum_evaluations,
             command: std::env::args_os().map(|word| word.to_string_lossy().into_owned()).collect(),
             threads,
         };
         let fitted = watched_fit(&study, hypothesis, &options, output, &interrupt)?;
+        if existing == Existing::Resume {
+            output.notice(&went_on(&fitted));
+        }
         if !output.json && !output.quiet {
             say_result(&fitted, output, finished.is_empty())?;
         }
@@ -161,6 +169,19 @@ fn stabilise(
     Ok(())
 }
 
+/// What a run that was to be gone on with went on from.
+fn went_on(fitted: &Fitted) -> String {
+    let place = fitted.directory.display();
+    match &fitted.resumed {
+        Resumed::Begun => format!("{place}: there was nothing to go on with, so the run was begun"),
+        Resumed::Continued { damage: None } => format!("{place}: went on from the last checkpoint"),
+        Resumed::Continued { damage: Some(damage) } => {
+            format!("{place}: went on from the checkpoint before the last, which is damaged ({damage})")
+        }
+        Resumed::Finished => format!("{place}: had been finished before"),
+    }
+}
+
 fn say_result(fitted: &Fitted, output: &Output, first: bool) -> Result<(), Failure> {
     let gap = if first { "" } else { "\n\n" };
     let summary = closing_summary(&fitted.summary, output.style);
@@ -187,6 +208,7 @@ fn status(finished: &[Fitted], output: &Output, cut_short: bool) -> Status {
     for fitted in finished.iter().filter(|fitted| !fitted.summary.converged) {
         status = Status::NotConverged;
         let place = fitted.directory.display();
+        let kept = if fitted.interrupted { ", and `--resume` goes on with it" } else { "" };
         let reason = fitted
             .summary
             .warnings
@@ -194,7 +216,7 @@ fn status(finished: &[Fitted], output: &Output, cut_short: bool) -> Status {
             .find(|warning| warning.code == "not-converged")
             .map_or("not converged", |warning| &warning.text);
         output.not_converged(&format!(
-            "`{}`: {reason}; results so far are in {place}",
+            "`{}`: {reason}; results so far are in {place}{kept}",
             fitted.summary.hypothesis
         ));
     }

@@ -60,6 +60,7 @@ pub(crate) struct Folder {
 
 impl Folder {
     /// A study that infers an evolution bias as well as the departure.
+    #[allow(dead_code, reason = "not every test file uses it")]
     pub(crate) fn new() -> Self {
         Self::with("{ normal = [0.0, 0.3] }", 500)
     }

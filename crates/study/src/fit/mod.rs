@@ -16,23 +16,28 @@ pub(crate) use general_relativity::points as general_relativity_points;
 
 use crate::assemble::{Measurements, Posterior, read_measurements};
 use crate::blinding::{WITHHELD, withhold};
+use crate::checkpoint::{Kept, RunIdentity};
 use crate::file::Override;
-use crate::record::{Manifest, Summary};
+use crate::record::{Manifest, Summary, WarningRecord};
 use crate::resolve::{Hypothesis, Study};
-use crate::run_directory::RunDirectory;
+use crate::run_directory::{Existing, RunDirectory, read_manifest, read_summary};
 use crate::run_error::RunError;
+use crate::warnings::Warning;
 use oddwell_sampler::{Chain, Control, EnsembleSettings, Progress, SamplerError, StopReason, Target};
 use std::path::{Path, PathBuf};
 use time::OffsetDateTime;
 use time::format_description::well_known::Rfc3339;
+
+/// The program's name and version.
+const VERSION: &str = concat!("oddwell ", env!("CARGO_PKG_VERSION"));
 
 /// How to run a fit.
 #[derive(Clone, Debug)]
 pub struct FitOptions {
     /// The run directory to make.
     pub out: PathBuf,
-    /// Whether an existing run directory may be replaced (once the new one is complete).
-    pub replace: bool,
+    /// What to do about a run directory, or a run that was broken off, that is there already.
+    pub existing: Existing,
     /// The seed, in place of the study's.
     pub seed: Option<u64>,
     /// Where sampling ends at the latest, in likelihood evaluations.
@@ -52,8 +57,25 @@ pub struct Fitted {
     pub manifest: Manifest,
     /// Where it was written.
     pub directory: PathBuf,
-    /// Whether the caller stopped it before it converged.
+    /// Whether the caller stopped it before it converged; then its state is kept, to go on from.
     pub interrupted: bool,
+    /// What it went on from.
+    pub resumed: Resumed,
+}
+
+/// What a run went on from.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub enum Resumed {
+    /// Nothing: it was begun.
+    Begun,
+    /// The checkpoint of a run that had been broken off; with what was wrong with the last one, where the one before it had to
+    /// do.
+    Continued {
+        /// What was wrong.
+        damage: Option<String>,
+    },
+    /// It had been finished before.
+    Finished,
 }
 
 /// `runs/<title>-<hypothesis>`, with the title in lower case and dashes for everything but letters and digits.
@@ -92,8 +114,17 @@ pub fn fit(
         let hypothesis = hypothesis.name.clone();
         return Err(RunError::Withheld { hypothesis, withheld: WITHHELD });
     }
-    let directory = RunDirectory::claim(&options.out, options.replace)?;
+    let directory = RunDirectory::claim(&options.out, options.existing)?;
     let measurements = read_measurements(study)?;
+    if options.existing == Existing::Resume && directory.is_finished() {
+        let seed = options.seed.unwrap_or(study.file.sampling.seed.value);
+        let identity = identity_of(study, hypothesis, &measurements, seed);
+        let finished = finished(&options.out, &identity)?;
+        // One that was interrupted before there was a state to keep starts from the beginning.
+        if !finished.manifest.interrupted {
+            return Ok(finished);
+        }
+    }
     let posterior = Posterior::new(study, hypothesis, &measurements)?;
     if posterior.dimension() == 0 {
         return Err(RunError::NothingInferred { hypothesis: hypothesis.name.clone() });
@@ -122,7 +153,8 @@ pub(crate) fn ensemble_settings(
     }
 }
 
-/// [`fit`] of a posterior that is there already, with the chain.
+/// [`fit`] of a posterior that is there already, with the chain. Goes on with a state that is kept in `directory`, if that is
+/// what `options` want.
 pub(crate) fn fit_posterior(
     study: &Study,
     posterior: &Posterior,
@@ -134,36 +166,96 @@ pub(crate) fn fit_posterior(
     let started = OffsetDateTime::now_utc();
     let hypothesis = &posterior.hypothesis;
     let settings = ensemble_settings(study, hypothesis, options);
+    let mut checkpoints = directory.checkpoints(identity_of(study, hypothesis, measurements, settings.seed));
+    let kept = match options.existing {
+        Existing::Resume => checkpoints.load()?,
+        _ => None,
+    };
+    let (state, resumed) = match kept {
+        Some(Kept { state, damage }) => (Some(state), Resumed::Continued { damage }),
+        None => (None, Resumed::Begun),
+    };
     let names = posterior.map.names().to_vec();
-    let chain = sampling::chain_of(posterior, &settings, &mut |state| progress(state, &names))?;
+    let chain = sampling::chain_of(
+        posterior,
+        &settings,
+        state,
+        &mut |state| progress(state, &names),
+        &mut |state, stopping| checkpoints.keep(state, stopping),
+    )?;
+    let interrupted = chain.outcome.stopped_by == StopReason::Caller && !chain.outcome.converged;
     let (mut summary, derived) = summary::summarise(study, posterior, measurements, &chain, settings.seed)?;
+    if let Some(reason) = checkpoints.failure() {
+        let (run, reason) = (options.out.display().to_string(), reason.to_owned());
+        summary.warnings.push(WarningRecord::from(&Warning::CheckpointNotWritten { run, reason }));
+    }
     if study.file.blinding.is_some() {
         withhold(&mut summary);
     }
     let time = |moment: OffsetDateTime| moment.format(&Rfc3339).unwrap_or_default();
     let manifest = Manifest {
-        version: concat!("oddwell ", env!("CARGO_PKG_VERSION")).to_owned(),
+        version: VERSION.to_owned(),
         command: options.command.clone(),
         study_file: study.file.source.name().to_owned(),
         study_text: study.file.source.text().to_owned(),
-        overrides: study.overrides().iter().map(|each: &Override| each.option.clone()).collect(),
+        overrides: overrides_of(study),
         hypothesis: hypothesis.name.clone(),
         seed: settings.seed,
         threads: options.threads,
         started: time(started),
         ended: time(OffsetDateTime::now_utc()),
         inputs: measurements.inputs.clone(),
+        interrupted,
         warm_up: chain.warm_up,
         thinning: chain.thinning,
+        thinning_rule: settings.thinning_rule(),
         units: names
             .iter()
             .chain(&derived.names)
             .filter_map(|name| Some((name.clone(), unit_of(name)?.to_owned())))
             .collect(),
     };
-    directory.write(&names, &chain, (&derived.names, &derived.columns), &summary, &manifest)?;
-    let interrupted = chain.outcome.stopped_by == StopReason::Caller && !chain.outcome.converged;
-    Ok((Fitted { summary, manifest, directory: options.out.clone(), interrupted }, chain))
+    let derived = (derived.names.as_slice(), derived.columns.as_slice());
+    directory.write(&names, &chain, derived, &summary, &manifest, interrupted)?;
+    let directory = options.out.clone();
+    Ok((Fitted { summary, manifest, directory, interrupted, resumed }, chain))
+}
+
+/// What a state of this run belongs to.
+fn identity_of(
+    study: &Study,
+    hypothesis: &Hypothesis,
+    measurements: &Measurements,
+    seed: u64,
+) -> RunIdentity {
+    RunIdentity {
+        version: VERSION.to_owned(),
+        task: format!("a fit of `{}`", hypothesis.name),
+        inputs: measurements.inputs.clone(),
+        overrides: overrides_of(study),
+        seed,
+    }
+}
+
+fn overrides_of(study: &Study) -> Vec<String> {
+    study.overrides().iter().map(|each: &Override| each.option.clone()).collect()
+}
+
+/// A run that is there, if it is the one that is asked for.
+fn finished(directory: &Path, identity: &RunIdentity) -> Result<Fitted, RunError> {
+    let (summary, manifest) = (read_summary(directory)?, read_manifest(directory)?);
+    let there = RunIdentity {
+        version: manifest.version.clone(),
+        task: format!("a fit of `{}`", manifest.hypothesis),
+        inputs: manifest.inputs.clone(),
+        overrides: manifest.overrides.clone(),
+        seed: manifest.seed,
+    };
+    if let Some(difference) = there.difference(identity) {
+        return Err(RunError::ForeignState { path: directory.to_owned(), difference });
+    }
+    let directory = directory.to_owned();
+    Ok(Fitted { summary, manifest, directory, interrupted: false, resumed: Resumed::Finished })
 }
 
 impl RunError {

@@ -3,20 +3,22 @@
 use crate::assemble::{IntegratedPosterior, Posterior};
 use crate::run_error::RunError;
 use oddwell_sampler::{
-    Chain, Control, EnsembleSettings, PeakSettings, Progress, Target, find_peak_with, sample,
+    Chain, Control, EnsembleSettings, PeakSettings, Progress, RunState, Target, find_peak_with, sample_with,
 };
 
 /// Samples the posterior. The chain is one of all free parameters, each row with the log prior and log likelihood of its
-/// point, however it was drawn.
+/// point, however it was drawn. `resumed` and `keep` are as in [`sample_with`].
 pub(super) fn chain_of(
     posterior: &Posterior,
     settings: &EnsembleSettings,
+    resumed: Option<RunState>,
     progress: &mut dyn FnMut(&Progress) -> Control,
+    keep: &mut dyn FnMut(&RunState, bool),
 ) -> Result<Chain, RunError> {
     let Some(integrated) = IntegratedPosterior::new(posterior)?.filter(IntegratedPosterior::pays) else {
-        return Ok(sample(posterior, &posterior.priors, settings, progress)?);
+        return Ok(sample_with(posterior, &posterior.priors, settings, resumed, progress, keep)?);
     };
-    let mut chain = sample(&integrated, &integrated.priors, settings, progress)?;
+    let mut chain = sample_with(&integrated, &integrated.priors, settings, resumed, progress, keep)?;
     // The highest point of the full posterior, from the highest draw.
     let visited: Vec<f64> = integrated.sampled().iter().map(|&of| chain.best.point[of]).collect();
     let start = integrated.most_probable(&visited, &mut integrated.scratch())?;

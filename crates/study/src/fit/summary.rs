@@ -53,14 +53,7 @@ pub(super) fn summarise(
         felt_by: posterior.hypothesis.felt_by.name().to_owned(),
         converged: chain.outcome.converged,
         blinded: false,
-        warnings: warnings
-            .iter()
-            .map(|warning| WarningRecord {
-                code: warning.code().to_owned(),
-                text: warning.text(),
-                place: warning.place().to_owned(),
-            })
-            .collect(),
+        warnings: warnings.iter().map(WarningRecord::from).collect(),
         parameters,
         departure_parameters: posterior
             .hypothesis

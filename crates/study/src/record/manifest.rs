@@ -28,10 +28,16 @@ pub struct Manifest {
     pub ended: String,
     /// Every input, the study file first.
     pub inputs: Vec<InputFile>,
+    /// Whether it was interrupted, so that `--resume` has something to go on with.
+    #[serde(default)]
+    pub interrupted: bool,
     /// Steps dropped as warm-up.
     pub warm_up: u64,
     /// Every how many steps a draw is kept in the chain.
     pub thinning: u64,
+    /// The rule by which it was thinned, in words.
+    #[serde(default)]
+    pub thinning_rule: String,
     /// The units of the chain's columns, by name, where they have one.
     pub units: std::collections::BTreeMap<String, String>,
 }

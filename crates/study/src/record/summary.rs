@@ -1,5 +1,6 @@
 //! The contents of `summary.json`.
 
+use crate::warnings::Warning;
 use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 use std::collections::BTreeMap;
@@ -55,6 +56,12 @@ pub struct WarningRecord {
     /// The parameter, survey or file concerned.
     #[serde(rename = "where")]
     pub place: String,
+}
+
+impl From<&Warning> for WarningRecord {
+    fn from(warning: &Warning) -> Self {
+        Self { code: warning.code().to_owned(), text: warning.text(), place: warning.place().to_owned() }
+    }
 }
 
 /// One inferred or derived quantity.

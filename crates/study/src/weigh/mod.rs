@@ -16,6 +16,7 @@ use crate::assemble::{Measurements, Posterior, read_measurements};
 use crate::fit::{FitOptions, default_directory_of};
 use crate::record::{Manifest, WeighRecord};
 use crate::resolve::Study;
+use crate::run_directory::Existing;
 use crate::run_error::RunError;
 use crate::weigh::pieces::{Pieces, Task};
 use oddwell_evidence::EvidenceError;
@@ -147,8 +148,10 @@ impl Work<'_> {
             started: time(started),
             ended: time(OffsetDateTime::now_utc()),
             inputs: self.measurements.inputs.clone(),
+            interrupted: false,
             warm_up: 0,
             thinning: 1,
+            thinning_rule: String::new(),
             units: std::collections::BTreeMap::new(),
         }
     }
@@ -157,7 +160,7 @@ impl Work<'_> {
     pub(crate) fn fit_options(&self, folder: &Path) -> FitOptions {
         FitOptions {
             out: folder.to_owned(),
-            replace: true,
+            existing: Existing::Resume,
             seed: Some(self.seed),
             maximum_evaluations: None,
             command: self.options.command.clone(),

@@ -6,7 +6,7 @@ use super::plan::Departure;
 use crate::assemble::{IntegratedPosterior, Posterior};
 use crate::fit::fit_posterior;
 use crate::record::Ordered;
-use crate::run_directory::RunDirectory;
+use crate::run_directory::{Existing, RunDirectory};
 use crate::run_error::RunError;
 use oddwell_evidence::{
     ClosedForm, Estimate, Estimator, EvidenceError, Nested, Problem, SteppingStones, Watch,
@@ -140,7 +140,7 @@ impl Pieces {
             let clock = Instant::now();
             let folder = work.state.run_of(name);
             let options = work.fit_options(&folder);
-            let directory = RunDirectory::claim(&folder, true)?;
+            let directory = RunDirectory::claim(&folder, Existing::Resume)?;
             let mut counted = 0;
             let (fitted, chain) = fit_posterior(
                 work.study,
