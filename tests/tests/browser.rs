@@ -37,7 +37,7 @@ fn demo_page() -> String {
         Study::read(Path::new(env!("CARGO_MANIFEST_DIR")).join("../data-demo/study.toml"), &[]).unwrap();
     let runs: Vec<Review> =
         ["constant", "per-bin"].iter().map(|name| run(&study, name, &folder.path().join(name))).collect();
-    page(&PageInput { runs: &runs, command: "oddwell report", version: "oddwell" }).html
+    page(&PageInput { runs: &runs, weighed: &[], command: "oddwell report", version: "oddwell" }).html
 }
 
 /// The page with a driver in it, and axe-core where it is to be had.

@@ -45,7 +45,7 @@ fn run(study: &Path, hypothesis: &str, out: &Path, maximum_evaluations: Option<u
 }
 
 fn page_of(runs: &[Review]) -> Page {
-    page(&PageInput { runs, command: "oddwell report", version: "oddwell" })
+    page(&PageInput { runs, weighed: &[], command: "oddwell report", version: "oddwell" })
 }
 
 /// Every `data` element: the run, file and pointer that it is from, its whole value, and the words shown.

@@ -1,9 +1,10 @@
 //! What an estimator hands back.
 
+use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 
 /// A log evidence with a standard error, what it cost, and what it is worth.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Estimate {
     /// Natural logarithm of ∫ prior × likelihood.
     pub log_evidence: f64,

@@ -29,7 +29,7 @@ fn main() -> Result<(), Box<dyn Error>> {
         fit(&study, study.hypothesis(Some(name))?, &options, &mut |_, _| Control::Continue)?;
         runs.push(review(&options.out)?);
     }
-    let made = page(&PageInput { runs: &runs, command: "oddwell report", version: "oddwell" });
+    let made = page(&PageInput { runs: &runs, weighed: &[], command: "oddwell report", version: "oddwell" });
     let file = folder.path().join("page.html");
     std::fs::write(&file, made.html)?;
     let picture = demo.join("report.png");

@@ -3,7 +3,7 @@
 use std::path::{Path, PathBuf};
 
 use oddwell_report::{Page, PageInput, page};
-use oddwell_study::review::{Review, review};
+use oddwell_study::review::{Review, Weighing, read_weighing, review};
 use oddwell_study::{RunError, make_folder, may_write, write_file};
 use serde_json::json;
 
@@ -19,10 +19,11 @@ pub(super) fn run(arguments: &ReportArguments, output: &Output) -> Result<Status
     for path in [&file, &bibliography] {
         may_write(path, *replace)?;
     }
-    let reviews: Vec<Review> = runs.iter().map(|run| review(run)).collect::<Result<_, RunError>>()?;
+    let (reviews, weighed) = read(runs)?;
     let command: Vec<String> = std::env::args().collect();
     let made = page(&PageInput {
         runs: &reviews,
+        weighed: &weighed,
         command: &command.join(" "),
         version: concat!("oddwell ", env!("CARGO_PKG_VERSION")),
     });
@@ -59,6 +60,32 @@ pub(super) fn run(arguments: &ReportArguments, output: &Output) -> Result<Status
         ))?;
     }
     Ok(Status::Done)
+}
+
+/// Runs of `fit`, and of `weigh` with the posteriors in them; a posterior that is named twice is read once.
+fn read(directories: &[PathBuf]) -> Result<(Vec<Review>, Vec<Weighing>), RunError> {
+    let (mut runs, mut weighed) = (Vec::new(), Vec::new());
+    for directory in directories {
+        match read_weighing(directory)? {
+            None => runs.push(directory.clone()),
+            Some(found) => {
+                runs.extend(found.runs());
+                weighed.push(found);
+            }
+        }
+    }
+    let mut reviews: Vec<Review> = Vec::new();
+    for run in runs {
+        let found = review(&run)?;
+        let same = |known: &Review| {
+            (&known.summary.hypothesis, &known.manifest.study_text, known.summary.best.data_points)
+                == (&found.summary.hypothesis, &found.manifest.study_text, found.summary.best.data_points)
+        };
+        if !reviews.iter().any(same) {
+            reviews.push(found);
+        }
+    }
+    Ok((reviews, weighed))
 }
 
 /// Each figure as SVG and as PDF.

@@ -1,6 +1,7 @@
 //! Whether independent estimates of one evidence agree, and the number that they come down to.
 
 use crate::estimate::Estimate;
+use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 
 /// Estimates agree where they differ by no more than this many of their combined standard errors …
@@ -13,7 +14,7 @@ pub const TOLERATED_ERRORS: f64 = 4.0;
 pub const TOLERATED_NATS: f64 = 0.02;
 
 /// Two estimates that differ by more than their errors allow.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Disagreement {
     /// The estimators.
     pub between: [String; 2],
@@ -24,7 +25,7 @@ pub struct Disagreement {
 }
 
 /// What a comparison of estimates says.
-#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Agreement {
     /// Whether all that vote agree, and at least one does.
     pub agree: bool,

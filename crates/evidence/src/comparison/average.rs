@@ -1,5 +1,6 @@
 //! Averages over hypotheses, by their probabilities.
 
+use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 
 /// Draws of a quantity under one hypothesis, and that hypothesis's probability. One draw stands for a held number.
@@ -12,7 +13,7 @@ pub struct WeightedDraws {
 }
 
 /// What a quantity is, averaged over hypotheses.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct WeightedSummary {
     /// Mean.
     pub mean: f64,

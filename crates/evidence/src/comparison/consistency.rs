@@ -1,10 +1,11 @@
 //! Whether parts of the data ask for the same departure.
 
+use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 use statrs::distribution::{ChiSquared, ContinuousCDF};
 
 /// A hypothesis that was weighed and sampled.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Fitted {
     /// Log evidence.
     pub log_evidence: f64,
@@ -19,7 +20,7 @@ pub struct Fitted {
 }
 
 /// One departure for all against one each.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Consistency {
     /// ln R: evidence of one for all over that of one each. Moves with the prior's width.
     pub log_evidence_ratio: f64,

@@ -4,14 +4,16 @@ use nalgebra::{Cholesky, DMatrix, DVector};
 use oddwell_sampler::moves::Random;
 use rand::SeedableRng;
 use rand_distr::{Distribution, StandardNormal};
+use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 use statrs::function::erf::erfc;
 use std::f64::consts::SQRT_2;
 
 /// Tail probabilities of the largest of several correlated deviates.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct GlobalTail {
-    /// Which of them is the largest.
+    /// Which of them is the largest; not written, since records name it.
+    #[serde(skip)]
     pub best: usize,
     /// How far out it is, in standard deviations.
     pub deviate: f64,

@@ -1,6 +1,7 @@
 //! How odds depend on the width of the departure's prior.
 
 use crate::density_ratio::ConditionalDensities;
+use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 
 /// Where the width that turns the odds lies within this factor of the one used, the prior decides.
@@ -10,7 +11,7 @@ pub const DECISIVE_FACTOR: f64 = 3.0;
 const NONE: f64 = 0.01;
 
 /// The odds for a hypothesis against the one it contains, over widths of the prior of its departure.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct WidthCurve {
     /// Widths in units of the one used, rising.
     pub factors: Vec<f64>,
@@ -19,7 +20,7 @@ pub struct WidthCurve {
 }
 
 /// A width at which the odds turn.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Turning {
     /// In units of the width used.
     pub factor: f64,
@@ -28,7 +29,7 @@ pub struct Turning {
 }
 
 /// What a ratio of evidences comes to.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
 #[serde(rename_all = "kebab-case")]
 pub enum Verdict {
     /// The width that turns the odds lies too close to the one used.

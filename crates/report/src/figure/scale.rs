@@ -1,23 +1,34 @@
 //! From numbers to places on a canvas, and the round numbers between.
 
-/// A linear scale.
+/// A linear or logarithmic scale.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub(crate) struct Scale {
     low: f64,
     high: f64,
     start: f64,
     end: f64,
+    logarithmic: bool,
 }
 
 impl Scale {
     /// `low` is drawn at `start`, `high` at `end`. A range without width is widened.
     pub(crate) fn linear((low, high): (f64, f64), (start, end): (f64, f64)) -> Scale {
         let (low, high) = if high > low { (low, high) } else { (low - 0.5, low + 0.5) };
-        Scale { low, high, start, end }
+        Scale { low, high, start, end, logarithmic: false }
+    }
+
+    /// The same with the logarithm of what is above 0.
+    pub(crate) fn logarithmic((low, high): (f64, f64), ends: (f64, f64)) -> Scale {
+        let (low, high) = if high > low { (low, high) } else { (low / 2.0, low * 2.0) };
+        Scale { logarithmic: true, ..Scale::linear((low, high), ends) }
     }
 
     pub(crate) fn at(&self, value: f64) -> f64 {
-        let part = (value - self.low) / (self.high - self.low);
+        let part = if self.logarithmic {
+            (value / self.low).ln() / (self.high / self.low).ln()
+        } else {
+            (value - self.low) / (self.high - self.low)
+        };
         self.start + part * (self.end - self.start)
     }
 
@@ -36,6 +47,9 @@ impl Scale {
 
     /// Round numbers within the range, about `count` of them, with their labels.
     pub(crate) fn ticks(&self, count: usize) -> Vec<(f64, String)> {
+        if self.logarithmic {
+            return self.powers();
+        }
         let step = step((self.high - self.low) / count.max(1) as f64);
         let decimals = (-step.log10().floor()).max(0.0) as usize;
         let first = (self.low / step - 1e-9).ceil() as i64;
@@ -51,6 +65,14 @@ impl Scale {
                 (value, text.replace('-', "−"))
             })
             .collect()
+    }
+
+    fn powers(&self) -> Vec<(f64, String)> {
+        let first = self.low.log10().floor() as i32;
+        let last = self.high.log10().ceil() as i32;
+        let all = (first..=last).flat_map(|power| [1.0, 2.0, 5.0].map(|digit| digit * 10f64.powi(power)));
+        let inside: Vec<f64> = all.filter(|value| self.covers(*value)).collect();
+        inside.into_iter().map(|value| (value, format!("{value}"))).collect()
     }
 }
 
@@ -84,6 +106,12 @@ mod tests {
         assert_eq!(labels, ["0.0", "0.5", "1.0"]);
         let fine = Scale::linear((0.0, 0.04), (0.0, 1.0)).ticks(4);
         assert_eq!(fine.last().map(|(_, label)| label.as_str()), Some("0.04"));
+        let powers: Vec<String> = Scale::logarithmic((0.5, 12.0), (0.0, 1.0))
+            .ticks(0)
+            .into_iter()
+            .map(|(_, label)| label)
+            .collect();
+        assert_eq!(powers, ["0.5", "1", "2", "5", "10"]);
         assert_eq!(Scale::linear((-2.0, -1.0), (0.0, 1.0)).ticks(1)[0].1, "−2");
     }
 
@@ -91,6 +119,8 @@ mod tests {
     fn a_scale_meets_its_ends() {
         let scale = Scale::linear((2.0, 4.0), (100.0, 0.0));
         assert_eq!((scale.at(2.0), scale.at(4.0), scale.clamped(9.0)), (100.0, 0.0, 0.0));
+        let log = Scale::logarithmic((1.0, 100.0), (0.0, 10.0));
+        assert!((log.at(10.0) - 5.0).abs() < 1e-12);
         assert!(Scale::linear((1.0, 1.0), (0.0, 1.0)).at(1.0).is_finite());
     }
 

@@ -271,6 +271,25 @@ fn odds(runs: &Runs<'_>) -> Markup {
     if runs.blinded() {
         return html! {};
     }
+    let hypothesis = &runs.first().summary.hypothesis;
+    for (at, weighed) in runs.weighed().iter().enumerate() {
+        let own = weighed.record.hypotheses.iter().enumerate().find(|(_, known)| known.name == *hypothesis);
+        let Some((index, found)) = own.filter(|(_, found)| found.odds.is_some()) else { continue };
+        let from = |key: &str| format!("w{at}:weigh.json:/hypotheses/{index}/{key}");
+        let sensitivity = found.sensitivity.as_ref();
+        return html! {
+            p {
+                "Odds of " code { (hypothesis) } " against " code { (weighed.record.reference) } ": "
+                strong { (told(&from("odds"), found.odds, |odds| significant(odds, 2))) }
+                @if !found.agree { " (the estimators of the evidence do not agree: do not quote it)" }
+                @if let Some(width) = sensitivity.and_then(|sensitivity| sensitivity.turning_width) {
+                    "; a prior of width " (told(&from("sensitivity/turning_width"), Some(width), |width| significant(width, 2)))
+                    " would turn them, " (told(&from("sensitivity/width"), sensitivity.map(|known| known.width), |width| significant(width, 2))) " was used"
+                } @else if sensitivity.is_some() { "; no width of its prior turns them" }
+                ". " a href="#weighed" { "More in section 7" } "."
+            }
+        };
+    }
     missing(
         "How the hypotheses compare was not asked: a posterior takes its own hypothesis for granted. The odds are made by",
         &format!("oddwell weigh {}", runs.first().manifest.study_file),

@@ -15,7 +15,7 @@ mod weighed;
 
 use maud::{DOCTYPE, Markup, PreEscaped, html};
 use oddwell_study::blinding::WITHHELD;
-use oddwell_study::review::Review;
+use oddwell_study::review::{Review, Weighing};
 
 use crate::figure::{ALARM, AXIS, BAND, Colour, FIELD, Figure, GRID, INK, MUTED, PAPER, RELATIVITY};
 use crate::references::bibliography;
@@ -26,6 +26,8 @@ use parts::Sheet;
 pub struct PageInput<'a> {
     /// The runs, in the order in which they were named; at least one.
     pub runs: &'a [Review],
+    /// What `oddwell weigh` has found, if anything.
+    pub weighed: &'a [Weighing],
     /// The command that makes the page.
     pub command: &'a str,
     /// The program and its version.
@@ -117,6 +119,10 @@ impl<'a> Runs<'a> {
     fn others(&self) -> impl Iterator<Item = (usize, &'a Review)> {
         let principal = self.principal;
         self.input.runs.iter().enumerate().filter(move |(index, _)| *index != principal)
+    }
+
+    fn weighed(&self) -> &'a [Weighing] {
+        self.input.weighed
     }
 
     fn blinded(&self) -> bool {

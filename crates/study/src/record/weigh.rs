@@ -3,10 +3,11 @@
 use super::Ordered;
 use oddwell_evidence::Estimate;
 use oddwell_evidence::comparison::{Consistency, Disagreement, GlobalTail, Verdict, WeightedSummary};
+use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 
 /// `weigh.json`.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct WeighRecord {
     /// The study's title.
     pub study: String,
@@ -37,7 +38,7 @@ pub struct WeighRecord {
 }
 
 /// One hypothesis.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct HypothesisRecord {
     /// The hypothesis.
     pub name: String,
@@ -80,7 +81,7 @@ pub struct HypothesisRecord {
 }
 
 /// How odds against the reference hang on the width of the departure's prior.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Sensitivity {
     /// Half the central 68 % of the prior of each departure quantity, as used.
     pub width: f64,
@@ -105,7 +106,7 @@ pub struct Sensitivity {
 }
 
 /// One departure for all surveys, or bins, against one each.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct ConsistencyRecord {
     /// `surveys` or `bins`.
     pub of: String,
@@ -115,7 +116,7 @@ pub struct ConsistencyRecord {
 }
 
 /// The best of several departures.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct BestOfRecord {
     /// `bins of NAME`, or `shapes`.
     pub of: String,

@@ -12,6 +12,7 @@ mod parameters;
 mod predictive;
 mod restore;
 mod traces;
+mod weighed;
 
 pub use chain_table::ChainTable;
 pub use curve::{CurvePoint, DepartureCurve, REFERENCE_WAVENUMBER};
@@ -20,6 +21,7 @@ pub use panels::{Panel, PanelRow};
 pub use parameters::ParameterPicture;
 pub use predictive::PredictiveCheck;
 pub use traces::{Trace, TraceBand};
+pub use weighed::{Weighing, read_weighing};
 
 use crate::assemble::{Measurements, Posterior, SurveyMeasurements};
 use crate::check::{CheckReport, check};

@@ -116,6 +116,11 @@ pub(crate) fn study_keys() -> Vec<Keys> {
             Form::OneOf(departures::registry().iter().map(|shape| shape.name()).collect()),
             "shape of the departure",
         ),
+        may(
+            "weight",
+            Form::Number,
+            "how probable it is held to be before the data, relative to the others; default 1",
+        ),
         may("felt_by", Form::OneOf(FeltBy::ALL.map(FeltBy::name).to_vec()), "who feels it"),
     ];
     for parameter in departures::registry().iter().flat_map(|shape| shape.parameters()) {

@@ -7,7 +7,7 @@
 mod keys;
 mod study_file;
 
-use crate::record::{Manifest, Stability, Summary};
+use crate::record::{Manifest, Stability, Summary, WeighRecord};
 use schemars::schema_for;
 use serde_json::Value;
 
@@ -35,6 +35,7 @@ pub fn schemas() -> &'static [SchemaTopic] {
     const ALL: &[SchemaTopic] = &[
         SchemaTopic { name: "study", file: "study.toml", make: study_file::schema },
         SchemaTopic { name: "summary", file: "summary.json", make: || schema_for!(Summary).to_value() },
+        SchemaTopic { name: "weigh", file: "weigh.json", make: || schema_for!(WeighRecord).to_value() },
         SchemaTopic { name: "manifest", file: "manifest.json", make: || schema_for!(Manifest).to_value() },
         SchemaTopic { name: "stability", file: "stability.json", make: || schema_for!(Stability).to_value() },
     ];
