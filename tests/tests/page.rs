@@ -116,18 +116,20 @@ fn numbers_on_the_page_are_those_of_the_json_files() {
             .parse()
             .unwrap_or_else(|_| panic!("{from}: {words}"));
         let whole = if words.ends_with('%') { 100.0 * value } else { *value };
-        let tolerance =
-            if from.ends_with("/mean") || from.contains("interval") || from.ends_with("prior_mean") {
-                // Two digits of the error, so half of its second digit.
-                let (parent, _) =
-                    from.rsplit_once(if from.contains("interval") { "/interval" } else { "/" }).unwrap();
-                let sd = ["sd", "prior_sd"].map(|key| json_of_or_null(&runs, &format!("{parent}/{key}")));
-                0.06 * sd.into_iter().flatten().fold(0.0, f64::max) + 1e-12
-            } else {
-                // One and a half digits, or a whole count rounded down.
-                let absolute = if from.ends_with("p_value") { 0.0051 } else { 0.0 };
-                0.06 * whole.abs() + if whole > 50.0 { 1.0 } else { absolute }
-            };
+        let tolerance = if from.contains("interval")
+            || ["/mean", "prior_mean", "/value", "/together"].iter().any(|end| from.ends_with(end))
+        {
+            // Two digits of the error, so half of its second digit.
+            let (parent, _) =
+                from.rsplit_once(if from.contains("interval") { "/interval" } else { "/" }).unwrap();
+            let sd = ["sd", "prior_sd", "together_sd"]
+                .map(|key| json_of_or_null(&runs, &format!("{parent}/{key}")));
+            0.06 * sd.into_iter().flatten().fold(0.0, f64::max) + 1e-12
+        } else {
+            // One and a half digits, or a whole count rounded down.
+            let absolute = if from.ends_with("p_value") { 0.0051 } else { 0.0 };
+            0.06 * whole.abs() + if whole > 50.0 { 1.0 } else { absolute }
+        };
         assert!((shown.abs() - whole.abs()).abs() <= tolerance, "{from}: {words} is not {whole}");
     }
     let text = std::fs::read_to_string(runs[0].directory.join("summary.json")).unwrap();
