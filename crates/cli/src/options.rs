@@ -335,6 +335,12 @@ pub(crate) struct FitArguments {
     /// The run directory to make
     #[arg(long, value_name = "DIR", help = OUT_HELP)]
     pub(crate) out: Option<PathBuf>,
+    /// Fit this survey or bin alone, as larkfield or larkfield.near; may be given several times
+    #[arg(long, value_name = "SURVEY[.BIN]")]
+    pub(crate) only: Vec<String>,
+    /// Leave this survey or bin out; may be given several times
+    #[arg(long, value_name = "SURVEY[.BIN]")]
+    pub(crate) without: Vec<String>,
     /// Replace the run directory if it exists, once the new run is complete
     #[arg(long)]
     pub(crate) replace: bool,
@@ -433,13 +439,14 @@ mod tests {
     #[test]
     fn a_fit_with_everything() {
         let line = "oddwell fit study.toml --hypothesis all --out here --seed 7 --threads 2 --replace --set a.b=1 \
-                    --set c=2 --maximum-evaluations 1000 --quiet --json --color never";
+                    --set c=2 --only a --only b.c --without b.c --maximum-evaluations 1000 --quiet --json --color never";
         let options = read(words(line)).expect("valid");
         assert!(options.global.quiet && options.global.json && options.global.color == Colour::Never);
         let Command::Fit(fit) = options.command else { unreachable!("`fit` is `fit`") };
         assert_eq!(fit.study.study, PathBuf::from("study.toml"));
         assert_eq!(fit.study.hypothesis.as_deref(), Some(ALL));
         assert_eq!(fit.study.set, ["a.b=1", "c=2"]);
+        assert_eq!((fit.only.join(" "), fit.without.join(" ")), ("a b.c".to_owned(), "b.c".to_owned()));
         assert_eq!((fit.seed, fit.threads, fit.maximum_evaluations), (Some(7), Some(2), Some(1000)));
         assert_eq!((fit.out, fit.replace), (Some(PathBuf::from("here")), true));
     }

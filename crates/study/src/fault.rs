@@ -149,6 +149,9 @@ pub enum Fault {
         /// What to do.
         way_out: &'static str,
     },
+    /// A restriction that leaves nothing in.
+    #[error("leaves no bin of the study in; leave out less")]
+    NothingLeft,
     /// A survey that says for itself what a joint covariance says.
     #[error(
         "`{key}` of survey `{survey}` stands beside a [[joint_covariance]] of that survey, which speaks for all its rows; give it there"

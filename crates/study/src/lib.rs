@@ -61,7 +61,9 @@ pub use oddwell_evidence::{Estimate, EstimatorFamily, estimator_families};
 pub use oddwell_sampler::{Control, MAXIMUM_RHAT, Phase, Progress};
 pub use parameter_map::{ParameterMap, Term};
 pub use predict::{EffectColumns, PredictedRow, predict, predict_by_effect};
-pub use resolve::{AffineForm, FreeParameter, FreePrior, Hypothesis, ResolvedQuantity, State, Study};
+pub use resolve::{
+    AffineForm, FreeParameter, FreePrior, Hypothesis, ResolvedQuantity, Restriction, State, Study,
+};
 pub use run_directory::{Existing, RunDirectory, read_manifest, read_summary};
 pub use run_error::RunError;
 pub use simulate::{Draw, Simulated, Truth, simulate_study};

@@ -5,8 +5,8 @@ use std::path::PathBuf;
 use oddwell_report::closing_summary;
 use oddwell_study::review::STABILITY_FILE;
 use oddwell_study::{
-    Control, Existing, FitOptions, Fitted, Hypothesis, Resumed, RunError, Step, Study, default_directory,
-    fit, stability, write_file,
+    Control, Existing, FitOptions, Fitted, Hypothesis, Restriction, Resumed, RunError, Step, Study,
+    default_directory, fit, stability, write_file,
 };
 use serde_json::Value;
 
@@ -18,7 +18,9 @@ use crate::output::Output;
 use crate::progress::ProgressLine;
 
 pub(super) fn run(arguments: &FitArguments, output: &Output) -> Result<Status, Failure> {
-    let study = read_study(&arguments.study)?;
+    let restriction = Restriction { only: arguments.only.clone(), without: arguments.without.clone() };
+    let whole = read_study(&arguments.study)?;
+    let study = if restriction.is_none() { whole } else { whole.restricted(&restriction)? };
     let threads = set_threads(arguments.threads)?;
     let asked = arguments.study.hypothesis.as_deref();
     let plan = plan(&study, arguments, output)?;

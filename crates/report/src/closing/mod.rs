@@ -1,8 +1,9 @@
 //! What a fit says at its end, for a person at a terminal.
 //!
-//! The order is that of the questions: what came out, what it means for clocks, what else would look the same, what it does not mean, whether the
+//! The order is that of the questions: what came out, whether the parts of the data agree, what it means for clocks, what else would look the same, what it does not mean, whether the
 //! model fits, what is suspicious, every parameter, and what the sampling was worth.
 
+mod by_part;
 mod clocks;
 mod departure;
 mod goodness;
@@ -22,6 +23,7 @@ pub(crate) use mimics::mimic_sentences;
 use oddwell_study::record::Summary;
 
 use crate::style::Style;
+use crate::text::wrapped;
 
 /// The closing summary: plain text of at most 100 columns (unless a name is longer), with escape sequences only in
 /// [`Style::Coloured`].
@@ -33,6 +35,7 @@ pub fn closing_summary(summary: &Summary, style: Style) -> String {
     let sections = [
         title(summary, style),
         departure::section(summary, style),
+        by_part::section(summary, style),
         clocks::section(summary, style),
         mimics::section(summary, style),
         limits::section(summary, style),
@@ -48,6 +51,18 @@ pub fn closing_summary(summary: &Summary, style: Style) -> String {
 fn title(summary: &Summary, style: Style) -> String {
     let name = format!("{}: hypothesis `{}`", summary.study, summary.hypothesis);
     let mut out = format!("{} ({})\n", style.strong(&name), shape(summary));
+    if !(summary.only.is_empty() && summary.without.is_empty()) {
+        let of = |word: &str, names: &[String]| match names {
+            [] => String::new(),
+            names => format!(", {word} {}", names.join(", ")),
+        };
+        let part = of("only", &summary.only) + &of("without", &summary.without);
+        out.push_str(&wrapped(
+            "",
+            2,
+            &format!("A part of the measurements: {}.", part.trim_start_matches(", ")),
+        ));
+    }
     if summary.blinded {
         out.push_str(&style.fault("BLINDED"));
         out.push_str(": the measurements are shifted by a secret departure; where it lies is not shown.\n");

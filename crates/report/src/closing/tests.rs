@@ -67,6 +67,8 @@ fn converged() -> Summary {
     };
     Summary {
         study: "Two invented surveys".to_owned(),
+        only: Vec::new(),
+        without: Vec::new(),
         hypothesis: "constant".to_owned(),
         departure: "constant".to_owned(),
         felt_by: "light".to_owned(),
@@ -128,6 +130,7 @@ fn converged() -> Summary {
             clock("larkfield", "near", 2210.4, 731.2, Some(0.6138)),
             clock("northmoor", "deep", 1903.0, 690.0, None),
         ],
+        by_part: None,
         switched_off: None,
         sampler: SamplerSummary {
             ensembles: 4,

@@ -2,6 +2,7 @@
 
 use super::measurements::Measurements;
 use super::posterior::Posterior;
+use crate::resolve::Study;
 use crate::run_error::RunError;
 use oddwell_likelihood::NoiseChoice;
 use oddwell_sampler::{PeakSettings, Target, find_peak};
@@ -43,7 +44,40 @@ pub(super) fn count_determined(
         posterior.compress()?;
         counted = now;
     }
+    for ((group, _), determined) in waiting.iter().zip(counted) {
+        posterior.set_determined(*group, determined);
+    }
     Ok(())
+}
+
+/// Measurements with one noise for all hypotheses of the study: where n_θ is to be counted, the largest count of any, so that
+/// their evidences compare.
+///
+/// # Errors
+/// As [`Posterior::new`].
+pub(crate) fn with_one_noise(
+    study: &Study,
+    mut measurements: Measurements,
+) -> Result<Measurements, RunError> {
+    if measurements.groups.iter().all(|group| group.to_be_counted.is_none()) {
+        return Ok(measurements);
+    }
+    let mut largest = vec![0; measurements.groups.len()];
+    for hypothesis in &study.hypotheses {
+        let posterior = Posterior::new(study, hypothesis, &measurements)?;
+        for (largest, counted) in largest.iter_mut().zip(posterior.determined()) {
+            *largest = counted.unwrap_or(0).max(*largest);
+        }
+    }
+    let surveys = &measurements.surveys;
+    for (group, determined) in measurements.groups.iter_mut().zip(largest) {
+        let Some(noise) = group.to_be_counted.take() else { continue };
+        let survey = || surveys[group.surveys.start].name.clone();
+        let noise = noise.with_determined(determined);
+        let likelihood = group.likelihood.clone().with_noise(&noise);
+        group.likelihood = likelihood.map_err(|source| RunError::Noise { survey: survey(), source })?;
+    }
+    Ok(measurements)
 }
 
 fn count(posterior: &Posterior, waiting: &[(usize, NoiseChoice)]) -> Result<Vec<usize>, RunError> {

@@ -14,6 +14,7 @@ mod survey_rows;
 mod templates;
 mod window;
 
+pub(crate) use determined::with_one_noise;
 pub(crate) use elsewhere::predict_elsewhere;
 pub use integrated::{IntegratedPosterior, IntegratedPosteriorScratch};
 pub(crate) use measurements::read_rows_only;

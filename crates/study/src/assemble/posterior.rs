@@ -37,6 +37,7 @@ pub struct Posterior {
     templates: Templates,
     domain: Domain,
     compressed: Option<CompressedSet>,
+    determined: Vec<Option<usize>>,
 }
 
 /// Working memory of one thread.
@@ -168,6 +169,7 @@ impl Posterior {
             templates,
             domain,
             compressed: None,
+            determined: vec![None; measurements.groups.len()],
         };
         let start = hypothesis.start();
         let mut scratch = posterior.scratch();
@@ -189,6 +191,16 @@ impl Posterior {
         self.compressed =
             Some(compressed.map_err(|source| RunError::Likelihood { survey: "all".into(), source })?);
         Ok(())
+    }
+
+    /// n_θ of each group of surveys whose noise asked for it to be counted.
+    #[must_use]
+    pub fn determined(&self) -> &[Option<usize>] {
+        &self.determined
+    }
+
+    pub(super) fn set_determined(&mut self, group: usize, determined: usize) {
+        self.determined[group] = Some(determined);
     }
 
     /// Changes the noise of a group of surveys; [`Posterior::compress`] must follow.

@@ -12,6 +12,9 @@ use oddwell_model::{Pair, Row, Space};
 use std::collections::BTreeMap;
 use std::path::Path;
 
+/// The bin of a predicted row that a restriction leaves out.
+const LEFT_OUT: usize = usize::MAX;
+
 /// A survey's window, cut to the rows that are kept and to the columns that they need.
 #[derive(Clone, Debug, PartialEq)]
 pub struct SurveyWindow {
@@ -85,6 +88,11 @@ pub(super) fn read_window(
     let needed: Vec<usize> = (0..rows.len())
         .filter(|&column| kept_lines.column(column).iter().any(|entry| *entry != 0.0))
         .collect();
+    if let Some(&column) = needed.iter().find(|&&column| rows[column].bin == LEFT_OUT) {
+        let at = format!(", matrix column {}", column + 1);
+        let rule = "must be 0 for rows that are kept where it predicts a bin that is left out";
+        return fail(&file, at, rule, "another number", "leave that bin in, or these rows out");
+    }
     let mut matrix = kept_lines.select_columns(&needed);
     let mut rows: Vec<Row> = needed.iter().map(|&column| rows[column]).collect();
     if let Some(h) = h {
@@ -143,7 +151,10 @@ fn read_rows(
         };
         let at: f64 = at.parse().unwrap_or(f64::NAN);
         rows.push(Row {
-            bin: first_bin + position_of_bin(&file, line, bin, section)?,
+            bin: match section.left_out.iter().any(|name| name == bin) {
+                true => LEFT_OUT,
+                false => first_bin + position_of_bin(&file, line, bin, section)?,
+            },
             pair: Pair::parse(pair).unwrap_or(Pair::FirstSecond),
             multipole: multipole.parse::<f64>().unwrap_or(f64::NAN) as u8,
             space,

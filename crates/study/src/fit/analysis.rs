@@ -144,7 +144,7 @@ fn jacobian(
 }
 
 /// What the priors add to the information: their curvature, and nothing where they are not concave.
-fn prior_precision(posterior: &Posterior, point: &[f64]) -> DMatrix<f64> {
+pub(super) fn prior_precision(posterior: &Posterior, point: &[f64]) -> DMatrix<f64> {
     let mut precision = posterior.priors.precision(point);
     for &parameter in posterior.priors.independent() {
         let curvature = precision[(parameter, parameter)];

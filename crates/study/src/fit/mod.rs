@@ -1,6 +1,7 @@
 //! From a study to a finished run: sampling, what the chain says, and the run directory.
 
 mod analysis;
+mod by_part;
 mod clocks;
 mod drawn_back;
 mod general_relativity;
@@ -78,7 +79,8 @@ pub enum Resumed {
     Finished,
 }
 
-/// `runs/<title>-<hypothesis>`, with the title in lower case and dashes for everything but letters and digits.
+/// `runs/<title>-<hypothesis>`, with the title in lower case and dashes for everything but letters and digits; what a
+/// restriction leaves in or out follows, as in `-only-larkfield.near`.
 #[must_use]
 pub fn default_directory(study: &Study, hypothesis: &Hypothesis) -> PathBuf {
     default_directory_of(study, &hypothesis.name)
@@ -96,7 +98,14 @@ pub(crate) fn default_directory_of(study: &Study, what: &str) -> PathBuf {
     }
     let slug = slug.trim_matches('-');
     let slug = if slug.is_empty() { "study" } else { slug };
-    Path::new("runs").join(format!("{slug}-{what}"))
+    let mut name = format!("{slug}-{what}");
+    let restriction = study.restriction();
+    for (word, names) in [("only", &restriction.only), ("without", &restriction.without)] {
+        if !names.is_empty() {
+            name.push_str(&format!("-{word}-{}", names.join("-")));
+        }
+    }
+    Path::new("runs").join(name)
 }
 
 /// Samples the posterior of a hypothesis and writes a run directory. `progress` is called some 25 times a second with
@@ -199,6 +208,8 @@ pub(crate) fn fit_posterior(
         study_file: study.file.source.name().to_owned(),
         study_text: study.file.source.text().to_owned(),
         overrides: overrides_of(study),
+        only: study.restriction().only.clone(),
+        without: study.restriction().without.clone(),
         hypothesis: hypothesis.name.clone(),
         seed: settings.seed,
         threads: options.threads,
@@ -232,13 +243,20 @@ fn identity_of(
         version: VERSION.to_owned(),
         task: format!("a fit of `{}`", hypothesis.name),
         inputs: measurements.inputs.clone(),
-        overrides: overrides_of(study),
+        overrides: options_of(overrides_of(study), &study.restriction().only, &study.restriction().without),
         seed,
     }
 }
 
 fn overrides_of(study: &Study) -> Vec<String> {
     study.overrides().iter().map(|each: &Override| each.option.clone()).collect()
+}
+
+/// `--set` options, and behind them what is left in and out: another part of the measurements is another run.
+fn options_of(mut overrides: Vec<String>, only: &[String], without: &[String]) -> Vec<String> {
+    overrides.extend(only.iter().map(|name| format!("--only {name}")));
+    overrides.extend(without.iter().map(|name| format!("--without {name}")));
+    overrides
 }
 
 /// A run that is there, if it is the one that is asked for.
@@ -248,7 +266,7 @@ fn finished(directory: &Path, identity: &RunIdentity) -> Result<Fitted, RunError
         version: manifest.version.clone(),
         task: format!("a fit of `{}`", manifest.hypothesis),
         inputs: manifest.inputs.clone(),
-        overrides: manifest.overrides.clone(),
+        overrides: options_of(manifest.overrides.clone(), &manifest.only, &manifest.without),
         seed: manifest.seed,
     };
     if let Some(difference) = there.difference(identity) {

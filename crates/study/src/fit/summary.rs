@@ -1,6 +1,7 @@
 //! Puts the contents of `summary.json` together.
 
 use super::analysis::Analysis;
+use super::by_part::by_part;
 use super::clocks::{self, Derived};
 use super::drawn_back::drawn_back;
 use super::{general_relativity, goodness, mimics, suspicions, switched_off};
@@ -48,6 +49,8 @@ pub(super) fn summarise(
     parameters.extend(derived.parameters.clone());
     let summary = Summary {
         study: study.file.title.value.clone(),
+        only: study.restriction().only.clone(),
+        without: study.restriction().without.clone(),
         hypothesis: posterior.hypothesis.name.clone(),
         departure: posterior.hypothesis.shape.0.name().to_owned(),
         felt_by: posterior.hypothesis.felt_by.name().to_owned(),
@@ -65,6 +68,7 @@ pub(super) fn summarise(
         general_relativity,
         mimics,
         clocks: derived.clocks.clone(),
+        by_part: by_part(posterior, measurements, &analysis)?,
         switched_off: switched_off::switched_off(posterior, &analysis, &mut scratch)?,
         sampler: sampler_summary(chain, seed),
     };

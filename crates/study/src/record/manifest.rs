@@ -16,6 +16,12 @@ pub struct Manifest {
     pub study_text: String,
     /// `--set` options, as given.
     pub overrides: Vec<String>,
+    /// The surveys and bins that were left in alone, as `SURVEY` or `SURVEY.BIN`; empty: all.
+    #[serde(default)]
+    pub only: Vec<String>,
+    /// Those that were left out.
+    #[serde(default)]
+    pub without: Vec<String>,
     /// The hypothesis.
     pub hypothesis: String,
     /// The seed of all random numbers.

@@ -10,7 +10,8 @@ mod weigh;
 pub use manifest::{InputFile, Manifest};
 pub use stability::{Stability, StabilityPoint, Variation};
 pub use summary::{
-    BestFit, BinGoodness, ClockContrastSummary, ClockSummary, GeneralRelativity, Mimic, Ordered,
-    ParameterSummary, SamplerSummary, Summary, SurveyGoodness, SwitchedOff, WarningRecord,
+    BestFit, BinGoodness, ClockContrastSummary, ClockSummary, DepartureByPart, GeneralRelativity, Mimic,
+    Ordered, ParameterSummary, PartAgreement, PartDeparture, SamplerSummary, Summary, SurveyGoodness,
+    SwitchedOff, WarningRecord,
 };
 pub use weigh::{BestOfRecord, ConsistencyRecord, HypothesisRecord, Sensitivity, WeighRecord};

@@ -13,6 +13,12 @@ pub type Ordered<T> = indexmap::IndexMap<String, T>;
 pub struct Summary {
     /// The study's title.
     pub study: String,
+    /// The surveys and bins that were left in alone, as `SURVEY` or `SURVEY.BIN`; empty: all.
+    #[serde(default)]
+    pub only: Vec<String>,
+    /// Those that were left out.
+    #[serde(default)]
+    pub without: Vec<String>,
     /// The hypothesis fitted.
     pub hypothesis: String,
     /// Its shape, as in the registry of departures.
@@ -38,6 +44,10 @@ pub struct Summary {
     /// What it means for clocks, bin by bin.
     #[serde(default)]
     pub clocks: Vec<ClockSummary>,
+    /// The departure from each survey and each bin, and whether they agree; null where there is but one bin, or no
+    /// amplitude to compare.
+    #[serde(default)]
+    pub by_part: Option<DepartureByPart>,
     /// The largest effect that the study leaves out of its predictions; null where it leaves out none, or where the data
     /// could not tell.
     #[serde(default)]
@@ -196,6 +206,48 @@ pub struct ClockContrastSummary {
     pub sd: Option<f64>,
     /// Central 68 %.
     pub interval68: Option<[f64; 2]>,
+}
+
+/// The amplitude of the departure by parts of the data: linear about the best point, without the departure's own prior.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
+pub struct DepartureByPart {
+    /// By survey; empty where there is but one.
+    pub surveys: Vec<PartDeparture>,
+    /// Whether the surveys agree; null where there is but one, or where the data leave one open.
+    pub survey_agreement: Option<PartAgreement>,
+    /// By bin.
+    pub bins: Vec<PartDeparture>,
+    /// Whether the bins agree; null as for surveys.
+    pub bin_agreement: Option<PartAgreement>,
+}
+
+/// The amplitude of the departure from one part of the data.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
+pub struct PartDeparture {
+    /// The survey.
+    pub survey: String,
+    /// The bin; null for a survey as a whole.
+    pub bin: Option<String>,
+    /// From this part's rows alone, nuisances as far as their priors and these rows know them; null while blinded, or where
+    /// they leave it open.
+    pub value: Option<f64>,
+    /// Its standard deviation.
+    pub sd: Option<f64>,
+    /// From all rows together, one amplitude a part, nuisances in common; null as for `value`.
+    pub together: Option<f64>,
+    /// Its standard deviation.
+    pub together_sd: Option<f64>,
+}
+
+/// χ² of the amplitudes of all parts, estimated together, about their mean, with what they share in their covariance.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
+pub struct PartAgreement {
+    /// χ².
+    pub chi2: f64,
+    /// Degrees of freedom: one less than there are parts.
+    pub degrees_of_freedom: usize,
+    /// Probability of a χ² at least this large where all parts have the same amplitude.
+    pub p_value: Option<f64>,
 }
 
 /// An effect that is left out of the predictions.

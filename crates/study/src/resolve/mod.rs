@@ -9,6 +9,7 @@ mod hypothesis;
 mod link;
 mod names;
 mod redshifts;
+mod restrict;
 mod systematics;
 mod templates;
 mod values;
@@ -20,6 +21,7 @@ use oddwell_likelihood::LengthUnit;
 pub use affine::AffineForm;
 pub(crate) use covariances::is_pattern;
 pub use hypothesis::{FreeParameter, FreePrior, Hypothesis, JointBlock, ResolvedQuantity, State};
+pub use restrict::Restriction;
 pub use systematics::Move;
 pub(crate) use values::{QuantityRule, rule_of};
 
@@ -46,6 +48,9 @@ pub struct Study {
     default: usize,
     overrides: Vec<Override>,
     absent: Vec<SurveySection>,
+    restriction: Restriction,
+    /// The file as it was, where surveys or bins are left out of this one.
+    whole: Option<Box<StudyFile>>,
 }
 
 impl Study {
@@ -111,8 +116,10 @@ impl Study {
         }
         check_units(&file, &hypotheses, &mut checker);
         let problems = checker.problems;
-        let (overrides, absent) = (overrides.to_vec(), Vec::new());
-        StudyError::unless_none(problems, Some(Self { file, hypotheses, default, overrides, absent }))
+        let (absent, restriction) = (Vec::new(), Restriction::default());
+        let overrides = overrides.to_vec();
+        let study = Self { file, hypotheses, default, overrides, absent, restriction, whole: None };
+        StudyError::unless_none(problems, Some(study))
     }
 
     /// Surveys of the file that a restriction leaves out.

@@ -4,7 +4,7 @@ use super::ReviewError;
 use crate::assemble::{Measurements, read_measurements};
 use crate::file::{Override, StudyFile};
 use crate::record::Manifest;
-use crate::resolve::Study;
+use crate::resolve::{Restriction, Study};
 use std::path::Path;
 
 /// The study as the run read it, and the measurements that it names, which must have the run's checksums.
@@ -18,6 +18,8 @@ pub(super) fn restore(manifest: &Manifest) -> Result<(Study, Measurements), Revi
         manifest.overrides.iter().map(|text| Override::parse(text)).collect();
     let overrides = overrides.map_err(|error| failed(&error))?;
     let study = Study::resolve(file, &overrides).map_err(|error| failed(&error))?;
+    let restriction = Restriction { only: manifest.only.clone(), without: manifest.without.clone() };
+    let study = study.restricted(&restriction).map_err(|error| failed(&error))?;
     let measurements = read_measurements(&study).map_err(|error| failed(&error))?;
     let before = |path: &str| manifest.inputs.iter().find(|input| input.path == path);
     for input in &measurements.inputs {

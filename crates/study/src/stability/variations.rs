@@ -34,7 +34,7 @@ enum What {
 
 impl Change {
     pub(super) fn apply(&self, study: &Study) -> Result<Study, RunError> {
-        let mut file: StudyFile = study.file.clone();
+        let mut file: StudyFile = study.whole_file().clone();
         let mut overrides = study.overrides().to_vec();
         match &self.what {
             What::Within(axis, ends) => {
@@ -49,7 +49,7 @@ impl Change {
             }
             What::Set(text) => overrides.push(Override::parse(text)?),
         }
-        Ok(Study::resolve(file, &overrides)?)
+        Ok(Study::resolve(file, &overrides)?.restricted(study.restriction())?)
     }
 }
 

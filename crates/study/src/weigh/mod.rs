@@ -12,7 +12,7 @@ mod watch;
 
 pub use watch::{HypothesisWatch, WeighWatch};
 
-use crate::assemble::{Measurements, Posterior, read_measurements};
+use crate::assemble::{Measurements, Posterior, read_measurements, with_one_noise};
 use crate::fit::{FitOptions, default_directory_of};
 use crate::record::{Manifest, WeighRecord};
 use crate::resolve::Study;
@@ -76,7 +76,7 @@ pub fn weigh(study: &Study, options: &WeighOptions, watch: &WeighWatch) -> Resul
     }
     let (clock, started) = (Instant::now(), OffsetDateTime::now_utc());
     let seed = options.seed.unwrap_or(study.file.sampling.seed.value);
-    let measurements = read_measurements(study)?;
+    let measurements = with_one_noise(study, read_measurements(study)?)?;
     let state = State::open(study, &measurements, seed, options)?;
     let posteriors: Vec<Posterior> = study
         .hypotheses
@@ -142,6 +142,8 @@ impl Work<'_> {
             study_file: self.study.file.source.name().to_owned(),
             study_text: self.study.file.source.text().to_owned(),
             overrides: self.study.overrides().iter().map(|each| each.option.clone()).collect(),
+            only: self.study.restriction().only.clone(),
+            without: self.study.restriction().without.clone(),
             hypothesis: "all".to_owned(),
             seed: self.seed,
             threads: self.options.threads,
