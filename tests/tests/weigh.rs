@@ -152,6 +152,28 @@ fn flat_priors_estimated_covariances_and_weights() {
     }
 }
 
+/// Noise `percival` counts what a hypothesis determines; weighed, all hypotheses share the count, so that a hypothesis with no more
+/// to say than another has the same evidence but for its prior.
+#[test]
+fn one_exponent_for_all_hypotheses() {
+    let study = changed("known-1", "noise = \"gaussian\"", "noise = \"percival\"\nmock_count = 90");
+    let record = weighed(&study);
+    assert!(record.agree);
+    let (gr, constant) = (hypothesis(&record, "gr"), hypothesis(&record, "constant"));
+    let ratio = constant.estimators["density_ratio"].as_ref();
+    // The density ratio lives within one noise; had general relativity another exponent, it would be off by the difference of two
+    // normalisations, some tenths.
+    let (by_ratio, by_nested) = match (ratio, &constant.estimators["nested"]) {
+        (Some(ratio), Some(nested)) => (ratio, nested),
+        other => panic!("{other:?}"),
+    };
+    assert!((by_ratio.log_evidence - by_nested.log_evidence).abs() < 2.0 * LIMIT);
+    // With 90 mocks for 30 rows the exponent makes a density or not, for all alike.
+    assert_eq!(gr.log_evidence.is_none(), record.relative);
+    assert_eq!(constant.log_evidence.is_none(), record.relative);
+    assert!(constant.odds.is_some());
+}
+
 /// Felt by everything, a departure leaves odd multipoles as they are but for growth; and a prior that allows next to nothing is
 /// not tested by anything.
 #[test]

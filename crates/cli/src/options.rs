@@ -35,7 +35,7 @@ Exit status:
   0    done
   1    the input is wrong: study, data, or a folder that cannot be written (a bug, too, and then it says so)
   2    the command line is wrong
-  3    done, but not converged: results are written and marked so
+  3    done, but not converged, or estimators disagree: results are written and marked so
   130  ended by Ctrl-C or SIGTERM; what a fit has sampled is written and marked as not converged
 
 What it can and cannot say:

@@ -1,7 +1,7 @@
 //! The manual's pages as text.
 
 use oddwell_study::check::{KINDS, Rate, thresholds};
-use oddwell_study::{ManualPage, manual_pages};
+use oddwell_study::{ManualPage, estimator_families, manual_pages};
 
 use crate::style::Style;
 use crate::text::{padded, wrapped};
@@ -17,6 +17,13 @@ pub fn manual_topics(style: Style) -> String {
     }
     out.push_str(&format!("\n{}\n", style.strong("Commands")));
     out.push_str("  check   what each of its warnings looks at, and where it draws the line\n");
+    out.push_str("  weigh   what evidences and odds are, what they hang on, and what they cannot bear\n");
+    out.push_str(&format!("\n{}\n", style.strong("Estimators of the evidence")));
+    let width = estimator_families().iter().map(|family| family.name.chars().count()).max().unwrap_or(0);
+    for family in estimator_families() {
+        let first = format!("  {}   ", padded(family.name, width));
+        out.push_str(&wrapped(&first, width + 5, family.summary));
+    }
     out.push_str("\n`oddwell manual TOPIC` prints the page of one of them.\n");
     out
 }
@@ -35,6 +42,54 @@ pub fn manual_check(style: Style) -> String {
         }
     }
     out
+}
+
+/// The page of `weigh`.
+pub fn manual_weigh(style: Style) -> String {
+    let mut out = format!("{}\n", style.strong("oddwell weigh"));
+    for paragraph in WEIGH {
+        out.push('\n');
+        out.push_str(&wrapped("  ", 2, paragraph));
+    }
+    out.push_str(&format!("\n{}\n", style.strong("Estimators")));
+    for family in estimator_families() {
+        out.push_str(&wrapped(&format!("  {}: ", family.name), 4, family.summary));
+    }
+    out
+}
+
+/// What `weigh` does and what its result cannot bear.
+const WEIGH: [&str; 7] = [
+    "The evidence of a hypothesis is the probability of the data under it, its priors included: the likelihood averaged over the \
+     prior. Two hypotheses' evidences, times their prior odds (`weight` in [[hypothesis]]), are the odds that the data leave.",
+    "Every estimator that applies computes it anew, once the quantities that enter linearly are integrated out exactly (normal noise, \
+     normal or flat priors). They agree where none differs from another by more than 4 of their combined standard errors and 0.02. If \
+     they do not, the text and exit status 3 say so: quote no odds then. Those that do not vote are shown in brackets.",
+    "An evidence falls as the prior of the departure widens beyond what the data ask for. So odds come with the width at which \
+     they turn, found from the draws at hand: where that lies within a factor of 3 of the width used, the verdict is \
+     `inconclusive: the prior decides`. The largest ratio that any width gives stands beside it, and the bound of Sellke, Bayarri & \
+     Berger (2001) on what the tail probability could be worth to any prior.",
+    "A hypothesis whose posterior is its prior is untested: no odds. So is one that everything feels, where odd multipoles alone \
+     are kept: they see of it only how matter has grown.",
+    "One departure for all against one each: where the study has a `constant` and a `per-bin` (or `per-survey`) hypothesis with the same \
+     prior, the ratio of their evidences, which moves with the prior's width, and the suspiciousness, which does not (Handley & Lemos \
+     2019), with its degrees of freedom and tail probability.",
+    "The best of many bins, or of many shapes, is far out more often than one alone: the global tail stands beside the local one. \
+     Averages over hypotheses weigh each by its probability.",
+    "With noise `percival` and an exponent that makes no density, only odds are given. A blinded study is not weighed. An evidence \
+     is no detection: it knows no hypothesis but those listed.",
+];
+
+/// The page of an estimator; `None` for another topic.
+pub fn manual_estimator(topic: &str, style: Style) -> Option<String> {
+    let family = estimator_families().iter().find(|family| family.name == topic)?;
+    let mut out = format!("{}\n\n", style.strong(&format!("estimator `{}`", family.name)));
+    out.push_str(&wrapped("  ", 2, family.summary));
+    for paragraph in family.manual.split("\n\n") {
+        out.push('\n');
+        out.push_str(&wrapped("  ", 2, paragraph));
+    }
+    Some(out)
 }
 
 /// One page: formula, parameters, who feels it, what it is and what can be told of it.
@@ -125,6 +180,21 @@ mod tests {
             text.contains("0.001") && text.lines().map(UnicodeWidthStr::width).max() <= Some(PAGE),
             "{text}"
         );
+    }
+
+    #[test]
+    fn every_estimator_has_a_page_and_a_topic() {
+        let (topics, weigh) = (manual_topics(Style::Plain), manual_weigh(Style::Plain));
+        for family in estimator_families() {
+            assert!(topics.lines().any(|line| line.starts_with(&format!("  {} ", family.name))), "{topics}");
+            assert!(weigh.contains(&format!("  {}: ", family.name)), "{weigh}");
+            let page = manual_estimator(family.name, Style::Plain).expect("it is registered");
+            let flowing = |text: &str| text.split_whitespace().collect::<Vec<_>>().join(" ");
+            assert!(flowing(&page).contains(&flowing(family.manual)), "{page}");
+            let widest = page.lines().chain(weigh.lines()).map(UnicodeWidthStr::width).max();
+            assert!(widest <= Some(PAGE), "{page}");
+        }
+        assert!(manual_estimator("constant", Style::Plain).is_none());
     }
 
     #[test]

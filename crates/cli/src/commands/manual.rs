@@ -1,6 +1,6 @@
 //! `oddwell manual [TOPIC]`
 
-use oddwell_report::{manual_check, manual_text, manual_topics};
+use oddwell_report::{Style, manual_check, manual_estimator, manual_text, manual_topics, manual_weigh};
 use oddwell_study::check::{KINDS, thresholds};
 use oddwell_study::{manual_page, manual_pages};
 use serde_json::{Value, json};
@@ -31,6 +31,15 @@ pub(super) fn run(arguments: &ManualArguments, output: &Output) -> Result<Status
         }
         return Ok(Status::Done);
     }
+    if let Some(page) = weighing(topic, output.style) {
+        if output.json {
+            let text = weighing(topic, Style::Plain);
+            output.json_result(&json!({ "name": topic, "text": text }))?;
+        } else {
+            output.result(&page)?;
+        }
+        return Ok(Status::Done);
+    }
     let page = manual_page(topic)
         .map_err(|nearest| Failure::command_line(format!("the manual has no topic `{topic}`; {nearest}")))?;
     if output.json {
@@ -39,4 +48,9 @@ pub(super) fn run(arguments: &ManualArguments, output: &Output) -> Result<Status
         output.result(&manual_text(&page, output.style))?;
     }
     Ok(Status::Done)
+}
+
+/// The page of `weigh`, or of an estimator.
+fn weighing(topic: &str, style: Style) -> Option<String> {
+    if topic == "weigh" { Some(manual_weigh(style)) } else { manual_estimator(topic, style) }
 }
