@@ -70,7 +70,9 @@ impl Scale {
     fn powers(&self) -> Vec<(f64, String)> {
         let first = self.low.log10().floor() as i32;
         let last = self.high.log10().ceil() as i32;
-        let all = (first..=last).flat_map(|power| [1.0, 2.0, 5.0].map(|digit| digit * 10f64.powi(power)));
+        // Three labels a decade have no room over many.
+        let digits: &[f64] = if self.high / self.low < 2e3 { &[1.0, 2.0, 5.0] } else { &[1.0] };
+        let all = (first..=last).flat_map(|power| digits.iter().map(move |digit| digit * 10f64.powi(power)));
         let inside: Vec<f64> = all.filter(|value| self.covers(*value)).collect();
         inside.into_iter().map(|value| (value, format!("{value}"))).collect()
     }
@@ -112,6 +114,7 @@ mod tests {
             .map(|(_, label)| label)
             .collect();
         assert_eq!(powers, ["0.5", "1", "2", "5", "10"]);
+        assert_eq!(Scale::logarithmic((0.01, 100.0), (0.0, 1.0)).ticks(0).len(), 5);
         assert_eq!(Scale::linear((-2.0, -1.0), (0.0, 1.0)).ticks(1)[0].1, "−2");
     }
 

@@ -1,14 +1,16 @@
 //! The departure against redshift: the bands of fitted shapes, and values a bin or survey.
 
 use maud::{Markup, html};
+use oddwell_study::record::{DepartureByPart, PartAgreement, PartDeparture};
 use oddwell_study::review::{CurvePoint, DepartureCurve, REFERENCE_WAVENUMBER, Review};
 
-use super::parts::{Sheet, cell, key, missing, on_demand, table};
+use super::parts::{Sheet, cell, in_summary, key, missing, on_demand, table, told};
 use super::{Runs, label};
 use crate::figure::{
-    Anchor, CATEGORIES, Dash, Figure, Frame, INK, Labels, Mark, RELATIVITY, Scale, Shape, Stroke, range,
+    Anchor, CATEGORIES, Dash, Figure, Frame, INK, Labels, MUTED, Mark, RELATIVITY, Scale, Shape, Stroke,
+    range,
 };
-use crate::numbers::{rounded, significant, two_digits};
+use crate::numbers::{probability, rounded, significant, two_digits};
 
 /// A run's curve with how it is drawn.
 struct Drawn<'a> {
@@ -46,16 +48,17 @@ pub(super) fn section(runs: &Runs<'_>, sheet: &mut Sheet) -> Markup {
     let lacks = |departure: &str| drawn.iter().all(|drawn| drawn.run.summary.departure != departure);
     let scale_dependent = drawn.iter().any(|drawn| drawn.curve.scale_dependent);
     html! {
-        @if let Some(figure) = figure(&drawn) {
+        @if let Some(figure) = figure(&drawn, runs.first().summary.by_part.as_ref()) {
             (sheet.figure(figure, html! {
                 "τ against redshift: for each fitted shape the median and the central 68 % at every redshift; for a value a bin "
-                "or survey, mean and one and two standard deviations. Ticks below: the bins of the study."
+                "or survey, mean and one and two standard deviations. Grey squares: each bin alone, one standard deviation, linear. Ticks below: the bins."
             }))
         }
         @if scale_dependent {
             p.note { "Shapes that depend on scale are drawn at " (REFERENCE_WAVENUMBER) " h/Mpc." }
         }
         (on_demand("The numbers of this figure", numbers(&drawn)))
+        @if let Some(parts) = &runs.first().summary.by_part { (by_part(parts, runs.principal)) }
         @if lacks("per-bin") {
             (missing("No run of this page gives each bin a departure of its own. A hypothesis with departure = \"per-bin\" does, fitted by",
                 &format!("oddwell fit {study} --hypothesis NAME")))
@@ -67,7 +70,75 @@ pub(super) fn section(runs: &Runs<'_>, sheet: &mut Sheet) -> Markup {
     }
 }
 
-fn figure(drawn: &[Drawn<'_>]) -> Option<Figure> {
+/// The departure from each part of the data, linear about the best point.
+fn by_part(parts: &DepartureByPart, at: usize) -> Markup {
+    let rows = |which: &'static str, list: &[PartDeparture]| -> Vec<Vec<Markup>> {
+        let row = |(index, part): (usize, &PartDeparture)| {
+            let from = |key: &str| in_summary(at, &format!("/by_part/{which}/{index}/{key}"));
+            let place =
+                part.bin.as_ref().map_or_else(|| part.survey.clone(), |bin| format!("{}.{bin}", part.survey));
+            let pair = |(value, sd): (Option<f64>, Option<f64>), names: (&str, &str)| {
+                html! {
+                    (told(&from(names.0), value, |value| rounded(value, sd.unwrap_or(f64::NAN)))) " ± " (told(&from(names.1), sd, two_digits))
+                }
+            };
+            vec![
+                key(&place),
+                pair((part.value, part.sd), ("value", "sd")),
+                pair((part.together, part.together_sd), ("together", "together_sd")),
+            ]
+        };
+        list.iter().enumerate().map(row).collect()
+    };
+    let agreement = |what: &str, which: &str, found: &Option<PartAgreement>| match found {
+        None => html! {},
+        Some(found) => html! {
+            p {
+                "Do the " (what) " agree? χ² " (told(&in_summary(at, &format!("/by_part/{which}/chi2")), Some(found.chi2), |chi2| format!("{chi2:.1}")))
+                " for " (found.degrees_of_freedom) ", p "
+                (told(&in_summary(at, &format!("/by_part/{which}/p_value")), found.p_value, probability)) "."
+            }
+        },
+    };
+    html! {
+        h3 { "From each survey and each bin" }
+        @if !parts.surveys.is_empty() { (table("The departure by survey", &["survey", "alone", "together, one each"], rows("surveys", &parts.surveys))) }
+        (agreement("surveys", "survey_agreement", &parts.survey_agreement))
+        @if !parts.bins.is_empty() { (table("The departure by bin", &["bin", "alone", "together, one each"], rows("bins", &parts.bins))) }
+        (agreement("bins", "bin_agreement", &parts.bin_agreement))
+        p.note { "Linear about the best point, without the departure's own prior. Together: nuisances in common." }
+    }
+}
+
+/// Each bin alone, beside its own place: open for the eye, since linear.
+fn alone(
+    parts: Option<&DepartureByPart>,
+    bins: &[(String, f64)],
+    frame: &Frame,
+    description: &mut String,
+) -> Vec<Mark> {
+    let mut marks = Vec::new();
+    for part in parts.iter().flat_map(|parts| &parts.bins) {
+        let (Some(bin), Some(value), Some(sd)) = (&part.bin, part.value, part.sd) else { continue };
+        let place = format!("{}.{bin}", part.survey);
+        let Some((_, redshift)) = bins.iter().find(|(known, _)| *known == place) else { continue };
+        let tip = format!("{place} alone: {} ± {}", rounded(value, sd), two_digits(sd));
+        description.push_str(&format!("{tip}. "));
+        let x = frame.x.at(*redshift) - 7.0;
+        let (low, high) = (frame.y.clamped(value - sd), frame.y.clamped(value + sd));
+        let square = Mark::Symbol {
+            at: (x, frame.y.clamped(value)),
+            radius: 3.6,
+            shape: Shape::Square,
+            colour: MUTED,
+        };
+        let bar = Mark::line(vec![(x, low), (x, high)], Stroke::solid(MUTED, 1.4));
+        marks.push(Mark::about(&[&place], tip, vec![bar, square]));
+    }
+    marks
+}
+
+fn figure(drawn: &[Drawn<'_>], by_part: Option<&DepartureByPart>) -> Option<Figure> {
     let bins = &drawn[0].curve.bins;
     let highest = bins.iter().map(|(_, redshift)| *redshift).fold(0.0, f64::max) * 1.15;
     let two_sided = |mean: Option<f64>, sd: Option<f64>| {
@@ -139,6 +210,7 @@ fn figure(drawn: &[Drawn<'_>]) -> Option<Figure> {
             marks.push(Mark::about(&[place, &name], tip, own));
         }
     }
+    marks.extend(alone(by_part, bins, &frame, &mut description));
     let y = 16.0 + 20.0 * drawn.len() as f64;
     let dashed = Stroke::solid(RELATIVITY, 2.0).dashed(Dash::Long);
     marks.push(Mark::line(vec![(56.0, y - 4.0), (84.0, y - 4.0)], dashed));

@@ -2,7 +2,7 @@
 
 use crate::assemble::Measurements;
 use crate::file::{KeepSection, Located, Override, StudyFile, SurveySection};
-use crate::resolve::{Hypothesis, Study};
+use crate::resolve::{Hypothesis, Restriction, Study};
 use crate::run_error::RunError;
 use oddwell_likelihood::{Axis, noise_families};
 use oddwell_model::FeltBy;
@@ -30,12 +30,15 @@ enum What {
     Noise(&'static str),
     /// As if given with `--set`.
     Set(&'static str),
+    /// As if given with `--only` or `--without`.
+    Restrict(Restriction),
 }
 
 impl Change {
     pub(super) fn apply(&self, study: &Study) -> Result<Study, RunError> {
         let mut file: StudyFile = study.whole_file().clone();
         let mut overrides = study.overrides().to_vec();
+        let mut restriction = study.restriction().clone();
         match &self.what {
             What::Within(axis, ends) => {
                 for survey in &mut file.surveys {
@@ -48,8 +51,14 @@ impl Change {
                 }
             }
             What::Set(text) => overrides.push(Override::parse(text)?),
+            What::Restrict(more) => {
+                restriction.without.extend(more.without.iter().cloned());
+                if !more.only.is_empty() {
+                    restriction.only.clone_from(&more.only);
+                }
+            }
         }
-        Ok(Study::resolve(file, &overrides)?.restricted(study.restriction())?)
+        Ok(Study::resolve(file, &overrides)?.restricted(&restriction)?)
     }
 }
 
@@ -114,6 +123,7 @@ pub(super) fn changes(study: &Study, hypothesis: &Hypothesis, measurements: &Mea
     for axis in [Axis::Separation, Axis::Wavenumber] {
         changes.extend(cuts(axis, measurements));
     }
+    changes.extend(parts(study));
     changes.extend(noises(study));
     changes.extend(growth(study, hypothesis));
     changes
@@ -148,6 +158,36 @@ fn cuts(axis: Axis, measurements: &Measurements) -> Vec<Change> {
         change("largest", format!("{name} up to {high} {unit}"), (lowest, high))
     });
     smallest.chain(largest).collect()
+}
+
+/// Each survey and each bin left out, and each alone; where there are two or more.
+fn parts(study: &Study) -> Vec<Change> {
+    let surveys = &study.file.surveys;
+    let mut names: Vec<String> = Vec::new();
+    if surveys.len() > 1 {
+        names.extend(surveys.iter().map(|survey| survey.name.value.clone()));
+    }
+    let bins: Vec<String> = surveys
+        .iter()
+        .flat_map(|survey| survey.bins.iter().map(|bin| format!("{}.{}", survey.name.value, bin.name.value)))
+        .collect();
+    if bins.len() > 1 {
+        names.extend(bins);
+    }
+    let change = |kind, name: &String, restriction| Change {
+        kind,
+        text: if kind == "only" { format!("{name} alone") } else { format!("without {name}") },
+        place: Some(name.clone()),
+        nested: true,
+        what: What::Restrict(restriction),
+    };
+    let without = names.iter().map(|name| {
+        change("without", name, Restriction { without: vec![name.clone()], ..Restriction::default() })
+    });
+    let only = names
+        .iter()
+        .map(|name| change("only", name, Restriction { only: vec![name.clone()], ..Restriction::default() }));
+    without.chain(only).collect()
 }
 
 /// Whether a survey's own covariance is an estimate, so that its noise is a matter of choice.
