@@ -187,7 +187,7 @@ fn document(
                 header {
                     @for run in unfinished { (not_converged(run)) }
                     @if blinded {
-                        p.banner role="note" { strong { "BLINDED" } ": " (WITHHELD) "." }
+                        p.banner role="note" { strong { "BLINDED" } ": " (parts::prose(WITHHELD)) "." }
                     }
                     h1 { (title) }
                     p.subject {
@@ -219,8 +219,8 @@ fn document(
 /// The word across everything, on every sheet of paper too.
 fn veil() -> Markup {
     html! {
-        svg.veil aria-hidden="true" viewBox="0 0 100 100" preserveAspectRatio="xMidYMid slice" {
-            text x="50" y="54" text-anchor="middle" font-size="21" transform="rotate(-32 50 50)" { "BLINDED" }
+        svg.veil aria-hidden="true" viewBox="0 0 100 100" preserveAspectRatio="xMidYMid meet" {
+            text x="50" y="54" text-anchor="middle" font-size="19" transform="rotate(-32 50 50)" { "BLINDED" }
         }
     }
 }
