@@ -111,3 +111,30 @@ fn schemas_completions_and_pages_come_from_the_program_itself() {
     told(&read(&folder, "man/oddwell-fit.1"), &[".TH", "stability"]);
     told(&read(&folder, "man/oddwell.1"), &["report"]);
 }
+
+/// A weighing brings its own posteriors, and its numbers stand on the page as in weigh.json.
+#[test]
+fn what_was_weighed_is_on_the_page() {
+    let folder = Folder::new();
+    let weighed = folder.run(&["weigh", "study.toml", "--out", "weighed"]);
+    assert!(matches!(weighed.status, Some(0 | 3)), "{}", weighed.err);
+    let made = folder.run(&["report", "weighed"]);
+    assert_eq!(made.status, Some(0), "{}", made.err);
+    let page = read(&folder, "weighed/report.html");
+    let record: serde_json::Value =
+        serde_json::from_str(&read(&folder, "weighed/weigh.json")).expect("it is JSON");
+    let mut compared = 0;
+    for rest in page.split("<data value=\"").skip(1) {
+        let (value, rest) = rest.split_once("\" data-from=\"").expect("a source");
+        let (from, _) = rest.split_once('"').expect("an end");
+        let Some(pointer) = from.strip_prefix("w0:weigh.json:") else { continue };
+        let found = record.pointer(pointer).unwrap_or_else(|| panic!("{pointer} is not there"));
+        assert_eq!(found.as_f64(), value.parse().ok(), "{pointer}");
+        compared += 1;
+    }
+    assert!(compared > 20, "{compared}");
+    told(
+        &page,
+        &["Odds of <code>constant</code> against <code>gr</code>", "The same evidence by independent routes"],
+    );
+}
