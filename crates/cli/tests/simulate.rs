@@ -224,6 +224,14 @@ fn mocks_come_with_the_noise_of_the_measurements() {
             assert!((sample - c[i][j]).abs() < 4.0 * error, "{i} {j}: {sample:e} {:e} ± {error:e}", c[i][j]);
         }
     }
+    // The study is complete: its covariances are estimated from the mocks, and a noise model for that applies.
+    let path = folder.join("mocked/study.toml");
+    let text =
+        std::fs::read_to_string(&path).unwrap().replace("noise = \"gaussian\"", "noise = \"percival\"");
+    std::fs::write(&path, text).unwrap();
+    let checked = succeed(folder, &["check", "mocked/study.toml", "--json"]);
+    assert!(checked.contains("\"mocks\": 400"), "{checked}");
+    succeed(folder, &["fit", "mocked/study.toml", "--quiet", "--out", "run"]);
 }
 
 #[test]
