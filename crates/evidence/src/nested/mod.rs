@@ -39,11 +39,14 @@ have seen by then is missed.",
 /// Insertion indices less probable than this take the vote away. Of ten thousand sound runs, one loses it.
 pub const LEAST_INSERTION_PROBABILITY: f64 = 1e-4;
 
+/// Live points of the first run at most: they tell the information to √(H/250), a few per cent of it.
+const FIRST_LIVE_POINTS: usize = 250;
+
 /// Nested sampling and its settings.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Nested {
-    /// Live points of each run at most; a first run of a quarter of them tells the information, and from it how many reach
-    /// `error`. At least 4·dimension + 8 are used.
+    /// Live points of each run at most; a first run of a quarter of them, or 250, tells the information, and from it how
+    /// many reach `error`. At least 4·dimension + 8 are used.
     pub live_points: usize,
     /// Standard error of ln Z that is wanted: √(H/live points of all runs), H the information.
     pub error: f64,
@@ -60,8 +63,8 @@ pub struct Nested {
 impl Default for Nested {
     fn default() -> Self {
         Self {
-            live_points: 1000,
-            error: 0.04,
+            live_points: 2500,
+            error: 0.03,
             runs: 4,
             sweeps: Sweeps::Anew(12.0),
             remainder: 0.01,
@@ -76,14 +79,14 @@ impl Nested {
         wanted.max(4 * dimension + 8).next_multiple_of(2)
     }
 
-    /// Live points of each run that reach the wanted error, from a run of a quarter of what is allowed; and what that cost.
+    /// Live points of each run that reach the wanted error, from a first, smaller run; and what that cost.
     fn enough<T: Target>(
         &self,
         problem: &Problem<'_, T>,
         watch: &Watch,
     ) -> Result<(usize, u64), EvidenceError> {
         let dimension = problem.target.dimension();
-        let least = Self::live(self.live_points / 4, dimension);
+        let least = Self::live((self.live_points / 4).min(FIRST_LIVE_POINTS), dimension);
         if least >= self.live_points {
             return Ok((least, 0));
         }
