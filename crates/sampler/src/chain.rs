@@ -180,6 +180,8 @@ pub struct FailedTest {
 pub enum Test {
     /// Rank-normalised split R̂.
     Rhat,
+    /// Rank-normalised split R̂ of single walkers.
+    WalkerRhat,
     /// Bulk effective samples.
     BulkEss,
     /// Tail effective samples.
@@ -190,6 +192,7 @@ impl std::fmt::Display for Test {
     fn fmt(&self, formatter: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
         formatter.write_str(match self {
             Test::Rhat => "R̂",
+            Test::WalkerRhat => "R̂ of single walkers",
             Test::BulkEss => "bulk effective samples",
             Test::TailEss => "tail effective samples",
         })

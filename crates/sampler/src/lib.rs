@@ -25,11 +25,13 @@ pub use chain::{
     BestPoint, Chain, Draw, FailedTest, MoveAcceptance, Outcome, RejectedEvaluations, StopReason, Test,
 };
 pub use error::SamplerError;
-pub use peak::{Peak, PeakSettings, find_peak, find_peak_with};
+pub use peak::{OtherPeak, Peak, PeakSettings, find_peak, find_peak_with};
 pub use priors::{JointNormal, Prior, PriorError, PriorFamily, PriorSet, PriorShape, SharedPrior, Truncated};
 pub use priors::{build_prior, prior_families, prior_family};
 pub use run::{sample, sample_with};
 pub use settings::{Control, EnsembleSettings, Phase, Progress};
-pub use settings::{DEFAULT_MAXIMUM_EVALUATIONS, MAXIMUM_RHAT, MINIMUM_EFFECTIVE_SAMPLES};
+pub use settings::{
+    DEFAULT_MAXIMUM_EVALUATIONS, MAXIMUM_RHAT, MAXIMUM_WALKER_RHAT, MINIMUM_EFFECTIVE_SAMPLES,
+};
 pub use state::RunState;
 pub use target::{EvaluationFailure, Target};

@@ -6,6 +6,11 @@ use serde::{Deserialize, Serialize};
 /// Rank-normalised split R̂ that every parameter must stay below (Vehtari et al. 2021, Bayesian Analysis 16, 667, §4.4).
 pub const MAXIMUM_RHAT: f64 = 1.01;
 
+/// The same of single walkers, which must have met but need not be long (the threshold of Gelman & Rubin 1992). Were a
+/// share ε of the walkers stuck d standard deviations away, it would be √(1 + ε(1 − ε)d²) at least: one in a hundred that is
+/// stuck at six is seen.
+pub const MAXIMUM_WALKER_RHAT: f64 = 1.1;
+
 /// Bulk and tail effective samples that every parameter must reach: 100 a chain, four split chains (the same, §4.4).
 pub const MINIMUM_EFFECTIVE_SAMPLES: f64 = 400.0;
 

@@ -1,4 +1,4 @@
-//! Where the walkers start: around the peak, inside the prior's support.
+//! Where the walkers start: around the peak, or the peaks, inside the prior's support.
 
 use crate::chain::BestPoint;
 use crate::ensemble::{Ensemble, height, streams};
@@ -33,7 +33,7 @@ pub(crate) fn start_ensemble<T: Target>(
     moves: usize,
 ) -> Result<Ensemble, SamplerError> {
     let dimension = priors.dimension();
-    let root = laplace_root(&peak.covariance);
+    let places = places(peak);
     let (mut random, streams) = streams(seed, index, walkers);
     let mut scratch = target.scratch();
     let mut best = BestPoint {
@@ -44,12 +44,13 @@ pub(crate) fn start_ensemble<T: Target>(
     let mut points = vec![0.0; walkers * dimension];
     let (mut log_prior, mut log_likelihood) = (Vec::with_capacity(walkers), Vec::with_capacity(walkers));
     let mut evaluations = 0;
-    for point in points.chunks_exact_mut(dimension) {
+    for (walker, point) in points.chunks_exact_mut(dimension).enumerate() {
+        let place = chosen(&places, index * walkers + walker);
         let mut heights = None;
         for attempt in 0..80 {
             if attempt < 40 {
-                around(peak, &root, WIDENED * 0.9f64.powi(attempt), &mut random, point);
-                keep_inside(peak, priors, point);
+                around(place, WIDENED * 0.9f64.powi(attempt), &mut random, point);
+                keep_inside(&place.point, priors, point);
             } else {
                 priors.sample(&mut random, point);
             }
@@ -84,9 +85,47 @@ pub(crate) fn start_ensemble<T: Target>(
     Ok(ensemble)
 }
 
-fn around(peak: &Peak, root: &DMatrix<f64>, scale: f64, random: &mut Random, point: &mut [f64]) {
-    point.copy_from_slice(&peak.point);
-    for column in root.column_iter() {
+/// A place to start around.
+struct StartingPlace {
+    point: Vec<f64>,
+    root: DMatrix<f64>,
+    /// Share of the walkers, those of the places before it included.
+    up_to: f64,
+}
+
+/// The peaks, each with a share of the walkers: at least a fifth of an equal one, else as its Laplace mass is.
+fn places(peak: &Peak) -> Vec<StartingPlace> {
+    let highest = (&peak.point, peak.log_posterior, &peak.covariance);
+    let others = peak.others.iter().map(|other| (&other.point, other.log_posterior, &other.covariance));
+    let all: Vec<_> = std::iter::once(highest).chain(others).collect();
+    let log_mass = |log_posterior: f64, covariance: &DMatrix<f64>| {
+        let determinant = covariance.determinant();
+        log_posterior + if determinant > 0.0 { 0.5 * determinant.ln() } else { 0.0 }
+    };
+    let masses: Vec<f64> = all.iter().map(|(_, height, covariance)| log_mass(*height, covariance)).collect();
+    let largest = masses.iter().copied().fold(f64::NEG_INFINITY, f64::max);
+    let least = 0.2 / all.len() as f64;
+    let total: f64 = masses.iter().map(|mass| (mass - largest).exp()).sum();
+    let shares: Vec<f64> = masses.iter().map(|mass| ((mass - largest).exp() / total).max(least)).collect();
+    let total: f64 = shares.iter().sum();
+    let mut up_to = 0.0;
+    let place = |((point, _, covariance), share): ((&Vec<f64>, f64, &DMatrix<f64>), f64)| {
+        up_to += share / total;
+        StartingPlace { point: point.clone(), root: laplace_root(covariance), up_to }
+    };
+    all.into_iter().zip(shares).map(place).collect()
+}
+
+/// The place of a walker: walkers fill the shares evenly (by the golden ratio), so that every ensemble has its part of each.
+fn chosen(places: &[StartingPlace], walker: usize) -> &StartingPlace {
+    const GOLDEN: f64 = 0.618_033_988_749_895;
+    let position = (0.5 + GOLDEN * walker as f64).fract();
+    places.iter().find(|place| position < place.up_to).unwrap_or(&places[places.len() - 1])
+}
+
+fn around(place: &StartingPlace, scale: f64, random: &mut Random, point: &mut [f64]) {
+    point.copy_from_slice(&place.point);
+    for column in place.root.column_iter() {
         let normal: f64 = StandardNormal.sample(random);
         for (x, entry) in point.iter_mut().zip(column.iter()) {
             *x += scale * normal * entry;
@@ -95,7 +134,7 @@ fn around(peak: &Peak, root: &DMatrix<f64>, scale: f64, random: &mut Random, poi
 }
 
 /// Reflects coordinates that left the support at the edge they crossed, where that leads back inside.
-fn keep_inside(peak: &Peak, priors: &PriorSet, point: &mut [f64]) {
+fn keep_inside(peak: &[f64], priors: &PriorSet, point: &mut [f64]) {
     for (dimension, x) in point.iter_mut().enumerate() {
         let (low, high) = priors.support(dimension);
         if *x < low {
@@ -104,7 +143,7 @@ fn keep_inside(peak: &Peak, priors: &PriorSet, point: &mut [f64]) {
             *x = 2.0 * high - *x;
         }
         if *x < low || *x > high {
-            *x = peak.point[dimension];
+            *x = peak[dimension];
         }
     }
 }

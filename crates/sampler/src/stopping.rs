@@ -1,9 +1,9 @@
 //! When a run has enough: the tests, and what failed ones still need.
 
 use crate::chain::{FailedTest, Test};
-use crate::diagnostics::{ParameterDiagnostics, ScoreTable, diagnose, split_walkers_rhat};
+use crate::diagnostics::{ParameterDiagnostics, ScoreTable, diagnose};
 use crate::history::Columns;
-use crate::settings::EnsembleSettings;
+use crate::settings::{EnsembleSettings, MAXIMUM_WALKER_RHAT};
 use rayon::prelude::*;
 
 /// What a check of the stop rule found.
@@ -26,10 +26,11 @@ impl Verdict {
     }
 }
 
-/// The three numbers that the rule compares, for one parameter.
+/// The numbers that the rule compares, for one parameter.
 #[derive(Debug, Clone, Copy)]
 struct Figures {
     rhat: f64,
+    rhat_of_walkers: f64,
     bulk: f64,
     tail: f64,
 }
@@ -42,7 +43,12 @@ pub(crate) fn first_look(columns: &Columns, settings: &EnsembleSettings, evaluat
         .par_iter()
         .map(|values| {
             let (effective, _) = shape.ensemble_route(values);
-            Figures { rhat: split_walkers_rhat(shape, values), bulk: effective, tail: effective }
+            Figures {
+                rhat: shape.rhat_of_ensembles(values),
+                rhat_of_walkers: shape.rhat_of_walkers(values),
+                bulk: effective,
+                tail: effective,
+            }
         })
         .collect();
     judge(&figures, settings, evaluations_kept, None)
@@ -55,7 +61,12 @@ pub(crate) fn full_check(columns: &Columns, settings: &EnsembleSettings, evaluat
         columns.parameters.par_iter().map(|values| diagnose(values, columns.shape, &table)).collect();
     let figures: Vec<Figures> = diagnostics
         .iter()
-        .map(|found| Figures { rhat: found.rhat, bulk: found.ess_bulk, tail: found.ess_tail })
+        .map(|found| Figures {
+            rhat: found.rhat,
+            rhat_of_walkers: found.rhat_of_walkers,
+            bulk: found.ess_bulk,
+            tail: found.ess_tail,
+        })
         .collect();
     judge(&figures, settings, evaluations_kept, Some(diagnostics))
 }
@@ -84,6 +95,13 @@ fn judge(
                 settings.maximum_rhat,
                 squared(found.rhat) / squared(settings.maximum_rhat),
                 found.rhat < settings.maximum_rhat,
+            ),
+            (
+                Test::WalkerRhat,
+                found.rhat_of_walkers,
+                MAXIMUM_WALKER_RHAT,
+                squared(found.rhat_of_walkers) / squared(MAXIMUM_WALKER_RHAT),
+                found.rhat_of_walkers < MAXIMUM_WALKER_RHAT,
             ),
             (Test::BulkEss, found.bulk, bulk_wanted, bulk_wanted / found.bulk, found.bulk >= bulk_wanted),
             (

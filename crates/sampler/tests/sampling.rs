@@ -159,6 +159,26 @@ fn a_heavy_tailed_prior() {
     }
 }
 
+/// Two normals twelve standard deviations apart, two to one: both are found, and their weights. (A search that climbs from one
+/// place alone, and walkers that start around it, see one of them, and nothing amiss.)
+#[test]
+fn two_modes() {
+    let likelihood = |x: &[f64]| {
+        let at = |centre: f64| -0.5 * (2.0 * (x[0] - centre)).powi(2) - 0.5 * (x[1] * x[1] + x[2] * x[2]);
+        (2.0 * at(-3.0).exp() + at(3.0).exp()).max(1e-300).ln()
+    };
+    let target = Simple { priors: flat(3, -20.0, 20.0), likelihood };
+    for seed in 1..=4 {
+        let settings = EnsembleSettings { watched: vec![0], seed, ..EnsembleSettings::default() };
+        let chain = run(&target, &target.priors, &settings);
+        assert!(chain.outcome.converged, "{:?}", chain.outcome);
+        assert!(!chain.peak.as_ref().unwrap().others.is_empty());
+        mean_is(&chain, "share of the left", 2.0 / 3.0, |x| f64::from(u8::from(x[0] < 0.0)));
+        mean_is(&chain, "mean", -1.0, |x| x[0]);
+        mean_is(&chain, "variance", 8.25, |x| (x[0] + 1.0).powi(2));
+    }
+}
+
 /// Neal's (2003, Ann. Stat. 31, 705) funnel in five dimensions: the first coordinate is normal of sd 2 whatever the others do.
 #[test]
 fn a_funnel() {

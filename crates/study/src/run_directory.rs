@@ -6,10 +6,12 @@ use crate::lock::Lock;
 use crate::record::{Manifest, Summary};
 use crate::run_error::RunError;
 use oddwell_sampler::Chain;
+use rayon::prelude::*;
 use serde::Serialize;
 use serde::de::DeserializeOwned;
 use std::fs::{self, File};
 use std::io::{self, BufWriter, Write};
+use std::ops::Range;
 use std::path::{Path, PathBuf};
 
 /// What to do about a run directory, or an unfinished run, that is there already.
@@ -257,20 +259,59 @@ fn write_chain(
         write!(out, ",{name}")?;
     }
     out.write_all(b"\n")?;
-    let mut number = ryu::Buffer::new();
-    for (row, draw) in chain.draws().enumerate() {
-        write!(out, "{},{},{}", draw.ensemble, draw.walker, draw.step)?;
-        for &value in [draw.log_prior, draw.log_likelihood].iter().chain(draw.point) {
-            out.write_all(b",")?;
-            out.write_all(number.format(value).as_bytes())?;
-        }
-        for column in columns {
-            out.write_all(b",")?;
-            if column[row].is_finite() {
-                out.write_all(number.format(column[row]).as_bytes())?;
-            }
-        }
-        out.write_all(b"\n")?;
+    // Blocks of lines are formatted side by side, as many as there are threads at a time, and written in their order.
+    let blocks: Vec<usize> = (0..chain.len()).step_by(BLOCK).collect();
+    for group in blocks.chunks(rayon::current_num_threads().max(1)) {
+        let lines = |first: &usize| lines(chain, columns, *first..(first + BLOCK).min(chain.len()));
+        let formatted: Vec<Vec<u8>> = group.par_iter().map(lines).collect();
+        formatted.iter().try_for_each(|lines| out.write_all(lines))?;
     }
     Ok(())
+}
+
+/// Lines of the chain that are formatted by one thread at a time: about a megabyte.
+const BLOCK: usize = 2048;
+
+/// The lines of some rows.
+fn lines(chain: &Chain, columns: &[Vec<f64>], rows: Range<usize>) -> Vec<u8> {
+    let mut out = Vec::with_capacity(rows.len() * 20 * (chain.dimension + columns.len() + 4));
+    let mut number = ryu::Buffer::new();
+    let mut put = |out: &mut Vec<u8>, value: f64| {
+        out.push(b',');
+        out.extend_from_slice(number.format(value).as_bytes());
+    };
+    for row in rows {
+        let Some(draw) = chain.draw(row) else { continue };
+        let place = [draw.ensemble as u64, draw.walker as u64, draw.step];
+        for (at, value) in place.into_iter().enumerate() {
+            if at > 0 {
+                out.push(b',');
+            }
+            digits(value, &mut out);
+        }
+        for &value in [draw.log_prior, draw.log_likelihood].iter().chain(draw.point) {
+            put(&mut out, value);
+        }
+        for column in columns {
+            match column[row].is_finite() {
+                true => put(&mut out, column[row]),
+                false => out.push(b','),
+            }
+        }
+        out.push(b'\n');
+    }
+    out
+}
+
+/// A whole number in decimal digits.
+fn digits(mut value: u64, out: &mut Vec<u8>) {
+    let start = out.len();
+    loop {
+        out.push(b'0' + (value % 10) as u8);
+        value /= 10;
+        if value == 0 {
+            break;
+        }
+    }
+    out[start..].reverse();
 }

@@ -15,8 +15,11 @@
 //! chains are honest there, and the second route guards against targets where they are not. Vehtari's estimator for chains
 //! about their own means would have given 1.05, 1.04 and 1.08 with the default mixture, whose chains are short.
 //!
-//! R̂ likewise is the larger of that of all walkers and that of whole ensembles, each one chain: the latter alone sees
-//! ensembles that have settled in different places (cf. Margossian et al. 2024, Bayesian Analysis, on chains in groups).
+//! R̂ comes in two kinds too. That of ensembles, each one chain of all its walkers' draws, compares what has to agree: a
+//! nested R̂ (Margossian et al. 2024, Bayesian Analysis, on many short chains in groups), near 1 + 4/n for n effective samples.
+//! That of single walkers is √(1 + τ/n) for n steps of autocorrelation time τ also in a chain that has long settled, so that
+//! the usual threshold would ask for a hundred τ of every walker, however many there are; with a looser one it still sees
+//! walkers that stay in different places.
 
 use super::ess::pooled_effective_samples;
 use super::quantiles::{quantile_of_sorted, sorted};
@@ -43,8 +46,10 @@ pub struct ParameterDiagnostics {
     pub ess_tail: f64,
     /// Effective samples of the mean.
     pub ess_mean: f64,
-    /// Larger of the rank-normalised split R̂ of walkers and of ensembles.
+    /// Rank-normalised split R̂ of ensembles, each one chain of all its walkers' draws.
     pub rhat: f64,
+    /// The same of single walkers.
+    pub rhat_of_walkers: f64,
     /// Monte Carlo standard error of the mean.
     pub mcse: f64,
 }
@@ -60,6 +65,7 @@ impl ParameterDiagnostics {
         ess_tail: f64::NAN,
         ess_mean: f64::NAN,
         rhat: f64::NAN,
+        rhat_of_walkers: f64::NAN,
         mcse: f64::NAN,
     };
 }
@@ -106,7 +112,8 @@ pub(crate) fn diagnose(values: &[f64], shape: Shape, table: &ScoreTable) -> Para
         ess_bulk: even.effective_samples(&scores.bulk),
         ess_tail: tail(0.05).min(tail(0.95)),
         ess_mean,
-        rhat: larger(even.rhat(&scores.bulk), even.rhat(&scores.folded)),
+        rhat: larger(even.rhat_of_ensembles(&scores.bulk), even.rhat_of_ensembles(&scores.folded)),
+        rhat_of_walkers: larger(even.rhat_of_walkers(&scores.bulk), even.rhat_of_walkers(&scores.folded)),
         mcse: (variance / ess_mean).sqrt(),
     }
 }
@@ -169,14 +176,14 @@ impl Shape {
         (effective * variance / of_means, (2.0 * (2.0 * window + 1.0) / count).sqrt())
     }
 
-    /// The larger of R̂ of walkers and R̂ of ensembles.
-    fn rhat(self, values: &[f64]) -> f64 {
+    /// R̂ of the split ensembles, each one chain; NaN of fewer than 4 steps.
+    pub(crate) fn rhat_of_ensembles(self, values: &[f64]) -> f64 {
         let whole = Chains { values: values.to_vec(), length: self.steps * self.walkers, width: 1 };
-        larger(classic(&self.walker_chains(values).split()), classic(&whole.split()))
+        if self.steps < 4 { f64::NAN } else { classic(&whole.split()) }
     }
-}
 
-/// R̂ of the split walkers without ranks: a first look in linear time.
-pub(crate) fn split_walkers_rhat(shape: Shape, values: &[f64]) -> f64 {
-    if shape.steps < 4 { f64::NAN } else { classic(&shape.walker_chains(values).split()) }
+    /// R̂ of the split walkers; NaN of fewer than 4 steps.
+    pub(crate) fn rhat_of_walkers(self, values: &[f64]) -> f64 {
+        if self.steps < 4 { f64::NAN } else { classic(&self.walker_chains(values).split()) }
+    }
 }

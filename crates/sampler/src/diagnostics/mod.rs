@@ -17,7 +17,7 @@ pub(crate) use autocorrelation::autocorrelation_time_about;
 pub use autocorrelation::{AutocorrelationTime, autocovariance, integrated_autocorrelation_time};
 pub use density::{Density, JointDensity, density, joint_density};
 pub use ensembles::{ParameterDiagnostics, diagnose_ensembles};
-pub(crate) use ensembles::{Shape, diagnose, split_walkers_rhat};
+pub(crate) use ensembles::{Shape, diagnose};
 pub use ess::{ess_bulk, ess_mean, ess_quantile, ess_tail, mcse_mean};
 pub use quantiles::{central_interval, median, quantile, quantile_of_sorted};
 pub(crate) use ranks::{ScoreTable, product_sum};

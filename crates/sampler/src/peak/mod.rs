@@ -11,6 +11,17 @@ pub use search::{PeakSettings, find_peak, find_peak_with};
 use nalgebra::DMatrix;
 use serde::{Deserialize, Serialize};
 
+/// A lower peak.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct OtherPeak {
+    /// Coordinates.
+    pub point: Vec<f64>,
+    /// Log posterior there.
+    pub log_posterior: f64,
+    /// Laplace covariance there.
+    pub covariance: DMatrix<f64>,
+}
+
 /// The point of highest posterior density, and the Laplace approximation there.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Peak {
@@ -32,6 +43,8 @@ pub struct Peak {
     pub bounded_by_prior: bool,
     /// Whether the search ended at a point where a Newton step promises less than 1e-6 of log posterior.
     pub polished: bool,
+    /// Other peaks that are not negligible, across a valley of the log posterior from this one and from each other.
+    pub others: Vec<OtherPeak>,
     /// Evaluations of the likelihood that the search took.
     pub evaluations: u64,
 }

@@ -1,10 +1,10 @@
 //! The search itself: candidates, a rough climb, a Newton polish, and the Laplace covariance.
 
-use super::Peak;
 use super::coordinates::Coordinates;
 use super::evaluator::Evaluator;
 use super::hessian::{fit_steps, gradient};
 use super::polish::{Polished, polish};
+use super::{OtherPeak, Peak};
 use crate::error::SamplerError;
 use crate::priors::PriorSet;
 use crate::settings::Control;
@@ -15,6 +15,7 @@ use argmin::solver::quasinewton::LBFGS;
 use rand::SeedableRng;
 use rand_xoshiro::Xoshiro256PlusPlus;
 use std::cell::RefCell;
+use std::collections::VecDeque;
 
 /// How to look for the peak.
 #[derive(Debug, Clone, PartialEq)]
@@ -43,7 +44,8 @@ const SAME_HEIGHT: f64 = 1e-3;
 /// Candidates are the given points, the prior's medians and draws of the prior. From the best of them the log posterior
 /// is climbed by L-BFGS (Nocedal 1980; line search of Moré & Thuente 1994) in coordinates that are unbounded and scaled by
 /// the prior, then polished by Newton steps kept inside the support, until a step promises less than 1e-6. This is
-/// repeated from other candidates until two climbs agree, or `climbs` are made; the highest counts.
+/// repeated from other candidates, first from points across a valley of the log posterior from every peak found if a scan along
+/// each coordinate (16 evaluations) meets one, until two climbs agree, or `climbs` are made; the highest counts, and the others are told.
 ///
 /// Derivatives are central differences with steps of a tenth of each conditional standard deviation (n² + n evaluations
 /// for a Hessian). Directions in which the log posterior curves less than a prior of twice the spread would (flat
@@ -82,27 +84,39 @@ pub fn find_peak_with<T: Target>(
     let mut evaluator = Evaluator::new(target);
     let candidates = candidates(&mut evaluator, priors, settings)?;
     let mut best: Option<Polished> = None;
-    for candidate in candidates.iter().take(settings.climbs.max(1)) {
+    let mut found: Vec<Polished> = Vec::new();
+    let mut queue: VecDeque<(Vec<f64>, bool)> = candidates.into_iter().map(|point| (point, false)).collect();
+    for _ in 0..settings.climbs.max(1) {
+        let Some((candidate, across)) = queue.pop_front() else { break };
         if callback(evaluator.evaluations) == Control::Stop {
             if best.is_none() {
                 return Err(SamplerError::Stopped);
             }
             break;
         }
-        let (climbed, returned) = climb(evaluator, &coordinates, candidate);
+        let (climbed, returned) = climb(evaluator, &coordinates, &candidate);
         evaluator = returned;
         evaluator.check()?;
         let polished = polish(&mut evaluator, priors, &coordinates, climbed);
         evaluator.check()?;
-        let agrees = best.as_ref().is_some_and(|best| (best.value - polished.value).abs() < SAME_HEIGHT);
+        let agrees = best.as_ref().is_some_and(|best| (best.value - polished.value).abs() < SAME_HEIGHT)
+            && !is_apart(&mut evaluator, &polished, &found);
+        if !agrees && is_apart(&mut evaluator, &polished, &found) {
+            found.push(polished.clone());
+            if let Some(point) = beyond(&mut evaluator, priors, &found) {
+                queue.push_front((point, true));
+            }
+        }
         if best.as_ref().is_none_or(|best| polished.value > best.value) {
             best = Some(polished);
         }
-        if agrees {
+        // A climb from across a valley that ends at a known peak went the wrong way, which says nothing of the other side.
+        if agrees && !across {
             break;
         }
     }
     let best = best.ok_or(SamplerError::Stopped)?;
+    let others = others(&mut evaluator, priors, &coordinates, &best, &found);
     let height = evaluator.height(&best.point);
     let laplace = best.covariance(&mut evaluator, priors, &coordinates);
     evaluator.check()?;
@@ -115,8 +129,91 @@ pub fn find_peak_with<T: Target>(
         at_edge: best.pinned,
         bounded_by_prior: laplace.bounded_by_prior,
         polished: best.converged,
+        others,
         evaluations: evaluator.evaluations,
     })
+}
+
+/// Shares of the way between two points at which a valley between them is looked for.
+const BETWEEN: [f64; 3] = [0.25, 0.5, 0.75];
+
+/// Log posterior by which a valley must lie below both of its sides: rounding and noise of the model are far below.
+const VALLEY: f64 = 1.0;
+
+/// Places along each coordinate at which another peak is looked for.
+const ALONG: u32 = 16;
+
+/// A point lower than a peak by more than this is no side of another peak that matters, unless that is very narrow.
+const LOWEST_SIDE: f64 = 200.0;
+
+/// Below the highest peak by this much of log posterior mass, another one does not matter: e⁻¹⁴ is one in a million.
+const NEGLIGIBLE: f64 = 14.0;
+
+/// Whether the straight line between two points, with their log posteriors, passes a valley: then they may belong to
+/// different peaks (or to the ends of one that is bent).
+fn valley<T: Target>(
+    evaluator: &mut Evaluator<'_, T>,
+    (one, at_one): (&[f64], f64),
+    (other, at_other): (&[f64], f64),
+) -> bool {
+    let mut point = one.to_vec();
+    BETWEEN.iter().any(|share| {
+        for ((x, one), other) in point.iter_mut().zip(one).zip(other) {
+            *x = one + share * (other - one);
+        }
+        evaluator.log_posterior(&point) < at_one.min(at_other) - VALLEY
+    })
+}
+
+/// Whether a peak is another one than those found.
+fn is_apart<T: Target>(evaluator: &mut Evaluator<'_, T>, peak: &Polished, found: &[Polished]) -> bool {
+    let side = (peak.point.as_slice(), peak.value);
+    found.iter().all(|known| valley(evaluator, side, (known.point.as_slice(), known.value)))
+}
+
+/// The highest point across a valley from every peak found, of those that differ from the last one in a single coordinate, which
+/// stands at sixteen quantiles of its prior in turn.
+fn beyond<T: Target>(
+    evaluator: &mut Evaluator<'_, T>,
+    priors: &PriorSet,
+    found: &[Polished],
+) -> Option<Vec<f64>> {
+    let last = found.last()?;
+    let mut highest: Option<(f64, Vec<f64>)> = None;
+    for dimension in 0..priors.dimension() {
+        let mut point = last.point.clone();
+        for place in 0..ALONG {
+            point[dimension] =
+                priors.marginal(dimension).quantile((f64::from(place) + 0.5) / f64::from(ALONG));
+            let value = evaluator.log_posterior(&point);
+            let low =
+                value < last.value - LOWEST_SIDE || highest.as_ref().is_some_and(|(best, _)| value <= *best);
+            if low || !found.iter().all(|peak| valley(evaluator, (&point, value), (&peak.point, peak.value)))
+            {
+                continue;
+            }
+            highest = Some((value, point.clone()));
+        }
+    }
+    highest.map(|(_, point)| point)
+}
+
+/// The peaks besides the highest that are not negligible, each with its Laplace covariance and mass.
+fn others<T: Target>(
+    evaluator: &mut Evaluator<'_, T>,
+    priors: &PriorSet,
+    coordinates: &Coordinates,
+    best: &Polished,
+    found: &[Polished],
+) -> Vec<OtherPeak> {
+    let apart = found.iter().filter(|peak| peak.value < best.value || peak.point != best.point);
+    let near = apart.filter(|peak| peak.value > best.value - NEGLIGIBLE);
+    near.map(|peak| OtherPeak {
+        point: peak.point.clone(),
+        log_posterior: peak.value,
+        covariance: peak.covariance(evaluator, priors, coordinates).covariance,
+    })
+    .collect()
 }
 
 /// Starting points of finite posterior density, the given ones first, then from high to low.

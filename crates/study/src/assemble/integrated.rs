@@ -157,12 +157,6 @@ impl<'a> IntegratedPosterior<'a> {
         &self.integrated
     }
 
-    /// Whether sampling this posterior gives more effective samples a second than the full one.
-    #[must_use]
-    pub fn pays(&self) -> bool {
-        true
-    }
-
     /// The full point with the most probable linear quantities, given the others.
     ///
     /// # Errors

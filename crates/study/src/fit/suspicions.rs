@@ -62,6 +62,7 @@ fn not_converged(posterior: &Posterior, chain: &Chain) -> Warning {
     Warning::NotConverged {
         parameter: names[*parameter].clone(),
         failed: match test {
+            Test::WalkerRhat => format!("R̂ of single walkers = {value:.4}, which must be below {wanted}"),
             Test::Rhat => format!("R̂ = {value:.4}, which must be below {wanted}"),
             _ => format!("{value:.0} of {wanted:.0} {test}"),
         },
