@@ -19,7 +19,7 @@ mod weigh;
 pub use check::check_text;
 pub use closing::closing_summary;
 pub use figure::Figure;
-pub use manual::{manual_check, manual_estimator, manual_text, manual_topics, manual_weigh};
+pub use manual::{manual_check, manual_data, manual_estimator, manual_text, manual_topics, manual_weigh};
 pub use numbers::{count, duration, signed, significant, whole};
 pub use page::{Page, PageInput, page};
 pub use prediction::{EffectColumns, prediction_csv, prediction_json};

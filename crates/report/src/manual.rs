@@ -1,7 +1,7 @@
 //! The manual's pages as text.
 
 use oddwell_study::check::{KINDS, Rate, thresholds};
-use oddwell_study::{ManualPage, estimator_families, manual_pages};
+use oddwell_study::{DataPage, ManualPage, data_pages, estimator_families, manual_pages};
 
 use crate::style::Style;
 use crate::text::{padded, wrapped};
@@ -15,6 +15,12 @@ pub fn manual_topics(style: Style) -> String {
         let first = format!("  {}   ", padded(page.name, width));
         out.push_str(&wrapped(&first, width + 5, page.formula));
     }
+    out.push_str(&format!("\n{}\n", style.strong("Measurements")));
+    let about_data = data_pages();
+    let width = about_data.iter().map(|page| page.name.chars().count()).max().unwrap_or(0);
+    for page in &about_data {
+        out.push_str(&wrapped(&format!("  {}   ", padded(page.name, width)), width + 5, page.summary));
+    }
     out.push_str(&format!("\n{}\n", style.strong("Commands")));
     out.push_str("  check   what each of its warnings looks at, and where it draws the line\n");
     out.push_str("  weigh   what evidences and odds are, what they hang on, and what they cannot bear\n");
@@ -25,6 +31,17 @@ pub fn manual_topics(style: Style) -> String {
         out.push_str(&wrapped(&first, width + 5, family.summary));
     }
     out.push_str("\n`oddwell manual TOPIC` prints the page of one of them.\n");
+    out
+}
+
+/// A page about the measurements: keys with what they mean, then what else there is to know.
+pub fn manual_data(page: &DataPage, style: Style) -> String {
+    let mut out = format!("{}\n", wrapped(&style.strong(page.name), 2, &format!(": {}", page.summary)));
+    for (key, meaning) in &page.entries {
+        out.push_str(&wrapped(&format!("  {key}: "), 6, meaning));
+    }
+    out.push('\n');
+    out.push_str(&wrapped("  ", 2, page.text));
     out
 }
 
@@ -195,6 +212,22 @@ mod tests {
             assert!(widest <= Some(PAGE), "{page}");
         }
         assert!(manual_estimator("constant", Style::Plain).is_none());
+    }
+
+    #[test]
+    fn pages_about_the_measurements_are_listed_and_fit() {
+        let topics = manual_topics(Style::Plain);
+        for page in data_pages() {
+            assert!(topics.contains(&format!("  {} ", page.name)), "{topics}");
+            let text = manual_data(&page, Style::Plain);
+            let flowing = text.split_whitespace().collect::<Vec<_>>().join(" ");
+            assert!(flowing.starts_with(&format!("{}: {}", page.name, page.summary)), "{text}");
+            assert!(flowing.contains(&page.text.split_whitespace().collect::<Vec<_>>().join(" ")), "{text}");
+            for (key, meaning) in &page.entries {
+                assert!(flowing.contains(&format!("{key}: {meaning}")), "{text}");
+            }
+            assert!(text.lines().map(UnicodeWidthStr::width).max() <= Some(PAGE), "{text}");
+        }
     }
 
     #[test]

@@ -4,6 +4,7 @@ use oddwell_model::departures::{self, Departure};
 use oddwell_model::{FeltBy, Spread};
 use serde::Serialize;
 
+use crate::data_manual::data_pages;
 use crate::nearest::Nearest;
 
 /// One page: a departure.
@@ -44,9 +45,10 @@ pub fn manual_pages() -> Vec<ManualPage> {
 /// # Errors
 /// The nearest topic.
 pub fn manual_page(topic: &str) -> Result<ManualPage, Nearest> {
-    departures::find(topic)
-        .map(page)
-        .ok_or_else(|| Nearest::find(topic, departures::registry().iter().map(|shape| shape.name())))
+    departures::find(topic).map(page).ok_or_else(|| {
+        let departures = departures::registry().iter().map(|shape| shape.name());
+        Nearest::find(topic, departures.chain(data_pages().iter().map(|page| page.name)).chain(["check"]))
+    })
 }
 
 fn page(shape: &'static dyn Departure) -> ManualPage {

@@ -1,8 +1,10 @@
 //! `oddwell manual [TOPIC]`
 
-use oddwell_report::{Style, manual_check, manual_estimator, manual_text, manual_topics, manual_weigh};
+use oddwell_report::{
+    Style, manual_check, manual_data, manual_estimator, manual_text, manual_topics, manual_weigh,
+};
 use oddwell_study::check::{KINDS, thresholds};
-use oddwell_study::{manual_page, manual_pages};
+use oddwell_study::{data_pages, manual_page, manual_pages};
 use serde_json::{Value, json};
 
 use crate::ending::{Failure, Status};
@@ -37,6 +39,14 @@ pub(super) fn run(arguments: &ManualArguments, output: &Output) -> Result<Status
             output.json_result(&json!({ "name": topic, "text": text }))?;
         } else {
             output.result(&page)?;
+        }
+        return Ok(Status::Done);
+    }
+    if let Some(page) = data_pages().iter().find(|page| page.name == topic) {
+        if output.json {
+            output.json_result(&serde_json::to_value(page).map_err(Failure::input)?)?;
+        } else {
+            output.result(&manual_data(page, output.style))?;
         }
         return Ok(Status::Done);
     }
