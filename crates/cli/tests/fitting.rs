@@ -37,7 +37,7 @@ fn an_existing_run_is_refused_without_replace_and_kept() {
     assert_eq!((refused.status, refused.out.as_str()), (Some(1), ""));
     assert_eq!(
         refused.err,
-        "error: run: exists already, and a run is never overwritten; give `--replace`, or another folder with `--out`\n"
+        "error: run: exists already, and a run is never overwritten; give `--replace`, or another folder with `--out` (`--resume` goes on with one that was interrupted)\n"
     );
     assert_eq!(fs::read(folder.path("run/chain.csv")).ok(), Some(before.clone()));
     let replaced = folder.run(&["fit", "study.toml", "--out", "run", "--replace", "--quiet"]);
