@@ -270,7 +270,7 @@ felt_by = "matter""#)],
         what: "a run directory that exists",
         edits: &[Folder(r#"run"#)],
         arguments: &["fit", "study.toml", "--out", "run"],
-        message: r#"run: exists already, and a run is never overwritten; give `--replace`, or another folder with `--out`"#,
+        message: r#"run: exists already, and a run is never overwritten; give `--replace`, or another folder with `--out` (`--resume` goes on with one that was interrupted)"#,
     },
     Case {
         what: "an output folder that cannot be written",
