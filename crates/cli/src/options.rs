@@ -370,7 +370,7 @@ pub(crate) struct FitArguments {
 pub(crate) struct WeighArguments {
     #[command(flatten)]
     pub(crate) study: StudyArguments,
-    /// The run directory to make [default: runs/<title>-weigh]
+    /// The run directory to make [default: runs/TITLE-weigh]
     #[arg(long, value_name = "DIR")]
     pub(crate) out: Option<PathBuf>,
     /// Replace the run directory if it exists, once the new run is complete
