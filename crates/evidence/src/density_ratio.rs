@@ -40,7 +40,7 @@ pub struct DensityRatio {
 
 impl Default for DensityRatio {
     fn default() -> Self {
-        Self { draws: 1000 }
+        Self { draws: 4000 }
     }
 }
 
