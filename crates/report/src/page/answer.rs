@@ -11,6 +11,7 @@ use crate::figure::{
     Anchor, BAND, Dash, Figure, Frame, Labels, MUTED, Mark, RELATIVITY, Scale, Stroke, range,
 };
 use crate::numbers::{UNKNOWN, rounded, share, significant, two_digits};
+use crate::weigh::verdict_words;
 
 pub(super) fn section(runs: &Runs<'_>, sheet: &mut Sheet) -> Markup {
     let run = runs.first();
@@ -286,6 +287,9 @@ fn odds(runs: &Runs<'_>) -> Markup {
                     "; a prior of width " (told(&from("sensitivity/turning_width"), Some(width), |width| significant(width, 2)))
                     " would turn them, " (told(&from("sensitivity/width"), sensitivity.map(|known| known.width), |width| significant(width, 2))) " was used"
                 } @else if sensitivity.is_some() { "; no width of its prior turns them" }
+                @if let Some(sensitivity) = sensitivity {
+                    ": " strong { (prose(&verdict_words(sensitivity.verdict, &weighed.record.reference))) }
+                }
                 ". " a href="#weighed" { "More in section 7" } "."
             }
         };

@@ -150,7 +150,10 @@ fn figure(drawn: &[Drawn<'_>], by_part: Option<&DepartureByPart>) -> Option<Figu
         let own = drawn.curve.values.iter().flat_map(|(_, _, value)| two_sided(value.mean, value.sd));
         band.chain(own).collect::<Vec<f64>>()
     });
-    let ends = range(values.chain([0.0]), 0.06);
+    let parts = by_part.into_iter().flat_map(|parts| &parts.bins);
+    let alone_ends = parts.filter_map(|part| Some((part.value?, part.sd?)));
+    let alone_ends = alone_ends.flat_map(|(value, sd)| [value - sd, value + sd]);
+    let ends = range(values.chain(alone_ends).chain([0.0]), 0.06);
     let legend = 20.0 * (drawn.len() as f64 + 1.0);
     let (width, height) = (480.0, 310.0 + legend);
     let frame = Frame {

@@ -9,6 +9,7 @@ use crate::figure::{
     Anchor, BAND, Dash, Figure, Frame, INK, Labels, MUTED, Mark, RELATIVITY, Scale, Stroke, range,
 };
 use crate::numbers::{UNKNOWN, count, duration, probability, rounded, significant, two_digits};
+use crate::weigh::verdict_words;
 use oddwell_study::review::Weighing;
 
 pub(super) fn section(runs: &Runs<'_>, sheet: &mut Sheet) -> Markup {
@@ -44,7 +45,7 @@ fn of_weighing(at: usize, weighed: &Weighing, sheet: &mut Sheet) -> Markup {
         (odds(at, record))
         (estimators(at, record))
         @for (index, hypothesis) in record.hypotheses.iter().enumerate() {
-            @if let Some(sensitivity) = &hypothesis.sensitivity { (sensitivity_of(at, index, hypothesis, sensitivity, sheet)) }
+            @if let Some(sensitivity) = &hypothesis.sensitivity { (sensitivity_of((at, index), (hypothesis, sensitivity), &record.reference, sheet)) }
         }
         (average(at, record))
         (others(at, record))
@@ -118,16 +119,16 @@ fn estimators(at: usize, record: &WeighRecord) -> Markup {
 }
 
 fn sensitivity_of(
-    at: usize,
-    index: usize,
-    hypothesis: &HypothesisRecord,
-    sensitivity: &Sensitivity,
+    (at, index): (usize, usize),
+    (hypothesis, sensitivity): (&HypothesisRecord, &Sensitivity),
+    reference: &str,
     sheet: &mut Sheet,
 ) -> Markup {
     let own = |key: &str| from(at, &format!("/hypotheses/{index}/sensitivity/{key}"));
     html! {
         h3 { "How the odds of " code { (hypothesis.name) } " hang on its prior" }
         p {
+            "The verdict on " code { (hypothesis.name) } ": " strong { (prose(&verdict_words(sensitivity.verdict, reference))) } ". "
             @match sensitivity.turning_width {
                 Some(width) => {
                     "The odds turn at a prior width of " (told(&own("turning_width"), Some(width), |width| significant(width, 3)))

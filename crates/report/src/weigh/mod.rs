@@ -5,6 +5,8 @@ mod limits;
 mod parts;
 mod sensitivity;
 
+pub(crate) use sensitivity::verdict_words;
+
 use oddwell_study::record::WeighRecord;
 
 use crate::style::Style;

@@ -71,14 +71,23 @@ fn sentence(hypothesis: &HypothesisRecord, record: &WeighRecord, style: Style) -
             format!("{name}: the width of prior that would turn its odds is not known, so none are given.")
         };
     };
+    let words = verdict_words(sensitivity.verdict, &record.reference);
     let verdict = match sensitivity.verdict {
-        Verdict::ThePriorDecides => style.caution("inconclusive: the prior decides"),
-        Verdict::Departure => "favoured at this width and at any within a factor of 3".to_owned(),
-        Verdict::Contained => {
-            format!("less probable than `{}` at this width and at any within a factor of 3", record.reference)
-        }
+        Verdict::ThePriorDecides => style.caution(&words),
+        _ => words,
     };
     format!("{name}: {verdict}. {}{}", turning(sensitivity), at_best(sensitivity))
+}
+
+/// What a ratio of evidences to `reference` comes to, in words.
+pub(crate) fn verdict_words(verdict: Verdict, reference: &str) -> String {
+    match verdict {
+        Verdict::ThePriorDecides => "inconclusive: the prior decides".to_owned(),
+        Verdict::Departure => "favoured at this width and at any within a factor of 3".to_owned(),
+        Verdict::Contained => {
+            format!("less probable than `{reference}` at this width and at any within a factor of 3")
+        }
+    }
 }
 
 fn turning(sensitivity: &Sensitivity) -> String {
