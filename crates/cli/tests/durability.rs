@@ -115,8 +115,11 @@ fn a_stopped_run_goes_on_to_the_same_chain() {
     // A second on an idle machine; this one may be busy with other tests.
     assert!(signalled.elapsed() < Duration::from_secs(10), "{:?}", signalled.elapsed());
     assert_eq!(ran.status, Some(130), "{}", ran.err);
-    assert!(folder.path("runs/one/summary.json").is_file());
-    assert_eq!(names(&folder), [".one.unfinished", "one"]);
+    // A fast machine may keep its first state while it still warms up, with no draw to hand back.
+    let early = ran.err.contains("stopped before there was a draw to hand back");
+    let left: &[&str] = if early { &[".one.unfinished"] } else { &[".one.unfinished", "one"] };
+    assert_eq!(names(&folder), left);
+    assert_eq!(folder.path("runs/one/summary.json").is_file(), !early);
     resumes(&folder, "went on from the last checkpoint");
 }
 
