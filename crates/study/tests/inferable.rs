@@ -175,7 +175,7 @@ fn a_fit_with_a_free_universe_runs() {
         out: folder.0.path().join("run"),
         existing: Existing::Refuse,
         seed: None,
-        maximum_evaluations: Some(6000),
+        maximum_evaluations: Some(10_000),
         command: Vec::new(),
         threads: 1,
     };
