@@ -96,6 +96,14 @@ impl Measurements {
         rows
     }
 
+    /// The name of the noise model of a survey, by its index, as the study has it.
+    #[must_use]
+    pub fn noise_name(&self, survey: usize) -> &'static str {
+        let waiting = self.groups.iter().find(|group| group.surveys.contains(&survey));
+        let waiting = waiting.and_then(|group| group.to_be_counted.as_ref());
+        waiting.map_or_else(|| self.surveys[survey].likelihood.noise().name(), |noise| noise.family.name)
+    }
+
     /// Each survey with the position of its first row.
     pub fn with_offsets(&self) -> impl Iterator<Item = (usize, &SurveyMeasurements)> {
         self.surveys.iter().scan(0, |first, survey| {

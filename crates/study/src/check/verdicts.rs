@@ -303,15 +303,16 @@ fn survey_verdicts(
     // The departure's own prior stays in: a departure is no reason to doubt a covariance.
     let all = Comparison::new(&expected.posterior.data, &expected.expectation).map_err(in_all)?;
     let mut surveys = Vec::new();
-    for (first, survey) in measurements.with_offsets() {
+    for (index, (first, survey)) in measurements.with_offsets().enumerate() {
         let rows: Vec<usize> = (first..first + survey.table.len()).collect();
-        surveys.push(survey_verdict(survey, &all.select(&rows), expected, blinded)?);
+        let noise = measurements.noise_name(index);
+        surveys.push(survey_verdict((survey, noise), &all.select(&rows), expected, blinded)?);
     }
     Ok(surveys)
 }
 
 fn survey_verdict(
-    survey: &SurveyMeasurements,
+    (survey, noise): (&SurveyMeasurements, &str),
     comparison: &Comparison,
     expected: &Expected,
     blinded: bool,
@@ -330,7 +331,7 @@ fn survey_verdict(
         name: survey.name.clone(),
         rows_kept: survey.table.len(),
         rows_cut: survey.cut,
-        noise: likelihood.noise().name().to_owned(),
+        noise: noise.to_owned(),
         covariance: CovarianceVerdict {
             condition: Some(modes.condition).filter(|condition| condition.is_finite()),
             smallest_modes: modes
