@@ -230,7 +230,7 @@ fn mocks_come_with_the_noise_of_the_measurements() {
         std::fs::read_to_string(&path).unwrap().replace("noise = \"gaussian\"", "noise = \"percival\"");
     std::fs::write(&path, text).unwrap();
     let checked = succeed(folder, &["check", "mocked/study.toml", "--json"]);
-    assert!(checked.contains("\"mocks\": 400"), "{checked}");
+    assert!(checked.contains("\"mocks\": 400") && checked.contains("\"noise\": \"percival\""), "{checked}");
     succeed(folder, &["fit", "mocked/study.toml", "--quiet", "--out", "run"]);
 }
 
