@@ -25,6 +25,20 @@ fn fitted() -> Folder {
     folder
 }
 
+/// What the command line put in the place of the study's words counts for the page too.
+#[test]
+fn a_run_with_set_quantities_has_its_pictures() {
+    let folder = Folder::new();
+    let set = ["--set", "larkfield.near.offset={ normal = [0.0, 5.0] }", "--set", "background.sigma8=0.8"];
+    let done =
+        folder.run(&[&["fit", "study.toml", "--hypothesis", "constant", "--out", "run"], &set[..]].concat());
+    assert_eq!(done.status, Some(0), "{}", done.err);
+    let made = folder.run(&["report", "run"]);
+    assert_eq!(made.status, Some(0), "{}", made.err);
+    assert!(!made.err.contains("lacks"), "{}", made.err);
+    told(&read(&folder, "run/report.html"), &["larkfield.near.offset", "residual"]);
+}
+
 #[test]
 fn a_run_becomes_a_page_a_table_and_figures() {
     let folder = fitted();

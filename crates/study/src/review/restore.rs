@@ -14,8 +14,9 @@ pub(super) fn restore(manifest: &Manifest) -> Result<(Study, Measurements), Revi
     let failed = |error: &dyn std::fmt::Display| ReviewError::Unusable { reason: error.to_string() };
     let file = StudyFile::parse(&manifest.study_file, manifest.study_text.clone(), folder)
         .map_err(|error| failed(&error))?;
-    let overrides: Result<Vec<Override>, _> =
-        manifest.overrides.iter().map(|text| Override::parse(text)).collect();
+    // The manifest has them as the command line did.
+    let written = manifest.overrides.iter().map(|text| text.strip_prefix("--set ").unwrap_or(text));
+    let overrides: Result<Vec<Override>, _> = written.map(Override::parse).collect();
     let overrides = overrides.map_err(|error| failed(&error))?;
     let study = Study::resolve(file, &overrides).map_err(|error| failed(&error))?;
     let restriction = Restriction { only: manifest.only.clone(), without: manifest.without.clone() };
