@@ -25,7 +25,7 @@ pub struct ParityBlock {
 ///
 /// p-value, for an estimate from n mocks: in units in which the expected covariance is unity, Wilks' Λ = det S/(det S₁ det S₂)
 /// tests whether the groups are independent: −[n − 1 − (p + q + 1)/2] ln Λ follows χ² with pq degrees of freedom (Bartlett
-/// 1938, Proc. Camb. Phil. Soc. 34, 33), to a few per cent of p for n above 2(p + q). With an expectation, a wrong block
+/// 1938, Proc. Cambridge Philos. Soc. 34, 33), to a few per cent of p for n above 2(p + q). With an expectation, a wrong block
 /// between the groups shows; wrong correlations within a group do not, unless they reach across.
 ///
 /// # Errors
