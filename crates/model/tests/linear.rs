@@ -42,10 +42,10 @@ fn setups() -> Vec<ModelSetup> {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig { cases: 24, ..ProptestConfig::default() })]
+    #![proptest_config(ProptestConfig { cases: 24, failure_persistence: None, ..ProptestConfig::default() })]
 
     /// c(v + Σ xᵢeᵢ) = c(v) + Σ xᵢ ∂c/∂vᵢ for steps of order one in all linear quantities at once, which no product of two
-    /// of them would survive. Rounding is of the size of the largest coefficient of the multipole: 1e-13 of it is allowed.
+    /// of them would survive. Rounding is of the size of the terms that are added, which may cancel: 1e-12 of them is allowed.
     #[test]
     fn coefficients_are_affine_in_all_linear_quantities_together(
         steps in prop::collection::vec(-3.0..3.0, 12),
@@ -70,19 +70,22 @@ proptest! {
             model.coefficient_slopes(&mut values, &workspace, &slots, &mut slopes);
             prop_assert_eq!(&before, &values);
             let mut expected = at.clone();
+            let mut sizes: Vec<f64> = at.iter().map(|at| at.abs().max(1e-3)).collect();
             for (place, (slot, step)) in linear.iter().zip(&steps).enumerate() {
                 values[*slot] += step;
                 for (within, of) in slots.pattern()[place].iter().enumerate() {
-                    expected[*of] += step * slopes[slots.start(place) + within];
+                    let term = step * slopes[slots.start(place) + within];
+                    expected[*of] += term;
+                    sizes[*of] += term.abs();
                 }
             }
             let found = coefficients(&model, &values, &mut workspace);
-            for ((found, expected), at) in found.iter().zip(&expected).zip(&at) {
-                let size = expected.abs().max(at.abs()).max(1e-3);
-                prop_assert!((found - expected).abs() <= 1e-13 * size, "{} {} {}", found, expected, at);
+            for ((found, expected), size) in found.iter().zip(&expected).zip(&sizes) {
+                prop_assert!((found - expected).abs() <= 1e-12 * size, "{} {} {}", found, expected, size);
             }
             // The check can fail: the quantities matter.
-            prop_assert!(found.iter().zip(&at).any(|(one, other)| (one - other).abs() > 1e-3 * at[0].abs()));
+            let moved = steps[..linear.len()].iter().all(|step| step.abs() > 0.5);
+            prop_assert!(!moved || found.iter().zip(&at).any(|(one, other)| (one - other).abs() > 1e-3 * at[0].abs()));
         }
     }
 }
